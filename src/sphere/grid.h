@@ -1,8 +1,9 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <array>
 #include <cstdint>
-#include <vector>
+#include <span>
 
 #include "sphere/frame.h"
 
@@ -10,7 +11,8 @@ namespace foreglow {
 
 enum class Ordering { Ring, Nested };
 
-/// The sign of U: COSMO (HEALPix; angle from south through east) or IAU (from north through east); U_IAU = -U_COSMO.
+/// The sign of U: COSMO (HEALPix; angle from south through east) or IAU (from north through east); U_IAU =
+/// -U_COSMO.
 enum class PolarizationConvention { Cosmo, Iau };
 
 /// The HEALPix grid of one nside (Gorski et al. 2005): 12 nside^2 pixels of equal area on 4 nside - 1 rings.
@@ -35,8 +37,11 @@ class HealpixGrid {
         double cos_theta = 0, sin_theta = 0;
         double phi0 = 0;  ///< azimuth of the first pixel's centre [rad]
     };
+    /// Returns where a ring lies, in closed form (Gorski et al. 2005, eqs 2-9).
     /// @param ring  0 (north) to ring_count() - 1 (south)
     [[nodiscard]] Ring ring(int ring) const;
+    /// Returns the ring that holds a pixel, 0 to ring_count() - 1.
+    [[nodiscard]] int ring_of(std::int64_t pixel) const;
 
     /// Returns the unit vector of a pixel's centre.
     [[nodiscard]] Vector3 direction(std::int64_t pixel) const;
@@ -45,7 +50,18 @@ class HealpixGrid {
     [[nodiscard]] std::int64_t ring_to_nested(std::int64_t pixel) const;
     [[nodiscard]] std::int64_t nested_to_ring(std::int64_t nested_pixel) const;
 
-    /// The four pixels and weights of bilinear interpolation along the two neighbouring rings; weights sum to 1.
+    /// Writes the unit vectors of the centres of pixels first, first + 1, ...; faster than one by one.
+    void directions(std::int64_t first, std::span<Vector3> out) const;
+    /// Writes the nested numbers of RING pixels first, first + 1, ...
+    void nested_numbers(std::int64_t first, std::span<std::int64_t> out) const;
+    /// Writes the RING numbers of nested pixels first, first + 1, ...
+    void ring_numbers(std::int64_t first_nested, std::span<std::int64_t> out) const;
+
+    /// Returns the up to eight pixels that touch a pixel, by side or corner; -1 where there is none.
+    [[nodiscard]] std::array<std::int64_t, 8> neighbours(std::int64_t pixel) const;
+
+    /// The four pixels and weights of bilinear interpolation along the two neighbouring rings; weights sum
+    /// to 1.
     struct Stencil {
         std::array<std::int64_t, 4> pixels{};
         std::array<double, 4> weights{};

@@ -81,6 +81,7 @@ struct ModelSpec {
     std::optional<PolarizationSpec> polarization;
     IndexSpec index;
     ValueOrMap curvature = 0.0;
+    std::vector<std::string> warnings;       ///< e.g. an index that looks like one of flux
 };
 
 }  // namespace foreglow

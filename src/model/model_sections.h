@@ -1,0 +1,20 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#pragma once
+
+#include <filesystem>
+
+#include "io/toml_reader.h"
+#include "model/model_spec.h"
+
+namespace foreglow {
+
+/// Read one section of a model file each; every key of the section is checked.
+/// @param folder  what paths are relative to
+/// @throws InputError with the place
+[[nodiscard]] SketchSpec read_sketch(TomlReader reader);
+[[nodiscard]] IntensitySpec read_intensity(TomlReader reader, const std::filesystem::path& folder);
+[[nodiscard]] PolarizationSpec read_polarization(TomlReader reader, const std::filesystem::path& folder);
+[[nodiscard]] IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder);
+[[nodiscard]] ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder);
+
+}  // namespace foreglow

@@ -1,0 +1,116 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "model/sky_model.h"
+
+#include <algorithm>
+#include <cmath>
+
+#include "base/error.h"
+#include "physics/spectral_law.h"
+
+namespace foreglow {
+namespace {
+
+PixelField::Range require_range(const PixelField& field, const char* name) {
+    const auto range = field.range();
+    if (!range) throw DataError(std::string("the ") + name + " map has no defined pixel: give another map");
+    return *range;
+}
+
+void evaluate_stokes(const SkyModel& sky, const StokesField& field, const RingStrip& strip, std::span<double> q,
+                     std::span<double> u) {
+    if (const auto* maps = std::get_if<std::shared_ptr<const StokesMaps>>(&field.source)) {
+        FOREGLOW_EXPECTS((*maps)->grid == sky.grid);
+        for (const PixelRange& range : pixel_ranges(sky.grid, strip)) {
+            std::copy_n((*maps)->q.begin() + range.first_pixel, range.count, q.begin() + range.offset);
+            std::copy_n((*maps)->u.begin() + range.first_pixel, range.count, u.begin() + range.offset);
+        }
+        return;
+    }
+    synthesize_strip_spin2(std::get<AlmEB>(field.source), sky.grid, strip, q, u);
+    if (!field.filled) return;
+    const Matrix3 to_filled = rotation_between(sky.frame, field.filled->frame);
+    undefine_filled(*field.filled, to_filled, sky.grid, strip, q);
+    undefine_filled(*field.filled, to_filled, sky.grid, strip, u);
+}
+
+// Q and U whose length is a fraction of the intensity at the polarization's reference frequency.
+void scale_to_fraction(const SkyModel& sky, const RingStrip& strip, SkyStrip& values) {
+    const PolarizedSky& polarized = *sky.polarization;
+    std::vector<double> fraction(values.q.size());
+    polarized.fraction->evaluate(sky.grid, strip, fraction);
+    const double log_ratio = log_frequency_ratio(polarized.reference, sky.reference);
+    for (std::size_t i = 0; i < fraction.size(); ++i) {
+        const double there = std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
+        const double length = std::hypot(values.q[i], values.u[i]);
+        const double factor = fraction[i] * values.intensity[i] * there / length;
+        values.q[i] *= factor;
+        values.u[i] *= factor;
+    }
+}
+
+void add_polarized_law(const SkyModel& sky, const RingStrip& strip, SkyStrip& values) {
+    const PolarizedSky& polarized = *sky.polarization;
+    const std::size_t n = values.q.size();
+    values.polarized_index.resize(n);
+    values.polarized_curvature.assign(n, 0.0);
+    if (polarized.index) {
+        polarized.index->evaluate(sky.grid, strip, values.polarized_index);
+        return;
+    }
+    const double log_ratio = log_frequency_ratio(polarized.reference, sky.reference);
+    for (std::size_t i = 0; i < n; ++i) {
+        values.polarized_index[i] = local_index({values.index[i], values.curvature[i]}, log_ratio);
+        values.polarized_curvature[i] = values.curvature[i];
+    }
+}
+
+// Bounds of beta + f c over beta and c in their own bounds.
+ParameterRange shifted(const PixelField::Range& index, const PixelField::Range& curvature, double factor) {
+    const double a = factor * curvature.low;
+    const double b = factor * curvature.high;
+    return {index.low + std::min(a, b), index.high + std::max(a, b), curvature.low, curvature.high};
+}
+
+}  // namespace
+
+SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization) {
+    const auto n = static_cast<std::size_t>(pixel_count(sky.grid, strip));
+    SkyStrip values;
+    values.intensity.resize(n);
+    values.index.resize(n);
+    values.curvature.resize(n);
+    sky.intensity.evaluate(sky.grid, strip, values.intensity);
+    sky.index.evaluate(sky.grid, strip, values.index);
+    sky.curvature.evaluate(sky.grid, strip, values.curvature);
+    for (std::size_t i = 0; i < n; ++i)
+        values.index[i] = index_at_reference(values.index[i], values.curvature[i], sky.index_log_ratio);
+    if (!with_polarization) return values;
+    FOREGLOW_EXPECTS(sky.polarization.has_value());
+    values.q.resize(n);
+    values.u.resize(n);
+    evaluate_stokes(sky, sky.polarization->stokes, strip, values.q, values.u);
+    if (sky.polarization->fraction) scale_to_fraction(sky, strip, values);
+    add_polarized_law(sky, strip, values);
+    return values;
+}
+
+ParameterRange parameter_range(const SkyModel& sky) {
+    return shifted(require_range(sky.index, "index"), require_range(sky.curvature, "curvature"), -2 * sky.index_log_ratio);
+}
+
+ParameterRange polarized_parameter_range(const SkyModel& sky) {
+    FOREGLOW_EXPECTS(sky.polarization.has_value());
+    if (sky.polarization->index) {
+        const auto own = require_range(*sky.polarization->index, "polarization index");
+        return {own.low, own.high, 0, 0};
+    }
+    const double log_ratio = log_frequency_ratio(sky.polarization->reference, sky.reference);
+    return shifted(require_range(sky.index, "index"), require_range(sky.curvature, "curvature"),
+                   2 * (log_ratio - sky.index_log_ratio));
+}
+
+bool polarization_shares_law(const SkyModel& sky) {
+    return sky.polarization && !sky.polarization->index && sky.polarization->reference == sky.reference;
+}
+
+}  // namespace foreglow

@@ -149,18 +149,18 @@ std::uint32_t sum_of_words(std::string_view bytes) {
     return fold_checksum(sum);
 }
 
-std::string quoted(std::string_view text) {
+std::string in_quotes(std::string_view text) {
     std::string out;
     return out.append(1, '\'').append(text).append(1, '\'');
 }
 
 /// Puts DATASUM, then the CHECKSUM that makes the whole HDU sum to minus zero, into a header.
 void sign_header(std::string& header, std::uint32_t data_sum) {
-    set_card_value(header, "DATASUM", quoted(std::to_string(data_sum)), false);
+    set_card_value(header, "DATASUM", in_quotes(std::to_string(data_sum)), false);
     const std::uint32_t total = fold_checksum(std::uint64_t{sum_of_words(header)} + data_sum);
     char encoded[17] = {};
     fits_encode_chksum(total, 1, encoded);
-    set_card_value(header, "CHECKSUM", quoted(encoded), false);
+    set_card_value(header, "CHECKSUM", in_quotes(encoded), false);
 }
 
 std::string column_name(std::string name) {

@@ -1,0 +1,52 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "picture/palette.h"
+
+#include <algorithm>
+#include <cmath>
+#include <numbers>
+
+#include "base/error.h"
+
+namespace foreglow {
+namespace {
+
+constexpr int steps = 1024;
+
+OklabColour formula(PaletteKind kind, double t) {
+    constexpr double pi = std::numbers::pi;
+    const double s = 2 * t - 1, size = std::abs(s);
+    switch (kind) {
+        case PaletteKind::Sequential:
+            return {0.17 + 0.80 * t, 0.13 * std::pow(std::sin(pi * t), 0.8) + 0.025, 200 + 225 * t};
+        case PaletteKind::Diverging:
+            return {0.96 - 0.60 * size, 0.15 * std::pow(std::sin(pi * size / 2), 0.9), s < 0 ? 250.0 : 50.0};
+        case PaletteKind::Grey:
+            break;
+    }
+    return {0.12 + 0.85 * t, 0, 0};
+}
+
+}  // namespace
+
+PaletteKind parse_palette(const std::string& text) {
+    if (text == "sequential") return PaletteKind::Sequential;
+    if (text == "diverging") return PaletteKind::Diverging;
+    if (text == "grey") return PaletteKind::Grey;
+    throw InputError("palette '" + text + "' is not known: write sequential, diverging or grey");
+}
+
+Palette::Palette(PaletteKind kind) {
+    colours_.reserve(steps);
+    for (int i = 0; i < steps; ++i) {
+        // sin(pi) is a hair below zero in floating point, and a power of that is no number
+        const double t = std::clamp(i / (steps - 1.0), 1e-12, 1 - 1e-12);
+        colours_.push_back(to_rgb(formula(kind, t)));
+    }
+}
+
+Rgb Palette::at(double position) const {
+    const double clamped = std::clamp(position, 0.0, 1.0);
+    return colours_[static_cast<std::size_t>(std::lround(clamped * (steps - 1)))];
+}
+
+}  // namespace foreglow

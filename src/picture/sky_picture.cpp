@@ -1,0 +1,198 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "picture/sky_picture.h"
+
+#include <algorithm>
+#include <cmath>
+
+#include "base/error.h"
+#include "base/parallel.h"
+#include "base/text.h"
+#include "picture/canvas.h"
+#include "picture/colour_bar.h"
+#include "picture/ink.h"
+#include "picture/sky_axes.h"
+#include "picture/sky_raster.h"
+#include "picture/ticks.h"
+
+namespace foreglow {
+namespace {
+
+double font_size_for(int width) {
+    return std::max(11.0, width / 60.0);
+}
+
+std::vector<Rgb> make_colours(const SkyRaster& raster, const ValueScale& scale, const Palette& palette) {
+    std::vector<Rgb> colours(raster.values.size(), paper);
+    parallel_for_blocks(raster.height, 16, [&](std::int64_t begin, std::int64_t end) {
+        for (std::int64_t i = begin * raster.width; i < end * raster.width; ++i) {
+            const auto at = static_cast<std::size_t>(i);
+            const double value = raster.values[at], share = static_cast<double>(raster.undefined_shares[at]);
+            if (is_defined(value)) {
+                const double position = scale.position(value);
+                const Rgb colour =
+                    std::isinf(position) && position < 0 ? not_positive_colour : palette.at(position);
+                colours[at] = share > 0 ? mix(colour, undefined_colour, share) : colour;
+            } else if (share > 0) {
+                colours[at] = undefined_colour;
+            }
+        }
+    });
+    return colours;
+}
+
+std::string bar_label(const SkyMap& map, const PictureOptions& options, const ValueScale& scale) {
+    const std::string unit = options.unit.empty() ? map.unit : options.unit;
+    std::string label = options.quantity;
+    if (!unit.empty()) label += label.empty() ? unit : " [" + unit + "]";
+    const std::string kind = scale.kind() == ScaleKind::Log ? "log scale"
+                             : scale.kind() == ScaleKind::Signed
+                                 ? "linear below " + format_label(scale.knee(), 2) + ", log beyond"
+                                 : "";
+    if (kind.empty()) return label;
+    return label.empty() ? kind : label + ", " + kind;
+}
+
+/// Draws a line of text centred at x, in smaller letters where it would be too wide and cut with an ellipsis
+/// at 60 %.
+void draw_fitted(Canvas& canvas, double x, double baseline, std::string text, Lettering lettering,
+                 double room) {
+    const double natural = canvas.text_width(text, lettering.size);
+    lettering.size *= std::clamp(room / std::max(natural, 1.0), 0.6, 1.0);
+    if (canvas.text_width(text, lettering.size) > room * 1.001) {
+        while (!text.empty() && canvas.text_width(text + "\u2026", lettering.size) > room) {
+            while (!text.empty() && (static_cast<unsigned char>(text.back()) & 0xC0U) == 0x80U)
+                text.pop_back();
+            if (!text.empty()) text.pop_back();
+        }
+        text += "\u2026";
+    }
+    lettering.align = Align::Centre;
+    canvas.text(x, baseline, text, lettering);
+}
+
+void check_width(int width) {
+    if (width < PictureOptions::least_width || width > PictureOptions::largest_width)
+        throw InputError("a picture can be " + std::to_string(PictureOptions::least_width) + " to " +
+                         std::to_string(PictureOptions::largest_width) + " pixels wide, and " +
+                         std::to_string(width) + " was asked for");
+}
+
+/// Where the parts of a picture stand, in pixels, for a map of a size.
+struct Layout {
+    double font = 12;
+    double title_baseline = 0, caption_baseline = 0;
+    Box map;
+    ColourBar bar;
+    int height = 0;
+};
+
+Layout make_layout(const PictureOptions& options, double left, double map_width, double map_height,
+                   double below, const std::string& whole, const ScaleChoice& choice) {
+    Layout layout;
+    const double f = layout.font = font_size_for(options.width);
+    double y = std::round(0.8 * f);
+    if (!options.title.empty()) {
+        layout.title_baseline = std::round(y + 1.3 * f);
+        y = std::round(y + 2.2 * f);
+    }
+    layout.map = {left, y, map_width, map_height};
+    y += map_height + below;
+    layout.caption_baseline = std::round(y + 1.5 * f);
+    y = std::round(y + 2.6 * f);
+    const double bar_width = std::round(0.62 * options.width);
+    layout.bar.bar = {std::round((options.width - bar_width) / 2), y, bar_width, std::round(1.1 * f)};
+    layout.bar.font_size = f;
+    layout.bar.whole = whole;
+    layout.height = static_cast<int>(std::ceil(y + colour_bar_height(layout.bar, choice) + 0.4 * f));
+    return layout;
+}
+
+/// The common end of both kinds of picture: title, caption, colour bar, bytes.
+Picture finish(Canvas& canvas, Layout layout, const SkyMap& map, const PictureOptions& options,
+               const std::string& caption, ScaleChoice choice, const Palette& palette) {
+    const double f = layout.font, middle = canvas.width() / 2.0, room = canvas.width() - 2 * f;
+    if (!options.title.empty())
+        draw_fitted(canvas, middle, layout.title_baseline, options.title, {.size = 1.3 * f, .colour = ink},
+                    room);
+    draw_fitted(canvas, middle, layout.caption_baseline, caption, {.size = 0.85 * f, .colour = faint_ink},
+                room);
+    layout.bar.label = bar_label(map, options, choice.scale);
+    draw_colour_bar(canvas, layout.bar, choice, palette);
+    return {canvas.png(), canvas.width(), canvas.height(), std::move(choice.notices)};
+}
+
+Palette palette_for(const PictureOptions& options, const ValueScale& scale) {
+    const bool is_signed = scale.kind() == ScaleKind::Signed;
+    return Palette(options.palette.value_or(is_signed ? PaletteKind::Diverging : PaletteKind::Sequential));
+}
+
+}  // namespace
+
+Picture draw_all_sky(const SkyMap& map, const PictureOptions& options) {
+    check_width(options.width);
+    ScaleChoice choice = choose_scale(map.values, options.scale);
+    const Palette palette = palette_for(options, choice.scale);
+    const double f = font_size_for(options.width);
+    const double left = std::round(2.6 * f);
+    const int map_height = static_cast<int>((options.width - left - std::round(1.2 * f)) / 2);
+    const int map_width = 2 * map_height;
+    const Layout layout = make_layout(options, left, map_width, map_height, 0, "sky", choice);
+    Canvas canvas(options.width, layout.height, paper);
+    const SkyRaster raster = make_all_sky_raster(map, map_width, map_height);
+    canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), map_width, map_height,
+                 make_colours(raster, choice.scale, palette));
+    canvas.fill_around_ellipse({left - 1, layout.map.y - 1, map_width + 2.0, map_height + 2.0}, layout.map,
+                               paper);
+    draw_ellipse_graticule(canvas, layout.map, f);
+    canvas.stroke_ellipse(layout.map, {ink, hairline(f)});
+    const CoordinateNames names = coordinate_names(map.frame);
+    const std::string caption = names.longitude + " (grows to the left, 0\u00b0 in the middle) and " +
+                                to_lower(names.latitude) + ", Mollweide projection, nside " +
+                                std::to_string(map.grid.nside());
+    return finish(canvas, layout, map, options, caption, std::move(choice), palette);
+}
+
+Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const PictureOptions& options) {
+    check_width(options.width);
+    const double size = field.size.degrees(), latitude = field.latitude.degrees();
+    if (!(size > 0 && size <= CloseUpField::largest_size_deg))
+        throw InputError("a close-up can be up to 120 deg wide, and " + format_number(size, 6) +
+                         " deg was asked for");
+    if (!(std::abs(latitude) <= 90))
+        throw InputError("the latitude of a close-up's centre lies between -90 and 90 deg, and " +
+                         format_number(latitude, 6) + " was asked for");
+    const double f = font_size_for(options.width);
+    const double left = std::round(6.5 * f);
+    const int side = static_cast<int>(options.width - 2 * left);
+    const SkyRaster raster = make_close_up_raster(map, field.longitude, field.latitude, field.size, side);
+    ScaleChoice choice = choose_scale(raster.values, options.scale);
+    const Palette palette = palette_for(options, choice.scale);
+    const Layout layout = make_layout(options, left, side, side, std::round(3.2 * f), "field", choice);
+    Canvas canvas(options.width, layout.height, paper);
+    canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), side, side,
+                 make_colours(raster, choice.scale, palette));
+    draw_field_graticule(canvas, layout.map, field, f);
+    const Box& box = layout.map;
+    canvas.stroke(std::vector<Point>{{box.x, box.y},
+                                     {box.x + box.width, box.y},
+                                     {box.x + box.width, box.y + box.height},
+                                     {box.x, box.y + box.height}},
+                  {ink, hairline(f), 1, true});
+    const CoordinateNames names = coordinate_names(map.frame);
+    const bool pole = has_pole(field);
+    const std::string below =
+        pole ? names.longitude + " along the rim, " + to_lower(names.latitude) + " on the rings"
+             : names.longitude;
+    canvas.text(box.x + box.width / 2, std::round(box.y + box.height + 2.9 * f), below,
+                {.size = f, .colour = ink, .align = Align::Centre});
+    if (!pole)
+        canvas.text(std::round(1.6 * f), box.y + box.height / 2, names.latitude,
+                    {.size = f, .colour = ink, .align = Align::Centre, .upwards = true});
+    const std::string caption =
+        format_number(size, 6) +
+        "\u00b0 across, gnomonic projection, north up, longitude grows to the left, nside " +
+        std::to_string(map.grid.nside());
+    return finish(canvas, layout, map, options, caption, std::move(choice), palette);
+}
+
+}  // namespace foreglow

@@ -115,4 +115,21 @@ std::string describe(const TomlValue& value) {
     return "";
 }
 
+std::string to_toml_string(std::string_view text) {
+    constexpr std::string_view digits = "0123456789ABCDEF";
+    std::string quoted = "\"";
+    for (const char c : text) {
+        const auto byte = static_cast<unsigned char>(c);
+        if (byte < 0x20 || byte == 0x7f) {
+            quoted += "\\u00";
+            quoted += digits[byte >> 4U];
+            quoted += digits[byte & 15U];
+            continue;
+        }
+        if (c == '"' || c == '\\') quoted += '\\';
+        quoted += c;
+    }
+    return quoted + "\"";
+}
+
 }  // namespace foreglow

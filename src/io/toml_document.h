@@ -36,6 +36,9 @@ struct TomlValue {
 /// Says in words what a value is, for messages: "the string 'abc'", "the whole number 3", "an array".
 [[nodiscard]] std::string describe(const TomlValue& value);
 
+/// Writes a text as a TOML basic string, quotes included.
+[[nodiscard]] std::string to_toml_string(std::string_view text);
+
 /// Sets a value by "key=value" as given to --set.
 ///
 /// Keys are dotted (channel_grid.count); an element of an array of tables is reached by its `name` or its

@@ -10,15 +10,6 @@
 namespace foreglow {
 namespace {
 
-std::string quoted(const std::string& text) {
-    std::string escaped = "\"";
-    for (const char c : text) {
-        if (c == '"' || c == '\\') escaped += '\\';
-        escaped += c;
-    }
-    return to_one_line(escaped) + "\"";
-}
-
 /// Collects a study's values, each with the option it came from as its place, and the text of the file that
 /// says the same.
 class OptionTable {
@@ -30,7 +21,7 @@ class OptionTable {
         TomlValue value;
         value.type = TomlValue::Type::String;
         value.text = *text;
-        add(key, value, quoted(*text));
+        add(key, value, to_toml_string(*text));
     }
     void add_integer(const std::string& key, const std::optional<std::int64_t>& number) {
         if (!number) return;
@@ -92,7 +83,7 @@ std::string name_of(const std::string& frequency) {
 }
 
 OptionTable make_channel(const StudyOptions& options, const std::string& frequency) {
-    OptionTable channel("--frequency " + quoted(frequency));
+    OptionTable channel("--frequency " + to_toml_string(frequency));
     channel.add_text("name", name_of(frequency));
     channel.add_text("frequency", frequency);
     channel.add_text("bandwidth", options.bandwidth);

@@ -17,9 +17,9 @@ OklabColour formula(PaletteKind kind, double t) {
     const double s = 2 * t - 1, size = std::abs(s);
     switch (kind) {
         case PaletteKind::Sequential:
-            return {0.17 + 0.80 * t, 0.13 * std::pow(std::sin(pi * t), 0.8) + 0.025, 200 + 225 * t};
+            return {0.20 + 0.76 * t, 0.125 * std::sin(pi * t) + 0.02, 215 + 210 * t};
         case PaletteKind::Diverging:
-            return {0.96 - 0.60 * size, 0.15 * std::pow(std::sin(pi * size / 2), 0.9), s < 0 ? 250.0 : 50.0};
+            return {0.96 - 0.60 * size, 0.125 * std::sin(0.75 * pi * size), s < 0 ? 250.0 : 50.0};
         case PaletteKind::Grey:
             break;
     }
@@ -38,9 +38,7 @@ PaletteKind parse_palette(const std::string& text) {
 Palette::Palette(PaletteKind kind) {
     colours_.reserve(steps);
     for (int i = 0; i < steps; ++i) {
-        // sin(pi) is a hair below zero in floating point, and a power of that is no number
-        const double t = std::clamp(i / (steps - 1.0), 1e-12, 1 - 1e-12);
-        colours_.push_back(to_rgb(formula(kind, t)));
+        colours_.push_back(to_rgb(formula(kind, i / (steps - 1.0))));
     }
 }
 

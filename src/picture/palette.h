@@ -12,11 +12,12 @@ namespace foreglow {
 ///
 /// All are computed in Oklab (lightness L, chroma C, hue h), so that equal steps look equal and lightness
 /// alone, which every kind of colour vision sees, orders the values.
-/// - Sequential: L = 0.17 + 0.80 t, h = 200 + 225 t [deg], C = 0.13 sin(pi t)^0.8 + 0.025; deep teal, blue,
+/// - Sequential: L = 0.20 + 0.76 t, h = 215 + 210 t [deg], C = 0.125 sin(pi t) + 0.02; deep teal, blue,
 ///   mauve, rose, cream.
-/// - Diverging, with s = 2 t - 1: L = 0.96 - 0.60 |s|, C = 0.15 sin(pi |s|/2)^0.9, h = 250 where s < 0 and 50
+/// - Diverging, with s = 2 t - 1: L = 0.96 - 0.60 |s|, C = 0.125 sin(3 pi |s|/4), h = 250 where s < 0 and 50
 ///   where s > 0; blue, near-white, rust.
 /// - Grey: L = 0.12 + 0.85 t, C = 0.
+/// All of these colours exist on a screen, so that none is clipped.
 enum class PaletteKind { Sequential, Diverging, Grey };
 
 /// Reads "sequential", "diverging" or "grey".

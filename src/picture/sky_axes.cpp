@@ -34,7 +34,9 @@ std::string degrees_label(double value) {
 }
 
 std::string latitude_label(double latitude) {
-    return (latitude > 1e-9 ? "+" : "") + degrees_label(latitude);
+    std::string label = latitude > 1e-9 ? "+" : "";
+    label += degrees_label(latitude);
+    return label;
 }
 
 double full_circle(double longitude) {

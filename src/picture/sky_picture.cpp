@@ -86,23 +86,29 @@ struct Layout {
     int height = 0;
 };
 
-Layout make_layout(const PictureOptions& options, double left, double map_width, double map_height,
-                   double below, const std::string& whole, const ScaleChoice& choice) {
+/// What the axes of a map need around it.
+struct Surroundings {
+    double above = 0, below = 0;
+    std::string whole;  ///< "sky" or "field"
+};
+
+Layout make_layout(const PictureOptions& options, const Box& map, const Surroundings& around,
+                   const ScaleChoice& choice) {
     Layout layout;
     const double f = layout.font = font_size_for(options.width);
-    double y = std::round(0.8 * f);
+    double y = std::round(0.8 * f + around.above);
     if (!options.title.empty()) {
-        layout.title_baseline = std::round(y + 1.3 * f);
+        layout.title_baseline = std::round(2.1 * f);
         y = std::round(y + 2.2 * f);
     }
-    layout.map = {left, y, map_width, map_height};
-    y += map_height + below;
+    layout.map = {map.x, y, map.width, map.height};
+    y += map.height + around.below;
     layout.caption_baseline = std::round(y + 1.5 * f);
     y = std::round(y + 2.6 * f);
     const double bar_width = std::round(0.62 * options.width);
     layout.bar.bar = {std::round((options.width - bar_width) / 2), y, bar_width, std::round(1.1 * f)};
     layout.bar.font_size = f;
-    layout.bar.whole = whole;
+    layout.bar.whole = around.whole;
     layout.height = static_cast<int>(std::ceil(y + colour_bar_height(layout.bar, choice) + 0.4 * f));
     return layout;
 }
@@ -136,7 +142,8 @@ Picture draw_all_sky(const SkyMap& map, const PictureOptions& options) {
     const double left = std::round(2.6 * f);
     const int map_height = static_cast<int>((options.width - left - std::round(1.2 * f)) / 2);
     const int map_width = 2 * map_height;
-    const Layout layout = make_layout(options, left, map_width, map_height, 0, "sky", choice);
+    const Layout layout =
+        make_layout(options, {left, 0, 1.0 * map_width, 1.0 * map_height}, {0, 0, "sky"}, choice);
     Canvas canvas(options.width, layout.height, paper);
     const SkyRaster raster = make_all_sky_raster(map, map_width, map_height);
     canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), map_width, map_height,
@@ -167,7 +174,8 @@ Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const Pictur
     const SkyRaster raster = make_close_up_raster(map, field.longitude, field.latitude, field.size, side);
     ScaleChoice choice = choose_scale(raster.values, options.scale);
     const Palette palette = palette_for(options, choice.scale);
-    const Layout layout = make_layout(options, left, side, side, std::round(3.2 * f), "field", choice);
+    const Surroundings around{has_pole(field) ? std::round(1.4 * f) : 0, std::round(3.2 * f), "field"};
+    const Layout layout = make_layout(options, {left, 0, 1.0 * side, 1.0 * side}, around, choice);
     Canvas canvas(options.width, layout.height, paper);
     canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), side, side,
                  make_colours(raster, choice.scale, palette));

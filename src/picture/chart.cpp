@@ -131,14 +131,14 @@ std::string write_axes(const Plot& plot) {
     for (const Tick& tick : make_ticks(plot.x_scale, [](const std::string& text) {
              return (rough_length(text) + 1.4 * letter) / plot_width;
          })) {
-        const std::string x = coordinate(plot.x(tick.value));
-        grid += "M" + x + " " + coordinate(plot.plot_top) + "V" + coordinate(plot.plot_bottom);
+        grid += join({"M", coordinate(plot.x(tick.value)), " ", coordinate(plot.plot_top), "V",
+                      coordinate(plot.plot_bottom)});
         labels += text_element(plot.x(tick.value), plot.plot_bottom + 1.4 * letter, "middle", tick.label);
     }
     for (const Tick& tick :
          make_ticks(plot.y_scale, [&](const std::string&) { return 2.2 * letter / plot_height; })) {
-        grid +=
-            "M" + coordinate(left) + " " + coordinate(plot.y(tick.value)) + "H" + coordinate(width - right);
+        grid += join(
+            {"M", coordinate(left), " ", coordinate(plot.y(tick.value)), "H", coordinate(width - right)});
         labels += text_element(left - 8, plot.y(tick.value) + 0.35 * letter, "end", tick.label);
     }
     std::string out =
@@ -164,14 +164,14 @@ std::string write_series(const Plot& plot, const ChartSeries& series, const Styl
             pen_down = false;
             continue;
         }
-        line += (pen_down ? "L" : "M") + coordinate(plot.x(vx)) + " " + coordinate(plot.y(vy));
+        line += join({pen_down ? "L" : "M", coordinate(plot.x(vx)), " ", coordinate(plot.y(vy))});
         pen_down = true;
         if (series.has_marks) marks += mark(style.mark, plot.x(vx), plot.y(vy), colour);
         if (series.half_widths.empty() || !(series.half_widths[i] > 0)) continue;
         const double low = std::clamp(plot.x_scale.position(vx - series.half_widths[i]), 0.0, 1.0);
         const double high = std::clamp(plot.x_scale.position(vx + series.half_widths[i]), 0.0, 1.0);
-        bars += "M" + coordinate(left + low * plot_width) + " " + coordinate(plot.y(vy)) + "H" +
-                coordinate(left + high * plot_width);
+        bars += join({"M", coordinate(left + low * plot_width), " ", coordinate(plot.y(vy)), "H",
+                      coordinate(left + high * plot_width)});
     }
     std::string out;
     if (series.has_line && !line.empty()) {

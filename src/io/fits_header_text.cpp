@@ -19,7 +19,7 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t block_bytes = 2880;
-constexpr std::int64_t card_chars = 80;
+constexpr std::size_t card_chars = 80;
 constexpr std::int64_t full_row_pixels = 1024;  // the row length of released HEALPix maps
 constexpr const char* empty_checksum = "0000000000000000";
 
@@ -78,7 +78,7 @@ class HeaderBuilder {
         if (digits.size() < 20) card.append(20 - digits.size(), ' ');
         card += digits;
         if (!comment.empty()) card += " / " + printable(comment);
-        card.resize(static_cast<std::size_t>(card_chars), ' ');
+        card.resize(card_chars, ' ');
         check(fits_write_record(file_, card.c_str(), &status_));
     }
     void add_card(const FitsCard& card) {
@@ -99,14 +99,12 @@ class HeaderBuilder {
         char* cards = nullptr;
         int count = 0;
         check(fits_hdr2str(file_, 0, nullptr, 0, &cards, &count, &status_));
-        std::string out(cards,
-                        static_cast<std::size_t>(count + 1) * card_chars);  // the END card is not counted
+        std::string out(cards);  // whole cards, END included
         fits_free_memory(cards, &status_);
         out.resize(static_cast<std::size_t>(round_up_to_fits_block(static_cast<std::int64_t>(out.size()))),
                    ' ');
         return out;
     }
-    void return_to_primary() { check(fits_movabs_hdu(file_, 1, nullptr, &status_)); }
 
   private:
     static void check(int status) { FOREGLOW_EXPECTS(status == 0); }

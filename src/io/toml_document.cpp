@@ -24,6 +24,11 @@ std::string to_place(const std::string& file_name, const toml::source_position& 
     return file_name + ":" + std::to_string(line) + ":" + std::to_string(column);
 }
 
+/// Writes 3.0 as the file has it, so that nobody is told that 3 is no whole number.
+std::string with_point(std::string number) {
+    return number.find_first_not_of("-0123456789") == std::string::npos ? number + ".0" : number;
+}
+
 TomlValue to_value(const toml::node& node, const std::string& file_name);
 
 void add_entries(TomlValue& value, const toml::table& table, const std::string& file_name) {
@@ -102,7 +107,7 @@ std::string describe(const TomlValue& value) {
         case TomlValue::Type::Integer:
             return "the whole number " + std::to_string(value.integer);
         case TomlValue::Type::Float:
-            return "the number " + format_exact(value.number);
+            return "the number " + with_point(format_exact(value.number));
         case TomlValue::Type::Boolean:
             return value.boolean ? "true" : "false";
         case TomlValue::Type::Date:

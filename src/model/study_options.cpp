@@ -133,6 +133,13 @@ StudySpec make_study_from_options(const StudyOptions& options) {
         apply_override(document, assignment);
         source += to_one_line("# --set " + assignment) + "\n";
     }
+    for (const auto& [key, option] : {std::pair("model", "--model disc-and-loops"),
+                                      {"nside", "--nside 64"},
+                                      {"channel", "--frequency \"70 GHz\""}})
+        if (find_value(document, key) == nullptr &&
+            (key != std::string("channel") || find_value(document, "channel_grid") == nullptr))
+            throw InputError(std::string("without a study file the option ") + split(option, ' ').front() +
+                             " is needed: add it, for example " + option);
     StudySpec study = make_study(document, {});
     study.source = source;
     return study;

@@ -297,8 +297,10 @@ FitsMapHeader make_fits_map_header(const FitsTable& table, const FitsMapRequest&
 
 Ordering required_ordering(const FitsMapHeader& header, const FitsMapRequest& request) {
     if (header.ordering) return *header.ordering;
+    const std::optional<std::string> card = header.text("ORDERING");
     throw InputError(message_place(request) + request.path.string() +
-                     " does not say in which order its pixels are (no card ORDERING); " +
+                     " does not say in which order its pixels are (" +
+                     (card ? "ORDERING = '" + *card + "'" : "no card ORDERING") + "); " +
                      advice_to_add(request, "ordering = \"ring\"") + " or `ordering = \"nested\"`");
 }
 

@@ -21,6 +21,7 @@ namespace foreglow {
 namespace {
 
 constexpr int most_hdus = 1000;
+constexpr std::int64_t most_fields = 999;  // FITS 4.0, section 7.3.1
 
 /// Returns CFITSIO's words for a status, after forgetting its own pile of messages.
 std::string status_text(int status) {
@@ -88,6 +89,12 @@ double number_card(const std::vector<FitsCard>& cards, const std::string& key, d
     return otherwise;
 }
 
+std::int64_t whole_card(const std::vector<FitsCard>& cards, const std::string& key, std::int64_t otherwise) {
+    const FitsCard* card = find_card(cards, key);
+    const auto* whole = card == nullptr ? nullptr : std::get_if<std::int64_t>(&card->value);
+    return whole == nullptr ? otherwise : *whole;
+}
+
 std::string text_card(const std::vector<FitsCard>& cards, const std::string& key) {
     const FitsCard* card = find_card(cards, key);
     const auto* text = card == nullptr ? nullptr : std::get_if<std::string>(&card->value);
@@ -104,7 +111,7 @@ std::string describe_hdu(fitsfile* file, int type, const std::vector<FitsCard>& 
         const std::string name = text_card(cards, "EXTNAME");
         return std::string(type == ASCII_TBL ? "a text table" : "a binary table") +
                (name.empty() ? "" : " '" + name + "'") + " of " +
-               std::to_string(static_cast<std::int64_t>(number_card(cards, "NAXIS2", 0))) + " rows";
+               std::to_string(whole_card(cards, "NAXIS2", 0)) + " rows";
     }
     int status = 0, axes = 0;
     LONGLONG lengths[9] = {};
@@ -174,6 +181,7 @@ struct FitsTableFile::Impl {
 
     void open_file();
     void find_table();
+    [[noreturn]] void fail_without_table(const std::string& seen) const;
     void read_columns();
     void check_length();
     void read_with_library(std::int64_t offset, std::span<std::byte> out) const;
@@ -244,21 +252,32 @@ void FitsTableFile::Impl::find_table() {
         }
     }
     fits_clear_errmsg();
+    fail_without_table(seen);
+}
+
+/// Says what the file holds in place of a map, and what to do about it.
+void FitsTableFile::Impl::fail_without_table(const std::string& seen) const {
     if (request.hdu) {
         throw InputError(message_place(request) + "there is no HDU " + std::to_string(*request.hdu) + " in " +
                          request.path.string() + ": " + seen +
                          "; 0 is the primary HDU, 1 the first extension");
     }
-    throw DataError(request.path.string() +
-                    ": no HEALPix map in this file (a binary table with PIXTYPE = 'HEALPIX'): " + seen +
-                    "; if one of them is a map all the same, name it with `hdu`");
+    const std::string none =
+        request.path.string() +
+        ": no HEALPix map in this file (a binary table with PIXTYPE = 'HEALPIX'): " + seen;
+    if (seen == "HDU 0 is empty") {
+        throw DataError(none +
+                        " and nothing readable follows; the file is damaged or cut short: get it again");
+    }
+    if (seen.find("a binary table") == std::string::npos) throw DataError(none + "; name another file");
+    throw DataError(none + "; if a table is a map all the same, name its HDU with `hdu`");
 }
 
 void FitsTableFile::Impl::read_columns() {
     const std::string where = message_table(request, table.hdu);
-    table.rows = static_cast<std::int64_t>(number_card(table.cards, "NAXIS2", -1));
-    table.row_bytes = static_cast<std::int64_t>(number_card(table.cards, "NAXIS1", -1));
-    const auto fields = static_cast<int>(number_card(table.cards, "TFIELDS", 0));
+    table.rows = whole_card(table.cards, "NAXIS2", -1);
+    table.row_bytes = whole_card(table.cards, "NAXIS1", -1);
+    const std::int64_t fields = std::min<std::int64_t>(whole_card(table.cards, "TFIELDS", 0), most_fields);
     std::int64_t offset = 0;
     for (int number = 1; number <= fields; ++number) {
         const std::string n = std::to_string(number);

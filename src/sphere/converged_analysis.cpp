@@ -29,6 +29,14 @@ void subtract_from_map(std::span<const double> map, const std::array<PixelRange,
         });
 }
 
+/// What one refinement leaves of the error in the long run, measured on rough skies at nside 64 to 256 and
+/// rounded up: 0.07 at lmax = 1.5 nside, 0.12 at 2, 0.27 to 0.31 at 2.5; from about 3 nside on it no longer
+/// contracts.
+double usual_contraction(int nside, int lmax) {
+    const double ratio = static_cast<double>(lmax) / nside;
+    return ratio <= 2.0 ? 0.15 : ratio <= 2.5 ? 0.35 : 0.5;
+}
+
 Alm correction_of(const Alm& alm, const HealpixGrid& grid, std::span<const double> map) {
     Alm out(alm.lmax());
     std::vector<double> strip;
@@ -81,7 +89,8 @@ void add(AlmEB& alm, const AlmEB& correction) {
 }
 
 template <typename Coefficients, typename Correct>
-ConvergenceReport refine(Coefficients& alm, const Correct& correct, const ConvergenceOptions& options) {
+ConvergenceReport refine(Coefficients& alm, const Correct& correct, double usual,
+                         const ConvergenceOptions& options) {
     FOREGLOW_EXPECTS(options.tolerance >= 0 && options.max_iterations >= 0);
     ConvergenceReport report;
     while (report.iterations < options.max_iterations && !report.reached) {
@@ -95,7 +104,9 @@ ConvergenceReport refine(Coefficients& alm, const Correct& correct, const Conver
         const bool has_ratio = report.iterations > 1 && report.relative_correction > 0;
         report.contraction = has_ratio ? relative / report.relative_correction : 0.0;
         report.relative_correction = relative;
-        const double ratio = has_ratio ? report.contraction : 0.5;
+        // The first ratios are too good: smooth parts converge at once and the slow ones are still hidden
+        // behind them.
+        const double ratio = std::max(report.contraction, usual);
         report.relative_error = ratio < 1.0 ? relative * ratio / (1.0 - ratio) : relative;
         report.reached = options.tolerance > 0 && report.relative_error <= options.tolerance;
     }
@@ -109,7 +120,8 @@ ConvergedAlm analyse_converged(const HealpixGrid& grid, std::span<const double> 
                                const ConvergenceOptions& options) {
     ConvergedAlm out{analyse(grid, map, lmax, options.start_weights), {}};
     out.report = refine(
-        out.alm, [&](const Alm& alm) { return correction_of(alm, grid, map); }, options);
+        out.alm, [&](const Alm& alm) { return correction_of(alm, grid, map); },
+        usual_contraction(grid.nside(), lmax), options);
     return out;
 }
 
@@ -118,7 +130,8 @@ ConvergedAlmEB analyse_converged_spin2(const HealpixGrid& grid, std::span<const 
                                        const ConvergenceOptions& options) {
     ConvergedAlmEB out{analyse_spin2(grid, q, u, lmax, options.start_weights), {}};
     out.report = refine(
-        out.alm, [&](const AlmEB& alm) { return correction_of(alm, grid, q, u); }, options);
+        out.alm, [&](const AlmEB& alm) { return correction_of(alm, grid, q, u); },
+        usual_contraction(grid.nside(), lmax), options);
     return out;
 }
 

@@ -48,9 +48,9 @@ struct ConvergedAlmEB {
 /// the size of correction k and r = d_k / d_(k-1), what remains is estimated as d_k r / (1 - r); with one
 /// correction only, as d_1 (r = 1/2). Transforms go by strips, so that the residual map is never whole in
 /// memory.
+/// A refinement that does not reach its tolerance is no error here: the report says so.
 /// @param map  [npix], each pixel defined
 /// @throws ContractError where a pixel is undefined
-/// A refinement that does not reach its tolerance is no error here: the report says so.
 [[nodiscard]] ConvergedAlm analyse_converged(const HealpixGrid& grid, std::span<const double> map, int lmax,
                                              const ConvergenceOptions& options = {});
 [[nodiscard]] ConvergedAlmEB analyse_converged_spin2(const HealpixGrid& grid, std::span<const double> q,

@@ -8,6 +8,7 @@
 #include <string>
 
 #include "base/error.h"
+#include "base/parallel.h"
 #include "base/text.h"
 #include "sphere/grid.h"
 #include "sphere/silenced_stream.h"
@@ -17,6 +18,19 @@ namespace {
 
 constexpr int iterations_allowed = 2000;  // nside 8192 and lmax 3 nside need some 200
 
+/// Holds parallel work to one thread: each step is too short to share, and waiting for each other costs many
+/// times the work.
+class OneThread {
+  public:
+    OneThread() : before_(thread_count()) { set_thread_count(1); }
+    OneThread(const OneThread&) = delete;
+    OneThread& operator=(const OneThread&) = delete;
+    ~OneThread() { set_thread_count(before_); }
+
+  private:
+    int before_;
+};
+
 }  // namespace
 
 RingWeights make_ring_weights(int nside, int lmax, double epsilon) {
@@ -25,6 +39,7 @@ RingWeights make_ring_weights(int nside, int lmax, double epsilon) {
     out.nside = nside;
     double reached = 0;
     try {
+        const OneThread one_thread;
         const SilencedStream no_counter(std::cout), no_message(std::cerr);
         out.values = get_ringweights(nside, lmax / 2 * 2, epsilon, iterations_allowed, reached);
     } catch (const PlanckError& error) {

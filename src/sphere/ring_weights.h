@@ -16,8 +16,10 @@ struct RingWeights {
 ///
 /// A map limited to l1 analysed up to l2 wants lmax = l1 + l2; weights exist up to about 3 nside.
 /// @param lmax     made even by rounding down
-/// @param epsilon  norm of the residual over that of uniform weights at which the iteration ends
+/// @param epsilon  norm of the residual over that of uniform weights at which the iteration ends; 1e-6 puts
+/// the weights
+///                 within 1e-8. Seconds on one core: 0.05 at nside 512, 1 at 2048, 20 at 8192
 /// @throws NumericError when the iteration does not get there
-[[nodiscard]] RingWeights make_ring_weights(int nside, int lmax, double epsilon = 1e-9);
+[[nodiscard]] RingWeights make_ring_weights(int nside, int lmax, double epsilon = 1e-6);
 
 }  // namespace foreglow

@@ -140,7 +140,8 @@ void add_polarization(ModelText& model, const FitsMapHeader& header, const FitsM
 StartResult make_start_model(const FitsMapHeader& header, const std::filesystem::path& map) {
     const std::string map_text = to_toml_string(map.string());
     ModelText body;
-    body.add("title = " + to_toml_string(map.stem().string()));
+    body.add("title = " +
+             to_toml_string(map.extension() == ".gz" ? map.stem().stem().string() : map.stem().string()));
     add_frequency(body, header);
     if (const FitsMapColumnInfo* intensity = find_intensity(header))
         add_intensity(body, header, *intensity, map_text);

@@ -88,8 +88,12 @@ TomlValue parse_toml(std::string_view text, const std::string& file_name) {
     try {
         return to_value(toml::parse(text), file_name);
     } catch (const toml::parse_error& error) {
+        const std::string description(error.description());
+        // What a string without its closing quote runs into is the end of its line.
+        const bool is_open = description.find("control characters") != std::string::npos;
         throw InputError(to_one_line(to_place(file_name, error.source().begin) +
-                                     ": this is not valid TOML: " + std::string(error.description())));
+                                     ": this is not valid TOML: " + description +
+                                     (is_open ? " (is a closing quote missing?)" : "")));
     }
 }
 

@@ -16,7 +16,7 @@
 namespace foreglow {
 namespace {
 
-constexpr double width = 720, height = 400, left = 84, right = 20, top = 14, bottom = 58, letter = 14;
+constexpr double width = 720, height = 400, left = 94, right = 20, top = 14, bottom = 58, letter = 14;
 constexpr double plot_width = width - left - right, legend_row = 22;
 
 std::string coordinate(double value) {

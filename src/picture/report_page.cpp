@@ -85,7 +85,7 @@ std::string write_figure(const ReportFigure& figure) {
     if (figure.width > 0 && figure.height > 0)
         out += join(
             {" width=\"", std::to_string(figure.width), "\" height=\"", std::to_string(figure.height), "\""});
-    out += ">";
+    out += "/>";
     if (!figure.caption.empty()) out += join({"<figcaption>", prose(figure.caption), "</figcaption>"});
     return out + "</figure>\n";
 }
@@ -93,7 +93,7 @@ std::string write_figure(const ReportFigure& figure) {
 std::string write_figures(const std::vector<ReportFigure>& figures) {
     if (figures.empty()) return "";
     std::string out = join({"<section>\n", heading("Pictures"), "<div class=\"figures",
-                            figures.size() == 1 ? " single" : "", "\">\n"});
+                            figures.size() % 2 == 1 ? " odd" : "", "\">\n"});
     for (const ReportFigure& figure : figures)
         out += write_figure(figure);
     return out + "</div>\n</section>\n";
@@ -168,8 +168,8 @@ std::string write_files(const ReportContent& content) {
 }
 
 std::string write_head(const std::string& title) {
-    return join({"<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n",
-                 "<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n<title>",
+    return join({"<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\"/>\n",
+                 "<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\"/>\n<title>",
                  escape_markup(title), "</title>\n<style>", make_report_style(), "</style>\n</head>\n"});
 }
 

@@ -30,20 +30,21 @@ a { color: var(--link); }
   border-radius: 0 6px 6px 0; }
 .warnings h2 { margin: 0 0 .3rem; border: 0; padding: 0; font-size: 1rem; }
 .warnings ul { margin: 0; padding-left: 1.2rem; }
-dl { margin: 0; display: grid; grid-template-columns: repeat(auto-fill, minmax(min(100%, 19rem), 1fr)); gap: 1px;
-  background: var(--line); border: 1px solid var(--line); border-radius: 6px; overflow: hidden; }
-dl > div { background: var(--card); padding: .6rem .9rem; }
+dl { margin: 0; display: flex; flex-wrap: wrap; gap: 1px; background: var(--line); border: 1px solid var(--line); border-radius: 6px; overflow: hidden; }
+dl > div { flex: 1 1 17rem; background: var(--card); padding: .6rem .9rem; }
 dt { color: var(--faint); font-size: .85rem; }
 dd { margin: 0; font-variant-numeric: tabular-nums; }
 dd .value { font-weight: 600; }
 dd .note { display: block; font-size: .85rem; }
 .figures { display: grid; grid-template-columns: repeat(auto-fit, minmax(min(100%, 30rem), 1fr)); gap: 1.2rem; }
+.odd > :first-child { grid-column: 1 / -1; }
 figure { margin: 0; min-width: 0; }
 figure img { display: block; width: 100%; height: auto; background: #fff; border: 1px solid var(--line);
   border-radius: 6px; }
 figure svg { display: block; width: 100%; height: auto; background: var(--card); border: 1px solid var(--line);
   border-radius: 6px; }
-.chart { max-width: 52rem; margin-top: 1rem; }
+.chart { max-width: 52rem; margin-top: 1rem; overflow-x: auto; }
+.chart svg { min-width: 34rem; }
 figcaption { font-size: .9rem; margin-top: .4rem; }
 .scroll { overflow: auto; max-height: 34rem; border: 1px solid var(--line); border-radius: 6px; background: var(--card); }
 table { border-collapse: collapse; width: 100%; font-size: .9rem; font-variant-numeric: tabular-nums; }
@@ -59,7 +60,7 @@ footer { margin-top: 2.5rem; padding-top: .8rem; padding-bottom: 2rem; font-size
     --link: #000; --warn: #fff; --warn-line: #555; }
   body { font-size: 10pt; } main, header, footer { max-width: none; padding: 0; }
   .band { print-color-adjust: exact; -webkit-print-color-adjust: exact; }
-  .figures { grid-template-columns: 1fr 1fr; gap: .6rem; } .figures.single { grid-template-columns: 1fr; }
+  .figures { grid-template-columns: 1fr 1fr; gap: .6rem; } .chart { overflow: visible; } .chart svg { min-width: 0; }
   .scroll { max-height: none; overflow: visible; } th { position: static; }
   pre { white-space: pre-wrap; } h2, h3 { break-after: avoid; } figure, dl > div, tr, pre { break-inside: avoid; } }
 )css";

@@ -51,7 +51,7 @@ std::vector<Tick> linear_ticks(const ValueScale& scale, const LabelShare& share)
             if (span / step > 60) continue;
             std::vector<double> values;
             for (double n = std::ceil(scale.low() / step - 1e-9); n <= scale.high() / step + 1e-9; ++n)
-                values.push_back(decimal(n * mantissa, exponent));
+                values.push_back(decimal(n * mantissa, exponent) + 0.0);  // -0 becomes 0
             auto ticks = make_list(scale, std::move(values));
             if (has_room(ticks, share)) return ticks;
         }

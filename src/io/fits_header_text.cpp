@@ -135,7 +135,7 @@ void set_card_value(std::string& header, std::string_view key, std::string value
         header.replace(at + start.size(), width, value);
         return;
     }
-    FOREGLOW_EXPECTS(!"the card is there");
+    FOREGLOW_EXPECTS(false && "the card is there");
 }
 
 std::uint32_t sum_of_words(std::string_view bytes) {

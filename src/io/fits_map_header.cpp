@@ -248,24 +248,13 @@ void find_requested(FitsMapHeader& header, const FitsTable& table, const FitsMap
 }  // namespace
 
 const FitsCard* FitsMapHeader::find(const std::string& key) const {
-    const auto at =
-        std::find_if(cards.begin(), cards.end(), [&](const FitsCard& card) { return card.key == key; });
-    return at == cards.end() ? nullptr : &*at;
+    return find_card(cards, key);
 }
-
 std::optional<double> FitsMapHeader::number(const std::string& key) const {
-    const FitsCard* card = find(key);
-    if (card == nullptr) return std::nullopt;
-    if (const auto* real = std::get_if<double>(&card->value)) return *real;
-    if (const auto* whole = std::get_if<std::int64_t>(&card->value)) return static_cast<double>(*whole);
-    return std::nullopt;
+    return card_number(cards, key);
 }
-
 std::optional<std::string> FitsMapHeader::text(const std::string& key) const {
-    const FitsCard* card = find(key);
-    const auto* text = card == nullptr ? nullptr : std::get_if<std::string>(&card->value);
-    if (text == nullptr) return std::nullopt;
-    return std::string(trim(*text));
+    return card_text(cards, key);
 }
 
 std::optional<Frame> read_frame_card(const std::string& text) {

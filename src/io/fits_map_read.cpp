@@ -10,7 +10,7 @@
 
 #include "base/error.h"
 #include "base/parallel.h"
-#include "io/fits_cells.h"
+#include "io/fits_cell_decode.h"
 #include "io/fits_map_header.h"
 #include "io/fits_table_file.h"
 

@@ -5,63 +5,20 @@
 
 #include <algorithm>
 #include <atomic>
-#include <bit>
 #include <cerrno>
-#include <cmath>
 #include <cstring>
-#include <limits>
 #include <mutex>
 
 #include "base/error.h"
 #include "base/parallel.h"
 #include "io/atomic_file.h"
+#include "io/fits_cell_encode.h"
 #include "io/fits_header_text.h"
-#include "io/fits_sentinel.h"
 
 namespace foreglow {
 namespace {
 
 constexpr std::int64_t rows_buffer_bytes = std::int64_t{1} << 18;  // fits the second-level cache
-
-std::uint32_t big_endian(std::uint32_t bits) {
-    return __builtin_bswap32(bits);
-}
-std::uint64_t big_endian(std::uint64_t bits) {
-    return __builtin_bswap64(bits);
-}
-
-/// What went into some cells: the sum of their 32-bit words, and whether a value was infinite.
-struct CellTally {
-    std::uint64_t words = 0;
-    bool infinite = false;
-};
-
-/// Turns values into big-endian cells of type Cell, NaN into BAD_DATA.
-template <class Cell, class Value>
-CellTally encode_cells(std::span<const Value> values, std::byte* out) {
-    using Bits = std::conditional_t<sizeof(Cell) == 4, std::uint32_t, std::uint64_t>;
-    constexpr auto bad = static_cast<Cell>(fits_bad_data);
-    std::uint64_t words = 0;
-    unsigned infinite = 0;
-    for (std::size_t i = 0; i < values.size(); ++i) {
-        const auto cell = static_cast<Cell>(values[i]);
-        infinite |= static_cast<unsigned>(std::fabs(cell) > std::numeric_limits<Cell>::max());
-        const auto bits = std::bit_cast<Bits>(cell != cell ? bad : cell);
-        if constexpr (sizeof(Cell) == 8) {
-            words += (bits >> 32) + (bits & 0xffffffff);
-        } else {
-            words += bits;
-        }
-        const Bits swapped = big_endian(bits);
-        std::memcpy(out + i * sizeof(Cell), &swapped, sizeof(Cell));
-    }
-    return {words, infinite != 0};
-}
-
-template <class Value>
-CellTally encode_cells(std::span<const Value> values, bool float64, std::byte* out) {
-    return float64 ? encode_cells<double>(values, out) : encode_cells<float>(values, out);
-}
 
 }  // namespace
 
@@ -130,7 +87,7 @@ FitsMapWriter::Impl::Impl(const std::filesystem::path& path, const FitsMapLayout
 /// Puts a row's pixel number before its cells.
 void FitsMapWriter::Impl::add_index(std::int64_t row, std::byte* out) {
     const auto pixel = static_cast<std::uint32_t>((*layout.pixels)[static_cast<std::size_t>(row)]);
-    const std::uint32_t swapped = big_endian(pixel);
+    const std::uint32_t swapped = __builtin_bswap32(pixel);
     std::memcpy(out, &swapped, sizeof swapped);
     data_sum.fetch_add(pixel, std::memory_order_relaxed);
 }

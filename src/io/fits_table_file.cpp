@@ -31,33 +31,6 @@ std::string status_text(int status) {
     return std::string(text) + " (CFITSIO status " + std::to_string(status) + ")";
 }
 
-/// The value of a card as CFITSIO hands it over, without quotes.
-std::variant<std::string, double, std::int64_t, bool> card_value(const std::string& text) {
-    if (text.empty()) return std::string();
-    if (text.front() == '\'') {
-        std::string out;
-        for (std::size_t i = 1; i < text.size(); ++i) {
-            if (text[i] == '\'') {
-                if (i + 1 >= text.size() || text[i + 1] != '\'') break;
-                ++i;  // a doubled quote stands for one
-            }
-            out += text[i];
-        }
-        out.erase(out.find_last_not_of(' ') + 1);
-        return out;
-    }
-    if (text == "T" || text == "F") return text == "T";
-    char* end = nullptr;
-    errno = 0;
-    const long long whole = std::strtoll(text.c_str(), &end, 10);
-    if (*end == '\0' && errno == 0) return std::int64_t{whole};
-    std::string real = text;
-    std::replace(real.begin(), real.end(), 'D', 'E');  // Fortran's double exponent
-    const double number = std::strtod(real.c_str(), &end);
-    if (*end == '\0') return number;
-    return text;
-}
-
 std::vector<FitsCard> read_cards(fitsfile* file, int& status) {
     int count = 0;
     fits_get_hdrspace(file, &count, nullptr, &status);
@@ -70,48 +43,22 @@ std::vector<FitsCard> read_cards(fitsfile* file, int& status) {
             fits_clear_errmsg();
             continue;
         }
-        cards.push_back({key, card_value(value), comment});
+        cards.push_back({key, parse_card_value(value), comment});
     }
     return cards;
 }
 
-const FitsCard* find_card(const std::vector<FitsCard>& cards, const std::string& key) {
-    const auto at =
-        std::find_if(cards.begin(), cards.end(), [&](const FitsCard& card) { return card.key == key; });
-    return at == cards.end() ? nullptr : &*at;
-}
-
-double number_card(const std::vector<FitsCard>& cards, const std::string& key, double otherwise) {
-    const FitsCard* card = find_card(cards, key);
-    if (card == nullptr) return otherwise;
-    if (const auto* real = std::get_if<double>(&card->value)) return *real;
-    if (const auto* whole = std::get_if<std::int64_t>(&card->value)) return static_cast<double>(*whole);
-    return otherwise;
-}
-
-std::int64_t whole_card(const std::vector<FitsCard>& cards, const std::string& key, std::int64_t otherwise) {
-    const FitsCard* card = find_card(cards, key);
-    const auto* whole = card == nullptr ? nullptr : std::get_if<std::int64_t>(&card->value);
-    return whole == nullptr ? otherwise : *whole;
-}
-
-std::string text_card(const std::vector<FitsCard>& cards, const std::string& key) {
-    const FitsCard* card = find_card(cards, key);
-    const auto* text = card == nullptr ? nullptr : std::get_if<std::string>(&card->value);
-    return text == nullptr ? std::string() : std::string(trim(*text));
-}
-
 bool is_healpix(const std::vector<FitsCard>& cards) {
-    return to_lower(text_card(cards, "PIXTYPE")) == "healpix";
+    return to_lower(card_text(cards, "PIXTYPE").value_or("")) == "healpix";
 }
 
 /// Says in words what the current HDU is: "an image of 512 x 512 pixels".
 std::string describe_hdu(fitsfile* file, int type, const std::vector<FitsCard>& cards) {
     if (type != IMAGE_HDU) {
-        const std::string name = text_card(cards, "EXTNAME");
+        const std::string name = card_text(cards, "EXTNAME").value_or("");
         return std::string(type == ASCII_TBL ? "a text table" : "a binary table") +
                (name.empty() ? "" : " '" + name + "'") + " of " +
-               std::to_string(whole_card(cards, "NAXIS2", 0)) + " rows";
+               std::to_string(card_whole(cards, "NAXIS2").value_or(0)) + " rows";
     }
     int status = 0, axes = 0;
     LONGLONG lengths[9] = {};
@@ -275,23 +222,22 @@ void FitsTableFile::Impl::fail_without_table(const std::string& seen) const {
 
 void FitsTableFile::Impl::read_columns() {
     const std::string where = message_table(request, table.hdu);
-    table.rows = whole_card(table.cards, "NAXIS2", -1);
-    table.row_bytes = whole_card(table.cards, "NAXIS1", -1);
-    const std::int64_t fields = std::min<std::int64_t>(whole_card(table.cards, "TFIELDS", 0), most_fields);
+    table.rows = card_whole(table.cards, "NAXIS2").value_or(-1);
+    table.row_bytes = card_whole(table.cards, "NAXIS1").value_or(-1);
+    const std::int64_t fields =
+        std::min<std::int64_t>(card_whole(table.cards, "TFIELDS").value_or(0), most_fields);
     std::int64_t offset = 0;
     for (int number = 1; number <= fields; ++number) {
         const std::string n = std::to_string(number);
         FitsTableColumn column;
         column.number = number;
-        column.name = text_card(table.cards, "TTYPE" + n);
-        column.unit = text_card(table.cards, "TUNIT" + n);
+        column.name = card_text(table.cards, "TTYPE" + n).value_or("");
+        column.unit = card_text(table.cards, "TUNIT" + n).value_or("");
         if (to_lower(column.unit) == "unknown") column.unit.clear();
-        column.format = text_card(table.cards, "TFORM" + n);
-        column.scale = number_card(table.cards, "TSCAL" + n, 1.0);
-        column.zero = number_card(table.cards, "TZERO" + n, 0.0);
-        if (const FitsCard* null = find_card(table.cards, "TNULL" + n)) {
-            if (const auto* whole = std::get_if<std::int64_t>(&null->value)) column.null_value = *whole;
-        }
+        column.format = card_text(table.cards, "TFORM" + n).value_or("");
+        column.scale = card_number(table.cards, "TSCAL" + n).value_or(1.0);
+        column.zero = card_number(table.cards, "TZERO" + n).value_or(0.0);
+        column.null_value = card_whole(table.cards, "TNULL" + n);
         if (!read_format(column)) {
             throw DataError(where + "TFORM" + n + " = '" + column.format +
                             "' is no column format; the header is damaged");

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
-#include "io/fits_cells.h"
+#include "io/fits_cell_decode.h"
 
 #include <bit>
 #include <cmath>
@@ -114,7 +114,7 @@ void decode_cells(const FitsTableColumn& column, std::optional<double> bad_data,
             });
             return;
         default:
-            FOREGLOW_EXPECTS(!"a column of numbers");
+            FOREGLOW_EXPECTS(false && "a column of numbers");
     }
     if (column.scale != 1.0 || column.zero != 0.0) {
         // FITS scales what the bytes say, so a sentinel written by value is looked for afterwards.

@@ -5,12 +5,10 @@
 #include <vector>
 
 #include "base/error.h"
-#include "base/parallel.h"
+#include "sphere/regrid.h"
 
 namespace foreglow {
 namespace {
-
-constexpr std::int64_t block = 4096;
 
 template <class... F>
 struct Overloaded : F... {
@@ -18,19 +16,6 @@ struct Overloaded : F... {
 };
 template <class... F>
 Overloaded(F...) -> Overloaded<F...>;
-
-double interpolate_at(const SkyMap& map, const Vector3& direction) {
-    const HealpixGrid::Stencil stencil = map.grid.interpolation(direction);
-    double sum = 0;
-    double weight = 0;
-    for (std::size_t i = 0; i < 4; ++i) {
-        const double value = map.values[static_cast<std::size_t>(stencil.pixels[i])];
-        if (!is_defined(value)) continue;
-        sum += stencil.weights[i] * value;
-        weight += stencil.weights[i];
-    }
-    return weight > 1e-12 ? sum / weight : undefined_pixel;
-}
 
 std::optional<PixelField::Range> range_of(const SkyMap& map) {
     std::optional<PixelField::Range> range;
@@ -45,20 +30,17 @@ std::optional<PixelField::Range> range_of(const SkyMap& map) {
 
 }  // namespace
 
-void interpolate_strip(const SkyMap& map, const Matrix3& to_map, const HealpixGrid& grid, const RingStrip& strip,
+void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                        std::span<double> out) {
     for (const PixelRange& range : pixel_ranges(grid, strip))
-        parallel_for_blocks(range.count, block, [&](std::int64_t begin, std::int64_t end) {
-            for (std::int64_t i = begin; i < end; ++i)
-                out[static_cast<std::size_t>(range.offset + i)] =
-                    interpolate_at(map, rotate(to_map, grid.direction(range.first_pixel + i)));
-        });
+        interpolate_pixels(map, grid, frame, range.first_pixel,
+                           out.subspan(static_cast<std::size_t>(range.offset), static_cast<std::size_t>(range.count)));
 }
 
-void undefine_filled(const SkyMap& filled, const Matrix3& to_filled, const HealpixGrid& grid, const RingStrip& strip,
+void undefine_filled(const SkyMap& filled, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                      std::span<double> values) {
     std::vector<double> share(values.size());
-    interpolate_strip(filled, to_filled, grid, strip, share);
+    interpolate_strip(filled, grid, frame, strip, share);
     for (std::size_t i = 0; i < values.size(); ++i)
         if (share[i] > largest_filled_share) values[i] = undefined_pixel;
 }
@@ -73,13 +55,11 @@ PixelField PixelField::of_map(std::shared_ptr<const SkyMap> map) {
 
 PixelField PixelField::interpolated(std::shared_ptr<const SkyMap> map, const HealpixGrid& grid, Frame frame) {
     if (map->grid == grid && map->frame == frame) return of_map(std::move(map));
-    const Matrix3 to_map = rotation_between(frame, map->frame);
-    return PixelField(Source(Interpolated{std::move(map), to_map}));
+    return PixelField(Source(Interpolated{std::move(map), frame}));
 }
 
-PixelField PixelField::harmonic(Alm alm, const HealpixGrid&, Frame frame, std::shared_ptr<const SkyMap> filled) {
-    const Matrix3 to_filled = rotation_between(frame, filled ? filled->frame : frame);
-    return PixelField(Source(Harmonic{std::move(alm), std::move(filled), to_filled}));
+PixelField PixelField::harmonic(Alm alm, Frame frame, std::shared_ptr<const SkyMap> filled) {
+    return PixelField(Source(Harmonic{std::move(alm), frame, std::move(filled)}));
 }
 
 void PixelField::evaluate(const HealpixGrid& grid, const RingStrip& strip, std::span<double> out) const {
@@ -92,11 +72,11 @@ void PixelField::evaluate(const HealpixGrid& grid, const RingStrip& strip, std::
                                               out.begin() + range.offset);
                           },
                           [&](const Interpolated& source) {
-                              interpolate_strip(*source.map, source.to_map, grid, strip, out);
+                              interpolate_strip(*source.map, grid, source.frame, strip, out);
                           },
                           [&](const Harmonic& source) {
                               synthesize_strip(source.alm, grid, strip, out);
-                              if (source.filled) undefine_filled(*source.filled, source.to_filled, grid, strip, out);
+                              if (source.filled) undefine_filled(*source.filled, grid, source.frame, strip, out);
                           }},
                source_);
 }

@@ -24,7 +24,7 @@ class PixelField {
     /// Undefined neighbours are left out and the others' weights renormalised; without any the pixel is undefined.
     [[nodiscard]] static PixelField interpolated(std::shared_ptr<const SkyMap> map, const HealpixGrid& grid, Frame frame);
     /// The map of some a_lm; a pixel is undefined where `filled` (a map of 0 and 1, interpolated) exceeds 1 %.
-    [[nodiscard]] static PixelField harmonic(Alm alm, const HealpixGrid& grid, Frame frame,
+    [[nodiscard]] static PixelField harmonic(Alm alm, Frame frame,
                                              std::shared_ptr<const SkyMap> filled = nullptr);
 
     /// Writes the values of one strip.
@@ -44,12 +44,12 @@ class PixelField {
     };
     struct Interpolated {
         std::shared_ptr<const SkyMap> map;
-        Matrix3 to_map{};
+        Frame frame = Frame::Galactic;  // of the grid
     };
     struct Harmonic {
         Alm alm;
+        Frame frame = Frame::Galactic;
         std::shared_ptr<const SkyMap> filled;
-        Matrix3 to_filled{};
     };
     using Source = std::variant<double, Map, Interpolated, Harmonic>;
     explicit PixelField(Source source) : source_(std::move(source)) {}
@@ -59,12 +59,11 @@ class PixelField {
 /// An output pixel is undefined when more than this share of its weight comes from pixels that were filled (interface page).
 inline constexpr double largest_filled_share = 0.01;
 
-/// Interpolates a map at the pixels of a strip of another grid; `to_map` turns directions of the grid into those of the map.
-void interpolate_strip(const SkyMap& map, const Matrix3& to_map, const HealpixGrid& grid, const RingStrip& strip,
-                       std::span<double> out);
+/// Interpolates a map at the pixels of a strip of another grid and frame (interpolate_pixels).
+void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip, std::span<double> out);
 
 /// Makes pixels of a strip undefined where the interpolated map of filled pixels exceeds largest_filled_share.
-void undefine_filled(const SkyMap& filled, const Matrix3& to_filled, const HealpixGrid& grid, const RingStrip& strip,
+void undefine_filled(const SkyMap& filled, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                      std::span<double> values);
 
 }  // namespace foreglow

@@ -91,12 +91,12 @@ ResponseTable read_response_file(const std::filesystem::path& path) {
     return response;
 }
 
-BeamWindow read_beam_window(const std::filesystem::path& path) {
+BeamTable read_beam_window(const std::filesystem::path& path) {
     const CsvTable table = read_csv_table(path, "beam window", window_header);
     check_window_header(table);
     if (table.rows.empty())
         fail(table.header_place(), "the beam window has no rows: give one for each l = 0, 1, 2, ...");
-    BeamWindow window;
+    BeamTable window;
     window.file = path;
     window.has_polarization_column = table.header.size() == 3;
     for (std::size_t row = 0; row < table.rows.size(); ++row) {

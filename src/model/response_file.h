@@ -22,7 +22,7 @@ struct ResponseTable {
 [[nodiscard]] ResponseTable read_response_file(const std::filesystem::path& path);
 
 /// A tabulated beam: B_l for l = 0..lmax.
-struct BeamWindow {
+struct BeamTable {
     std::filesystem::path file;
     int lmax = 0;
     std::vector<double> intensity;  ///< [lmax + 1]
@@ -33,6 +33,6 @@ struct BeamWindow {
 
 /// Reads a beam window: the header l,B_l or l,B_l,B_l_pol, then a row for each l = 0, 1, 2, ...
 /// @throws InputError where it does not exist; DataError "FILE:LINE: ..." where its content is wrong
-[[nodiscard]] BeamWindow read_beam_window(const std::filesystem::path& path);
+[[nodiscard]] BeamTable read_beam_window(const std::filesystem::path& path);
 
 }  // namespace foreglow

@@ -28,9 +28,8 @@ void evaluate_stokes(const SkyModel& sky, const StokesField& field, const RingSt
     }
     synthesize_strip_spin2(std::get<AlmEB>(field.source), sky.grid, strip, q, u);
     if (!field.filled) return;
-    const Matrix3 to_filled = rotation_between(sky.frame, field.filled->frame);
-    undefine_filled(*field.filled, to_filled, sky.grid, strip, q);
-    undefine_filled(*field.filled, to_filled, sky.grid, strip, u);
+    undefine_filled(*field.filled, sky.grid, sky.frame, strip, q);
+    undefine_filled(*field.filled, sky.grid, sky.frame, strip, u);
 }
 
 // Q and U whose length is a fraction of the intensity at the polarization's reference frequency.

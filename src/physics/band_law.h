@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
-#include <optional>
 #include <span>
 #include <vector>
 
@@ -34,25 +33,22 @@ class BandLaw {
     /// Returns the largest relative error found over the range.
     [[nodiscard]] double worst_error() const { return worst_error_; }
 
-    /// Multiplies: out[i] = amplitude[i] M(index[i], curvature[i]); NaN in any gives NaN. All spans [n], out may be amplitude.
-    void apply(std::span<const double> amplitude, std::span<const double> index, std::span<const double> curvature,
-               std::span<double> out) const;
-    /// As above for two amplitudes that share the law (Q and U).
-    void apply(std::span<const double> q, std::span<const double> u, std::span<const double> index,
-               std::span<const double> curvature, std::span<double> q_out, std::span<double> u_out) const;
+    /// Writes M(index[i], curvature[i]) of pixels of unit amplitude; NaN in either gives NaN. All spans [n], any n.
+    void evaluate(std::span<const double> index, std::span<const double> curvature, std::span<double> out) const;
 
-    /// Returns M(index, curvature) for one pixel of unit amplitude, as apply computes it.
+    /// Returns M(index, curvature) of one pixel of unit amplitude, as evaluate computes it.
     [[nodiscard]] double value(double index, double curvature) const;
 
   private:
-    void evaluate(std::span<const double> index, std::span<const double> curvature, std::span<double> out) const;
+    void fit(const BandSum& band, Frequency reference, const ParameterRange& range);
+    [[nodiscard]] double error_on_check_grid(const BandSum& band, Frequency reference, const ParameterRange& range) const;
+    void evaluate_block(const double* index, const double* curvature, double* out, std::size_t n) const;
 
     int degree_ = 0;
     double log_ref_ = 0;                    // ln(nu_mean/nu0)
     double index_middle_ = 0, index_scale_ = 1;
     double curvature_middle_ = 0, curvature_scale_ = 1;
-    std::vector<double> coefficients_;      // of x^i y^j, j outer: i = 0..degree - j
-    bool varies_with_curvature_ = false;
+    std::vector<std::vector<double>> rows_; // rows_[j][i]: coefficient of x^i y^j
     double worst_error_ = 0;
 };
 

@@ -1,0 +1,207 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "app/command_line.h"
+
+#include <CLI/CLI.hpp>
+#include <csignal>
+#include <cstdio>
+#include <iostream>
+#include <new>
+
+#include "base/build_info.h"
+#include "base/error.h"
+#include "base/interrupt.h"
+#include "base/parallel.h"
+#include "base/progress.h"
+#include "jobs/draw.h"
+#include "jobs/make.h"
+#include "jobs/models.h"
+#include "jobs/start.h"
+#include "jobs/study_request.h"
+
+namespace foreglow {
+namespace {
+
+struct CommonOptions {
+    int threads = 0;
+    bool quiet = false;
+};
+
+void say(const std::string& text) {
+    std::fwrite(text.data(), 1, text.size(), stdout);
+    std::fflush(stdout);
+}
+
+void note(const CommonOptions& common, const std::string& text) {
+    if (!common.quiet) std::fprintf(stderr, "note: %s\n", text.c_str());
+}
+
+Progress make_progress(const CommonOptions& common) {
+    return Progress(common.quiet ? Progress::Style::Quiet : Progress::style_of_stderr());
+}
+
+void add_common(CLI::App& command, CommonOptions& common) {
+    command.add_option("--threads", common.threads, "how many threads to use (default: all processors)")->check(CLI::Range(1, 1024));
+    command.add_flag("--quiet", common.quiet, "nothing on standard error but errors");
+}
+
+// Options shared by make and plan.
+void add_study_options(CLI::App& command, StudyRequest& request) {
+    StudyOptions& study = request.options;
+    command.add_option("STUDY", request.study, "study file (TOML); `foreglow start` prints one to begin from");
+    command.add_option("--out", request.out, "folder to write to (default: STUDY's stem + \"-out\" here)");
+    command.add_option("--set", study.overrides, "key=value, overrides a key of the study (dotted: channel.NAME.beam_fwhm=\"1 deg\")")
+        ->take_all()->expected(1)->allow_extra_args(false);
+    command.add_flag("--replace", request.replace, "write into a folder that is not empty, replacing an earlier run");
+    command.add_option("--realization", request.realization, "make just this one of the study's realizations");
+    const char* alone = "Without a study file";
+    command.add_option("--model", study.model, "bundled model's name, or a model file")->group(alone);
+    command.add_option("--frequency", study.frequencies, "such as \"70 GHz\"; repeat for more channels")
+        ->take_all()->expected(1)->allow_extra_args(false)->group(alone);
+    command.add_option("--nside", study.nside, "a power of two from 1 to 8192")->group(alone);
+    command.add_option("--stokes", study.stokes, "I or IQU")->group(alone);
+    command.add_option("--unit", study.unit, "K_RJ, mK_RJ, uK_RJ, K_CMB, mK_CMB, uK_CMB, MJy/sr or Jy/pixel")->group(alone);
+    command.add_option("--bandwidth", study.bandwidth, "full width of every channel's flat response")->group(alone);
+    command.add_option("--beam-fwhm", study.beam_fwhm, "Gaussian beam of every channel, such as \"40 arcmin\"")->group(alone);
+    command.add_option("--title", study.title, "title of the study")->group(alone);
+    command.add_option("--precision", study.precision, "float32 or float64")->group(alone);
+    command.add_option("--frame", study.frame, "galactic, icrs or ecliptic")->group(alone);
+    command.add_option("--ordering", study.ordering, "ring or nested")->group(alone);
+    command.add_option("--polarization-convention", study.polarization_convention, "COSMO or IAU")->group(alone);
+    command.add_option("--monopole", study.monopole, "keep or remove")->group(alone);
+    command.add_option("--coverage", study.coverage, "FITS map of the pixels to write")->group(alone);
+    command.add_option("--lmax", study.lmax, "default 2 nside")->group(alone);
+    command.add_option("--accuracy", study.accuracy, "default 1e-5")->group(alone);
+    command.add_option("--seed", study.seed, "of the random parts")->group(alone);
+    command.add_option("--realizations", study.realizations, "how many")->group(alone);
+    command.add_option("--truth", study.truth, "false, true or full")->group(alone);
+}
+
+void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>& center, std::string& size) {
+    command.add_option("MAP", draw.map, "HEALPix FITS map")->required();
+    command.add_option("--column", draw.column, "number from 1, or name (default: the first)");
+    command.add_option("--hdu", draw.hdu, "number of the table (default: the first HEALPix one)");
+    command.add_option("--output", draw.output, "picture to write (default: MAP's stem + \".png\" here)");
+    command.add_option("--title", draw.title, "above the picture");
+    command.add_option("--unit", draw.unit, "unit to show, or that of a file that does not say");
+    command.add_option("--center", center, "longitude and latitude of a close-up in degrees, LON,LAT")->delimiter(',')->expected(2);
+    command.add_option("--size", size, "of the close-up, such as \"10 deg\"");
+    command.add_option("--scale", draw.scale, "linear, log or signed");
+    command.add_option("--low", draw.low, "lower end of the colours, in the unit shown");
+    command.add_option("--high", draw.high, "upper end");
+    command.add_option("--palette", draw.palette, "sequential, diverging or grey");
+    command.add_option("--width", draw.width, "of the picture in pixels, 300 to 8000");
+    command.add_flag("--replace", draw.replace, "replace a picture that exists");
+}
+
+/// All that the command line can ask for.
+struct Request {
+    CommonOptions common;
+    StudyRequest study;
+    bool sha256 = false;
+    StartRequest start;
+    std::string model_name;
+    DrawOptions draw;
+    std::vector<double> draw_center;
+    std::string draw_size;
+};
+
+void run_draw_command(Request& request) {
+    if (!request.draw_center.empty()) request.draw.center = {request.draw_center[0], request.draw_center[1]};
+    if (!request.draw_size.empty()) {
+        try {
+            request.draw.size = parse_angle(request.draw_size);
+        } catch (const InputError& error) {
+            throw InputError(std::string("--size ") + error.what());
+        }
+    }
+    const DrawResult result = run_draw(request.draw);
+    for (const std::string& notice : result.notices) note(request.common, notice);
+    say(result.picture.string() + "\n");
+}
+
+void run_start_command(const Request& request) {
+    const StartResult result = run_start(request.start);
+    for (const std::string& notice : result.notices) note(request.common, notice);
+    if (!request.start.output) say(result.text);
+    if (result.questions > 0)
+        note(request.common, std::to_string(result.questions) + " questions are left open: look for the lines that begin with #?");
+}
+
+void define_commands(CLI::App& app, Request& request) {
+    app.require_subcommand(1);
+    app.set_version_flag("--version", "foreglow " + version());
+    app.failure_message(CLI::FailureMessage::simple);
+
+    CLI::App* make = app.add_subcommand("make", "makes the maps of a study: FITS maps, truth, report and manifest");
+    add_study_options(*make, request.study);
+    make->add_flag("--sha256", request.sha256, "put SHA-256 of the outputs into run.json besides XXH3-128");
+    add_common(*make, request.common);
+    make->callback([&request] {
+        Progress progress = make_progress(request.common);
+        say(run_make({make_plan_request(request.study), request.sha256}, progress).text);
+    });
+
+    CLI::App* plan = app.add_subcommand("plan", "checks a study without running it: files, memory, disk and time");
+    add_study_options(*plan, request.study);
+    add_common(*plan, request.common);
+    plan->callback([&request] { say(describe_plan(make_plan(make_plan_request(request.study)))); });
+
+    CLI::App* start = app.add_subcommand("start", "prints a commented study to begin from, or a model for a downloaded map");
+    start->add_option("OUTPUT", request.start.output, "file to write (default: standard output)");
+    start->add_option("--model-for", request.start.model_for, "a survey map: prints a model for it, with what its header leaves open");
+    add_common(*start, request.common);
+    start->callback([&request] { run_start_command(request); });
+
+    CLI::App* models = app.add_subcommand("models", "lists the bundled models, or prints one");
+    models->add_option("NAME", request.model_name, "the model to print");
+    add_common(*models, request.common);
+    models->callback([&request] { say(request.model_name.empty() ? list_models() : print_model(request.model_name)); });
+
+    CLI::App* draw = app.add_subcommand("draw", "draws a map: all sky, or a close-up");
+    add_draw_options(*draw, request.draw, request.draw_center, request.draw_size);
+    add_common(*draw, request.common);
+    draw->callback([&request] { run_draw_command(request); });
+
+    for (CLI::App* command : {make, plan, start, models, draw})
+        command->parse_complete_callback([&request] {
+            set_thread_count(request.common.threads > 0 ? request.common.threads : available_processors());
+        });
+}
+
+int report(const std::string& message, int status) {
+    std::fprintf(stderr, "foreglow: %s\n", message.c_str());
+    return status;
+}
+
+int run_guarded(CLI::App& app, int argc, char** argv) {
+    try {
+        app.parse(argc, argv);
+        return 0;
+    } catch (const CLI::Success& success) {  // help and version
+        app.exit(success);
+        return 0;
+    } catch (const CLI::ParseError& error) {
+        return report(std::string(error.what()) + " (`foreglow --help` lists what there is)", 2);
+    } catch (const Error& error) {
+        return report(error.what(), error.exit_status());
+    } catch (const ContractError& error) {
+        return report(std::string("a fault of the program itself, please report it: ") + error.what(), 1);
+    } catch (const std::bad_alloc&) {
+        return report("memory ran out: lower `nside` or `lmax`", 1);
+    } catch (const std::exception& error) {
+        return report(error.what(), 1);
+    }
+}
+
+}  // namespace
+
+int run_command_line(int argc, char** argv) {
+    catch_interrupts();
+    std::signal(SIGPIPE, SIG_IGN);  // a reader that has seen enough is no error
+    CLI::App app("Makes simulated full-sky maps of the Galaxy's diffuse synchrotron emission.", "foreglow");
+    Request request;
+    define_commands(app, request);
+    return run_guarded(app, argc, argv);
+}
+
+}  // namespace foreglow

@@ -1,0 +1,195 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include <algorithm>
+#include <cmath>
+
+#include "base/interrupt.h"
+#include "base/parallel.h"
+#include "jobs/make_maps.h"
+#include "jobs/map_cards.h"
+#include "jobs/map_pieces.h"
+#include "model/pixel_route.h"
+#include "physics/spectral_law.h"
+#include "sphere/regrid.h"
+#include "sphere/rotation.h"
+
+namespace foreglow {
+namespace {
+
+constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
+constexpr double truth_tolerance = 1e-9;
+
+void write_pieces(const HealpixGrid& grid, const RingStrip& strip, MapFile& file, std::span<std::vector<double>* const> columns) {
+    const auto pieces = cut_into_pieces(grid, strip);
+    parallel_for_blocks(static_cast<std::int64_t>(pieces.size()), 1, [&](std::int64_t task, std::int64_t) {
+        const MapPiece& piece = pieces[static_cast<std::size_t>(task)];
+        std::array<std::span<double>, 3> parts;
+        for (std::size_t c = 0; c < columns.size(); ++c) parts[c] = std::span(*columns[c]).subspan(piece.begin, piece.size());
+        file.write(piece.first_pixel, {parts.data(), columns.size()});
+    });
+}
+
+// Q and U as the same law gives them at the intensity's reference frequency.
+void carry_to_reference(const SkyModel& sky, SkyStrip& values) {
+    const double log_ratio = log_frequency_ratio(sky.reference, sky.polarization->reference);
+    if (log_ratio == 0) return;
+    for (std::size_t i = 0; i < values.q.size(); ++i) {
+        const double factor = std::exp(log_brightness_ratio({values.polarized_index[i], values.polarized_curvature[i]}, log_ratio));
+        values.q[i] *= factor;
+        values.u[i] *= factor;
+    }
+}
+
+std::vector<FitsMapColumnName> amplitude_columns(bool polarized) {
+    if (polarized) return {{"I_STOKES", "K_RJ"}, {"Q_STOKES", "K_RJ"}, {"U_STOKES", "K_RJ"}};
+    return {{"I_STOKES", "K_RJ"}};
+}
+
+/// The three files, open; index.fits has a second column where the polarization has its own index.
+class TruthFiles {
+  public:
+    TruthFiles(const Plan& plan, const SkyModel& sky, OutputFolder& folder, MakeResult& result)
+        : polarized_(plan.study.polarized),
+          own_index_(polarized_ && sky.polarization->index.has_value()),
+          amplitude_(folder.prepare("truth/amplitude.fits"),
+                     make_truth_layout(plan, sky, amplitude_columns(polarized_), polarized_), polarized_),
+          index_(folder.prepare("truth/index.fits"), make_truth_layout(plan, sky, index_columns(), false), false),
+          curvature_(folder.prepare("truth/curvature.fits"), make_truth_layout(plan, sky, {{"CURVATURE", ""}}, false), false) {
+        for (const char* name : {"truth/amplitude.fits", "truth/index.fits", "truth/curvature.fits"})
+            result.outputs.emplace_back(name);
+    }
+
+    void write(const HealpixGrid& grid, const RingStrip& strip, SkyStrip& values) {
+        const std::array<std::vector<double>*, 3> stokes{&values.intensity, &values.q, &values.u};
+        const std::array<std::vector<double>*, 2> indices{&values.index, &values.polarized_index};
+        std::vector<double>* curvature = &values.curvature;
+        write_pieces(grid, strip, amplitude_, {stokes.data(), polarized_ ? 3U : 1U});
+        write_pieces(grid, strip, index_, {indices.data(), own_index_ ? 2U : 1U});
+        write_pieces(grid, strip, curvature_, {&curvature, 1});
+    }
+
+    void finish() {
+        amplitude_.finish();
+        index_.finish();
+        curvature_.finish();
+    }
+
+  private:
+    [[nodiscard]] std::vector<FitsMapColumnName> index_columns() const {
+        if (own_index_) return {{"INDEX", ""}, {"INDEX_POLARIZED", ""}};
+        return {{"INDEX", ""}};
+    }
+
+    bool polarized_, own_index_;
+    MapFile amplitude_, index_, curvature_;
+};
+
+// The whole sky in another frame: brightness through its a_lm (bilinear interpolation would smooth it), indices by interpolation.
+SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
+    const StudySpec& study = plan.study;
+    const RingStrip whole{0, sky.grid.ring_count(), false};
+    SkyStrip values = make_sky_strip(sky, whole, study.polarized);
+    if (study.polarized) carry_to_reference(sky, values);
+    const auto turn_plain = [&](std::vector<double>& column) {
+        if (column.empty()) return;
+        column = interpolate({sky.grid, sky.frame, "", std::move(column)}, sky.grid, study.frame).values;
+    };
+    turn_plain(values.index);
+    turn_plain(values.curvature);
+    turn_plain(values.polarized_index);
+    values.intensity = harmonic_regrid(SkyMap{sky.grid, sky.frame, "K_RJ", std::move(values.intensity)}, sky.grid, study.frame,
+                                       study.lmax)
+                           .map.values;
+    if (!study.polarized) return values;
+    RegriddedStokes stokes = harmonic_regrid(StokesMaps{sky.grid, sky.frame, "K_RJ", std::move(values.q), std::move(values.u)},
+                                             sky.grid, study.frame, study.lmax);
+    values.q = std::move(stokes.maps.q);
+    values.u = std::move(stokes.maps.u);
+    return values;
+}
+
+MapFile open_channel_sky(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel, double accuracy,
+                         MakeResult& result) {
+    const std::string name = "truth/channels/" + plan.channels[channel].name + ".fits";
+    result.outputs.push_back(name);
+    const FitsMapLayout layout =
+        make_channel_layout(plan, sky, plan.channels[channel], plan.realizations.front(), accuracy, false);
+    return {folder.prepare(name), layout, plan.study.polarized};
+}
+
+// Each channel's sky before its beam, pixel by pixel.
+void write_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder, MakeResult& result) {
+    std::vector<BandSum> bands;
+    for (const Channel& channel : plan.channels) bands.push_back(channel.band);
+    const PixelRoute route(sky, bands, plan.study.polarized, truth_tolerance);
+    const std::size_t stokes = plan.study.polarized ? 3 : 1;
+    for (std::size_t c = 0; c < bands.size(); ++c) {
+        MapFile file = open_channel_sky(plan, sky, folder, c, route.error_of(c), result);
+        for (const RingStrip& strip : cut_into_strips(sky.grid, strip_pixels)) {
+            check_interrupt();
+            const SkyStrip values = make_sky_strip(sky, strip, plan.study.polarized);
+            std::array<std::vector<double>, 3> columns;
+            std::array<std::vector<double>*, 3> targets{};
+            std::array<std::span<double>, 3> views;
+            for (std::size_t s = 0; s < stokes; ++s) {
+                columns[s].resize(values.intensity.size());
+                targets[s] = &columns[s];
+                views[s] = columns[s];
+            }
+            route.make_pixels(values, c, 0, values.intensity.size(), {views.data(), stokes});
+            write_pieces(sky.grid, strip, file, {targets.data(), stokes});
+        }
+        file.finish();
+    }
+}
+
+// As above in another frame: through a_lm, as the maps themselves.
+void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
+                                MakeResult& result) {
+    std::vector<Channel> channels = plan.channels;
+    for (Channel& channel : channels) channel.beam.reset();
+    HarmonicOptions options;
+    options.polarized = plan.study.polarized;
+    options.lmax = plan.study.lmax;
+    options.accuracy = plan.study.accuracy;
+    options.frame = plan.study.frame;
+    const HarmonicRoute route(sky, std::move(channels), options, progress);
+    for (std::size_t c = 0; c < route.channel_count(); ++c) {
+        check_interrupt();
+        MapFile file = open_channel_sky(plan, sky, folder, c, route.error_of(c), result);
+        ChannelMaps maps = route.make_channel(c);
+        const std::array<std::vector<double>*, 3> columns{&maps.i, &maps.q, &maps.u};
+        write_pieces(sky.grid, {0, sky.grid.ring_count(), false}, file, {columns.data(), plan.study.polarized ? 3U : 1U});
+        file.finish();
+    }
+}
+
+}  // namespace
+
+void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress, MakeResult& result) {
+    if (plan.study.truth == TruthLevel::None) return;
+    progress.begin("writing truth maps");
+    TruthFiles files(plan, sky, folder, result);
+    if (plan.study.frame != sky.frame) {
+        SkyStrip turned = turn_sky(plan, sky);
+        files.write(sky.grid, {0, sky.grid.ring_count(), false}, turned);
+    } else {
+        for (const RingStrip& strip : cut_into_strips(sky.grid, strip_pixels)) {
+            check_interrupt();
+            SkyStrip values = make_sky_strip(sky, strip, plan.study.polarized);
+            if (plan.study.polarized) carry_to_reference(sky, values);
+            files.write(sky.grid, strip, values);
+        }
+    }
+    files.finish();
+    progress.end();
+    if (plan.study.truth != TruthLevel::Full) return;
+    if (plan.study.frame != sky.frame) {
+        write_turned_channel_skies(plan, sky, folder, progress, result);
+        return;
+    }
+    progress.begin("writing the channels' skies before beams");
+    write_channel_skies(plan, sky, folder, result);
+    progress.end();
+}
+
+}  // namespace foreglow

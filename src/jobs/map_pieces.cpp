@@ -1,0 +1,46 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "jobs/map_pieces.h"
+
+#include <algorithm>
+
+namespace foreglow {
+namespace {
+
+constexpr std::int64_t piece_pixels = 16384;  // three columns of it stay in the second-level cache
+constexpr int preview_nside = 128;
+
+}  // namespace
+
+std::vector<MapPiece> cut_into_pieces(const HealpixGrid& grid, const RingStrip& strip) {
+    std::vector<MapPiece> pieces;
+    for (const PixelRange& range : pixel_ranges(grid, strip))
+        for (std::int64_t from = 0; from < range.count; from += piece_pixels) {
+            const std::int64_t to = std::min(range.count, from + piece_pixels);
+            pieces.push_back({range.first_pixel + from, static_cast<std::size_t>(range.offset + from),
+                              static_cast<std::size_t>(range.offset + to)});
+        }
+    return pieces;
+}
+
+PreviewSampler::PreviewSampler(const HealpixGrid& grid, Frame frame, const std::string& unit, std::size_t columns,
+                               std::string channel) {
+    const HealpixGrid small(std::min(preview_nside, grid.nside()));
+    preview_.channel = std::move(channel);
+    SkyMap empty{small, frame, unit, std::vector<double>(static_cast<std::size_t>(small.npix()), undefined_pixel)};
+    preview_.columns.assign(columns, empty);
+    for (std::int64_t target = 0; target < small.npix(); ++target)
+        places_.push_back({small == grid ? target : grid.pixel_at(small.direction(target)), target});
+    std::sort(places_.begin(), places_.end(), [](const Place& a, const Place& b) { return a.pixel < b.pixel; });
+}
+
+void PreviewSampler::sample(std::int64_t first_pixel, std::span<const std::span<double>> columns) {
+    const std::int64_t end = first_pixel + static_cast<std::int64_t>(columns[0].size());
+    auto place = std::lower_bound(places_.begin(), places_.end(), first_pixel,
+                                  [](const Place& p, std::int64_t pixel) { return p.pixel < pixel; });
+    for (; place != places_.end() && place->pixel < end; ++place)
+        for (std::size_t c = 0; c < columns.size(); ++c)
+            preview_.columns[c].values[static_cast<std::size_t>(place->target)] =
+                columns[c][static_cast<std::size_t>(place->pixel - first_pixel)];
+}
+
+}  // namespace foreglow

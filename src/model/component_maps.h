@@ -1,0 +1,37 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#pragma once
+
+#include <cstdint>
+#include <functional>
+#include <array>
+#include <span>
+#include <vector>
+
+#include "model/sky_model.h"
+#include "physics/band_law.h"
+
+namespace foreglow {
+
+/// The whole sky under one component's law, RING order, undefined pixels NaN.
+/// @return [npix]
+[[nodiscard]] std::vector<double> make_intensity_component(const SkyModel& sky, const BandLaw& law);
+
+struct StokesComponent {
+    std::vector<double> q, u;  ///< [npix]
+};
+[[nodiscard]] StokesComponent make_polarized_component(const SkyModel& sky, const BandLaw& law);
+
+/// Pixels of a sky taken evenly over it, with their directions.
+struct SkySample {
+    SkyStrip values;
+    std::vector<Vector3> directions;
+};
+
+/// Takes about `count` pixels, evenly spaced in RING order (all of them where the sky has no more).
+[[nodiscard]] SkySample make_sky_sample(const SkyModel& sky, std::int64_t count, bool with_polarization);
+
+/// Calls work(strip, values) for strips that cover the sky, in order.
+void for_each_sky_strip(const SkyModel& sky, bool with_polarization,
+                        const std::function<void(const RingStrip&, const SkyStrip&)>& work);
+
+}  // namespace foreglow

@@ -1,0 +1,96 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "model/transform_plan.h"
+
+#include <algorithm>
+#include <cmath>
+
+#include "base/error.h"
+#include "sphere/converged_analysis.h"
+
+namespace foreglow {
+namespace {
+
+constexpr double largest_cl_ratio = 1e-4;   // of the error's C_l to the map's (interface page) ...
+constexpr double window_that_counts = 1e-3; // ... where B_l^2 is above this
+constexpr int most_refinements = 16;
+
+BeamWindow unit_window(int lmax) {
+    return make_gaussian_beam(Angle(), lmax);
+}
+
+double worst_cl_ratio(const ConvergenceReport& report, std::span<const double> window) {
+    const double ratio = report.contraction > 0 ? report.contraction : 0.5;
+    const double remaining = ratio < 1 ? ratio / (1 - ratio) : 1.0;
+    double worst = 0;
+    for (std::size_t l = 2; l < report.map_cl.size(); ++l) {
+        if (window[l] * window[l] <= window_that_counts || !(report.map_cl[l] > 0)) continue;
+        worst = std::max(worst, remaining * remaining * report.correction_cl[l] / report.map_cl[l]);
+    }
+    return worst;
+}
+
+// Runs the refinement of the first component, harder until the spectrum of what remains is small enough as well.
+template <class Analyse>
+auto measure(const Analyse& analyse, double tolerance, std::span<const double> window, TransformState& state) {
+    auto result = analyse(tolerance, most_refinements);
+    state.worst_cl_ratio = worst_cl_ratio(result.report, window);
+    for (int round = 0; round < 3 && result.report.reached && state.worst_cl_ratio > largest_cl_ratio; ++round) {
+        tolerance *= 0.1;
+        result = analyse(tolerance, most_refinements);
+        state.worst_cl_ratio = worst_cl_ratio(result.report, window);
+    }
+    state.measured = true;
+    state.converged = result.report.reached && state.worst_cl_ratio <= largest_cl_ratio;
+    // A first correction that is itself negligible says that the weighted analysis alone was good enough.
+    const bool first_was_enough = result.report.iterations == 1 && 2 * result.report.relative_correction <= tolerance;
+    state.iterations = first_was_enough ? 0 : result.report.iterations;
+    state.relative_error = first_was_enough ? 2 * result.report.relative_correction : result.report.relative_error;
+    return std::move(result.alm);
+}
+
+}  // namespace
+
+BeamWindow channel_window(const Channel& channel, const HarmonicOptions& options) {
+    BeamWindow window = channel.beam ? *channel.beam : unit_window(options.lmax);
+    if (options.pixel_window) window = product(window, *options.pixel_window);
+    return window;
+}
+
+BeamWindow widest_window(std::span<const Channel> channels, const HarmonicOptions& options) {
+    BeamWindow widest = channel_window(channels.front(), options);
+    for (const Channel& channel : channels.subspan(1)) {
+        const BeamWindow window = channel_window(channel, options);
+        for (std::size_t l = 0; l < widest.temperature.size(); ++l) {
+            widest.temperature[l] = std::max(widest.temperature[l], std::abs(window.temperature[l]));
+            widest.polarization[l] = std::max(widest.polarization[l], std::abs(window.polarization[l]));
+        }
+    }
+    return widest;
+}
+
+TransformPlan::TransformPlan(const HealpixGrid& grid, int lmax, double tolerance, std::vector<double> temperature_window,
+                             std::vector<double> polarization_window)
+    : grid_(grid),
+      lmax_(lmax),
+      tolerance_(tolerance),
+      temperature_window_(std::move(temperature_window)),
+      polarization_window_(std::move(polarization_window)),
+      weights_(make_ring_weights(grid.nside(), std::min(2 * lmax, 3 * grid.nside() - 1))) {}
+
+Alm TransformPlan::analyse(std::span<const double> map, TransformState& state) const {
+    const auto run = [&](double tolerance, int refinements) {
+        return analyse_converged(grid_, map, lmax_, {tolerance, refinements, &weights_, temperature_window_});
+    };
+    if (!state.measured) return measure(run, tolerance_, temperature_window_, state);
+    return run(0.0, state.iterations).alm;
+}
+
+AlmEB TransformPlan::analyse_spin2(std::span<const double> q, std::span<const double> u, TransformState& state) const {
+    const auto run = [&](double tolerance, int refinements) {
+        return analyse_converged_spin2(grid_, q, u, lmax_, {tolerance, refinements, &weights_, polarization_window_});
+    };
+    if (!state.measured) return measure(run, tolerance_, polarization_window_, state);
+    return run(0.0, state.iterations).alm;
+}
+
+}  // namespace foreglow

@@ -41,7 +41,7 @@ std::optional<BrightnessUnit> find_brightness_unit(std::string_view text) {
 std::string to_text(const BrightnessUnit& unit) {
     for (const Name& name : names)
         if (name.unit == unit) return std::string(name.text);
-    FOREGLOW_EXPECTS(!"a unit that has a name");
+    FOREGLOW_EXPECTS(false && "a unit that has a name");
     return {};
 }
 
@@ -69,7 +69,7 @@ double rayleigh_jeans_per_unit(const BrightnessUnit& unit, Frequency frequency, 
             FOREGLOW_EXPECTS(pixel_area_sr > 0);
             return unit.scale * constants::jansky / pixel_area_sr * rayleigh_jeans_per_intensity(frequency);
     }
-    FOREGLOW_EXPECTS(!"a known kind of unit");
+    FOREGLOW_EXPECTS(false && "a known kind of unit");
     return 0;
 }
 

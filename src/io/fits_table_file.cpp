@@ -16,6 +16,7 @@
 #include "base/text.h"
 #include "io/atomic_file.h"
 #include "io/fits_file_kind.h"
+#include "io/fits_header_check.h"
 
 namespace foreglow {
 namespace {
@@ -164,6 +165,7 @@ void FitsTableFile::Impl::open_file() {
         throw FileError("cannot read " + request.path.string() + ": " + system_reason(errno));
     }
     file_bytes = facts.st_size;
+    if (plain) check_fits_header(descriptor, 0, message_table(request, 0));
     int status = 0;
     if (fits_open_diskfile(&file, request.path.c_str(), READONLY, &status) != 0) {
         file = nullptr;
@@ -176,6 +178,9 @@ void FitsTableFile::Impl::find_table() {
     std::string seen;
     for (int hdu = 0; hdu < most_hdus; ++hdu) {
         int status = 0, type = 0;
+        LONGLONG next = 0;
+        if (hdu > 0) fits_get_hduaddrll(file, nullptr, nullptr, &next, &status);
+        if (plain && next > 0) check_fits_header(descriptor, next, message_table(request, hdu));
         fits_movabs_hdu(file, hdu + 1, &type, &status);
         if (status == END_OF_FILE && hdu > 0) break;
         const bool wanted = request.hdu.value_or(hdu) == hdu;

@@ -35,7 +35,7 @@ class FitsMapBuilder {
         return *this;
     }
     FitsMapBuilder& without(const std::string& key) {
-        std::erase_if(cards_, [&](const auto& one) { return one.first == key; });
+        std::erase_if(cards_, [&name = key](const auto& one) { return one.first == name; });
         return *this;
     }
     /// Adds a column; its values are stored as the letter of the format says (B I J K E D L), rows as the
@@ -108,8 +108,8 @@ class FitsMapBuilder {
             if (!columns_[i].unit.empty()) all.emplace_back("TUNIT" + n, "'" + columns_[i].unit + "'");
         }
         for (const auto& [key, value] : cards_) {
-            const auto at =
-                std::find_if(all.begin(), all.end(), [&](const auto& one) { return one.first == key; });
+            const auto at = std::find_if(all.begin(), all.end(),
+                                         [&name = key](const auto& one) { return one.first == name; });
             if (at != all.end()) {
                 at->second = value;
             } else {

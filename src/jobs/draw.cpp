@@ -108,12 +108,18 @@ std::string title_of(const DrawOptions& options, const FitsMapHeader& header, co
     return title;
 }
 
+/// Tells whether a column by its name holds numbers that have no unit.
+bool is_pure_number(const std::string& column) {
+    const std::string name = to_lower(column);
+    return name == "index" || name == "index_error" || name == "curvature" || name == "curvature_error";
+}
+
 SkyMap take_map(const DrawOptions& options, FitsMap& file) {
     if (!file.frame)
-        throw InputError(
-            options.map.string() +
-            ": the file does not say in which frame it is (no COORDSYS card); add --frame galactic, "
-            "--frame icrs or --frame ecliptic");
+        throw InputError(options.map.string() +
+                         ": the file does not say in which frame it is (COORDSYS is missing or unknown); add "
+                         "--frame galactic, "
+                         "--frame icrs or --frame ecliptic");
     FitsMapColumn& column = file.columns.front();
     const double factor = unit_factor(options, column);
     SkyMap map{file.grid, *file.frame, options.unit.value_or(column.unit), std::move(column.values)};
@@ -149,6 +155,11 @@ DrawResult run_draw(const DrawOptions& options) {
     look.title = title_of(options, header, file.columns.front());
     look.quantity = quantity_of(file.columns.front(), file);
     const SkyMap map = take_map(options, file);
+    const std::string& column = file.columns.front().name;
+    if (map.unit.empty() && !is_pure_number(column)) {
+        look.unit = "unit not stated";
+        file.notices.push_back("the file gives no unit for column " + column + ": name it with --unit");
+    }
     const Picture picture = field ? draw_close_up(map, *field, look) : draw_all_sky(map, look);
     write_text_file(output, picture.png);
     DrawResult result{output, picture.width, picture.height, std::move(file.notices)};

@@ -109,6 +109,18 @@ TEST(Draw, RescalesUnitsOfOneKindAndRefusesOthers) {
     EXPECT_FALSE(std::filesystem::exists(folder / "wrong.png"));
 }
 
+TEST(Draw, SaysThatTheFileLeavesItsUnitOpen) {
+    const testing::TemporaryFolder folder;
+    DrawOptions options = make_options(folder);
+    write_map(folder, "");
+    const DrawResult result = run_draw(options);
+    ASSERT_EQ(result.notices.size(), 1U);
+    EXPECT_TRUE(mentions(result.notices[0], "no unit for column I_STOKES"));
+    options.unit = "K_RJ";
+    options.replace = true;
+    EXPECT_TRUE(run_draw(options).notices.empty());
+}
+
 TEST(Draw, SaysWhatALogScaleCannotShow) {
     const testing::TemporaryFolder folder;
     DrawOptions options = make_options(folder);

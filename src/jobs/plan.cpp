@@ -152,8 +152,8 @@ std::string describe_plan(const Plan& plan) {
          " by the law in each pixel, " + std::to_string(static_cast<std::ptrdiff_t>(plan.channels.size()) - per_pixel) +
          " through a_lm up to l = " + std::to_string(study.lmax));
     line("accuracy   " + format_number(study.accuracy, 3) + " asked for (rms of the error over rms of the map; in maps without beams of every pixel)");
-    line("output     " + plan.out.string() + ": " + std::to_string(plan.files.size()) + " files, " +
-         format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)));
+    line("output     " + plan.out.string() + ": " + std::to_string(plan.files.size()) + " files");
+    line("disk       " + format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)) + " and a few MiB for the report");
     line("memory     about " + format_bytes(static_cast<std::uint64_t>(plan.memory_bytes)));
     line("time       about " + format_number(plan.seconds, 2) + " s on two cores");
     for (const std::string& warning : plan.warnings) line("warning    " + warning);

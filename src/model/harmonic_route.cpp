@@ -54,18 +54,6 @@ int last_l(std::span<const double> window) {
     return static_cast<int>(l) - 1;
 }
 
-// The a_lm of the map that is 1 where a pixel is undefined; nothing where all are defined.
-std::optional<Alm> mask_alm(const HealpixGrid& grid, std::span<const double> map, int lmax) {
-    std::vector<double> mask(map.size());
-    bool any = false;
-    for (std::size_t i = 0; i < map.size(); ++i) {
-        mask[i] = is_defined(map[i]) ? 0.0 : 1.0;
-        any = any || mask[i] > 0;
-    }
-    if (!any) return std::nullopt;
-    return analyse(grid, mask, lmax);
-}
-
 void undefine_where(std::span<const double> share, std::vector<double>& values) {
     for (std::size_t i = 0; i < values.size(); ++i)
         if (share[i] > largest_filled_share) values[i] = undefined_pixel;
@@ -110,8 +98,8 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
     for (const BandSum& component : intensity_basis_.components) {
         check_interrupt();
         auto map = make_intensity_component(sky, BandLaw(component, sky.reference, range, law_tolerance));
-        if (intensity_alms_.empty()) filled_intensity_ = mask_alm(grid_, map, options_.lmax);
-        if (filled_intensity_) fill_undefined(grid_, map);
+        if (intensity_alms_.empty()) filled_intensity_.emplace(grid_, sky_frame_, map, narrowest_beam());
+        if (filled_intensity_->any()) fill_undefined(grid_, map);
         intensity_alms_.push_back(plan.analyse(map, state));
         progress.step(++done);
     }
@@ -126,8 +114,8 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
         check_interrupt();
         auto maps = make_polarized_component(
             sky, BandLaw(component, sky.polarization->reference, polarized_range, law_tolerance));
-        if (polarized_alms_.empty()) filled_polarization_ = mask_alm(grid_, maps.q, options_.lmax);
-        if (filled_polarization_) {
+        if (polarized_alms_.empty()) filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
+        if (filled_polarization_->any()) {
             fill_undefined(grid_, maps.q);
             fill_undefined(grid_, maps.u);
         }
@@ -165,20 +153,20 @@ ChannelMaps HarmonicRoute::make_channel(std::size_t channel) const {
     return maps;
 }
 
+Angle HarmonicRoute::narrowest_beam() const {
+    Angle narrowest = Angle::from_degrees(180);
+    for (const Channel& channel : channels_)
+        narrowest = std::min(narrowest, equivalent_fwhm(channel_window(channel, options_), grid_));
+    return narrowest;
+}
+
 void HarmonicRoute::undefine(const BeamWindow& window, ChannelMaps& maps) const {
-    const auto share_of = [&](Alm mask) {
-        std::vector<double> normalised = window.temperature;
-        for (double& b : normalised) b /= window.temperature.front();
-        multiply_by_l(mask, normalised);
-        if (options_.frame != sky_frame_) rotate_alm(mask, sky_frame_, options_.frame);
-        return synthesize(mask, grid_, last_l(normalised));
-    };
-    if (filled_intensity_) undefine_where(share_of(*filled_intensity_), maps.i);
-    if (filled_polarization_) {
-        const auto share = share_of(*filled_polarization_);
-        undefine_where(share, maps.q);
-        undefine_where(share, maps.u);
-    }
+    const Angle fwhm = equivalent_fwhm(window, grid_);
+    if (filled_intensity_->any()) undefine_where(filled_intensity_->under_beam(fwhm, options_.frame), maps.i);
+    if (!filled_polarization_ || !filled_polarization_->any()) return;
+    const auto share = filled_polarization_->under_beam(fwhm, options_.frame);
+    undefine_where(share, maps.q);
+    undefine_where(share, maps.u);
 }
 
 }  // namespace foreglow

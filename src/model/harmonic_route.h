@@ -6,6 +6,7 @@
 
 #include "base/progress.h"
 #include "model/channel.h"
+#include "model/filled_share.h"
 #include "model/sky_model.h"
 #include "model/spectral_basis.h"
 #include "model/transform_plan.h"
@@ -50,6 +51,7 @@ class HarmonicRoute {
   private:
     void make_bases(const SkyModel& sky, double tolerance);
     void transform_components(const SkyModel& sky, Progress& progress);
+    [[nodiscard]] Angle narrowest_beam() const;
     void undefine(const BeamWindow& window, ChannelMaps& maps) const;
 
     HealpixGrid grid_{1};
@@ -59,7 +61,7 @@ class HarmonicRoute {
     SpectralBasis intensity_basis_, polarized_basis_;
     std::vector<Alm> intensity_alms_;
     std::vector<AlmEB> polarized_alms_;
-    std::optional<Alm> filled_intensity_, filled_polarization_;  ///< of the maps that are 1 where a pixel was filled
+    std::optional<FilledShare> filled_intensity_, filled_polarization_;
     std::vector<double> errors_;
     HarmonicReport report_;
 };

@@ -13,7 +13,7 @@
 namespace foreglow {
 namespace {
 
-constexpr std::size_t largest_text = 64U * 1024 * 1024;
+constexpr std::size_t largest_text = std::size_t{64} * 1024 * 1024;
 
 struct CloseFile {
     void operator()(std::FILE* file) const noexcept { std::fclose(file); }

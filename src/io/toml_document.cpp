@@ -25,7 +25,7 @@ std::string to_place(const std::string& file_name, const toml::source_position& 
 }
 
 /// Writes 3.0 as the file has it, so that nobody is told that 3 is no whole number.
-std::string with_point(std::string number) {
+std::string with_point(const std::string& number) {
     return number.find_first_not_of("-0123456789") == std::string::npos ? number + ".0" : number;
 }
 

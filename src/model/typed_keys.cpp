@@ -82,7 +82,7 @@ std::optional<std::int64_t> read_integer(TomlReader& reader, const std::string& 
 std::filesystem::path resolve_path(const TomlReader& reader, const std::string& key, const TomlValue& value,
                                    const std::string& text, const std::filesystem::path& folder) {
     const bool is_open = text.find('\0') == std::string::npos && !text.empty();
-    const std::filesystem::path path =
+    std::filesystem::path path =
         value.from_command_line || !is_open ? std::filesystem::path(text) : folder / text;
     std::error_code code;
     const auto status = std::filesystem::status(path, code);

@@ -8,6 +8,7 @@
 
 #include "base/error.h"
 #include "io/fits_sentinel.h"
+#include "io/fits_vector_width.h"
 
 namespace foreglow {
 namespace {
@@ -15,7 +16,7 @@ namespace {
 constexpr double undefined = std::numeric_limits<double>::quiet_NaN();
 
 template <class Bits>
-Bits load_big_endian(const std::byte* at) {
+FOREGLOW_FITS_INLINE Bits load_big_endian(const std::byte* at) {
     Bits bits = 0;
     std::memcpy(&bits, at, sizeof bits);
     if constexpr (sizeof bits == 2) return __builtin_bswap16(bits);
@@ -26,8 +27,8 @@ Bits load_big_endian(const std::byte* at) {
 
 /// Calls take(cell bytes, index) for each cell, row by row.
 template <class Take>
-void for_each_cell(const std::byte* cells, std::int64_t stride, std::int64_t per_row, std::int64_t width,
-                   std::size_t count, const Take& take) {
+FOREGLOW_FITS_INLINE void for_each_cell(const std::byte* cells, std::int64_t stride, std::int64_t per_row,
+                                        std::int64_t width, std::size_t count, const Take& take) {
     const auto rows = static_cast<std::int64_t>(count) / per_row;
     if (per_row == 1) {
         for (std::int64_t row = 0; row < rows; ++row)
@@ -39,14 +40,6 @@ void for_each_cell(const std::byte* cells, std::int64_t stride, std::int64_t per
         for (std::int64_t i = 0; i < per_row; ++i)
             take(first + i * width, row * per_row + i);
     }
-}
-
-template <class Real, class Bits>
-void decode_real(const std::byte* cells, std::int64_t stride, std::int64_t per_row, double* out,
-                 std::size_t count) {
-    for_each_cell(cells, stride, per_row, sizeof(Real), count, [out](const std::byte* at, std::int64_t i) {
-        out[i] = static_cast<double>(std::bit_cast<Real>(load_big_endian<Bits>(at)));
-    });
 }
 
 template <class Whole, class Bits>
@@ -70,16 +63,51 @@ struct Sentinel {
     double low, high;
 };
 
-void mark_undefined(std::optional<double> bad_data, std::span<double> values) {
-    const Sentinel unseen(fits_bad_data);
-    const Sentinel bad(bad_data.value_or(fits_bad_data));
+/// The two sentinels of a column; the second is the first where there is no BAD_DATA card.
+struct Sentinels {
+    Sentinel unseen{fits_bad_data}, bad{fits_bad_data};
+};
+
+/// Sentinels that no value meets.
+Sentinels no_sentinels() {
+    const Sentinel none(undefined);
+    return {none, none};
+}
+
+FOREGLOW_FITS_INLINE double defined_or_nan(const Sentinels& sentinels, double value) {
     constexpr double largest = std::numeric_limits<double>::max();
-    for (double& value : values) {
-        const bool is_bad = (value >= unseen.low) & (value <= unseen.high);
-        const bool is_other = (value >= bad.low) & (value <= bad.high);
-        const bool is_infinite = std::fabs(value) > largest;
-        value = (is_bad | is_other | is_infinite) ? undefined : value;
-    }
+    const bool is_bad = (value >= sentinels.unseen.low) & (value <= sentinels.unseen.high);
+    const bool is_other = (value >= sentinels.bad.low) & (value <= sentinels.bad.high);
+    const bool is_infinite = std::fabs(value) > largest;
+    return (is_bad | is_other | is_infinite) ? undefined : value;
+}
+
+FOREGLOW_FITS_WIDE void scale_and_mark(double scale, double zero, Sentinels sentinels,
+                                       std::span<double> values) {
+    // FITS scales what the bytes say, so a sentinel written by value is looked for afterwards.
+    for (double& value : values)
+        value = defined_or_nan(sentinels, zero + scale * value);
+}
+
+/// Reals are the common case: one pass over them.
+template <class Real, class Bits>
+FOREGLOW_FITS_INLINE void decode_real(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                      std::int64_t per_row, std::span<double> out) {
+    double* const to = out.data();
+    for_each_cell(
+        cells, stride, per_row, sizeof(Real), out.size(),
+        [ to, sentinels ](const std::byte* at, std::int64_t i) __attribute__((always_inline)) {
+            to[i] = defined_or_nan(sentinels,
+                                   static_cast<double>(std::bit_cast<Real>(load_big_endian<Bits>(at))));
+        });
+}
+FOREGLOW_FITS_WIDE void decode_float(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                     std::int64_t per_row, std::span<double> out) {
+    decode_real<float, std::uint32_t>(sentinels, cells, stride, per_row, out);
+}
+FOREGLOW_FITS_WIDE void decode_double(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                      std::int64_t per_row, std::span<double> out) {
+    decode_real<double, std::uint64_t>(sentinels, cells, stride, per_row, out);
 }
 
 }  // namespace
@@ -87,13 +115,16 @@ void mark_undefined(std::optional<double> bad_data, std::span<double> values) {
 void decode_cells(const FitsTableColumn& column, std::optional<double> bad_data, const std::byte* cells,
                   std::int64_t stride, std::int64_t per_row, std::span<double> out) {
     FOREGLOW_EXPECTS(per_row >= 1 && static_cast<std::int64_t>(out.size()) % per_row == 0);
+    const Sentinels sentinels{Sentinel(fits_bad_data), Sentinel(bad_data.value_or(fits_bad_data))};
     double* const to = out.data();
+    const bool scaled = column.scale != 1.0 || column.zero != 0.0;
     switch (column.type) {
+        // A sentinel in a scaled column shows only after the scaling, so none is looked for before.
         case 'E':
-            decode_real<float, std::uint32_t>(cells, stride, per_row, to, out.size());
+            decode_float(scaled ? no_sentinels() : sentinels, cells, stride, per_row, out);
             break;
         case 'D':
-            decode_real<double, std::uint64_t>(cells, stride, per_row, to, out.size());
+            decode_double(scaled ? no_sentinels() : sentinels, cells, stride, per_row, out);
             break;
         case 'B':
             decode_whole<std::uint8_t, std::uint8_t>(column, cells, stride, per_row, to, out.size());
@@ -116,12 +147,8 @@ void decode_cells(const FitsTableColumn& column, std::optional<double> bad_data,
         default:
             FOREGLOW_EXPECTS(false && "a column of numbers");
     }
-    if (column.scale != 1.0 || column.zero != 0.0) {
-        // FITS scales what the bytes say, so a sentinel written by value is looked for afterwards.
-        for (double& value : out)
-            value = column.zero + column.scale * value;
-    }
-    mark_undefined(bad_data, out);
+    const bool whole = column.type != 'E' && column.type != 'D';
+    if (scaled || whole) scale_and_mark(column.scale, column.zero, sentinels, out);
 }
 
 }  // namespace foreglow

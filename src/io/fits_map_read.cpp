@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include "io/fits_map_read.h"
 
+#include <sys/mman.h>
+
 #include <algorithm>
 #include <atomic>
 #include <cmath>
@@ -20,6 +22,20 @@ namespace {
 constexpr std::int64_t block_bytes = std::int64_t{1}
                                      << 19;  // read at a time; stays in the second-level cache
 constexpr double undefined = std::numeric_limits<double>::quiet_NaN();
+
+/// Makes npix values in large pages where the system has them: a third of the time goes into page faults
+/// otherwise.
+std::vector<double> make_values(std::size_t npix, double value) {
+    constexpr std::uintptr_t page = 4096;
+    std::vector<double> values;
+    values.reserve(npix);
+    const auto begin = (reinterpret_cast<std::uintptr_t>(values.data()) + page - 1) / page * page;
+    const auto end = reinterpret_cast<std::uintptr_t>(values.data() + npix) / page * page;
+    // Advice only: nothing depends on its being taken.
+    if (end > begin) ::madvise(reinterpret_cast<void*>(begin), end - begin, MADV_HUGEPAGE);
+    values.resize(npix, value);
+    return values;
+}
 
 /// A part of the table: whole rows, or some cells of one long row.
 struct TablePart {
@@ -201,9 +217,7 @@ FitsMap read_fits_map(const FitsMapRequest& request) {
     const auto npix = static_cast<std::size_t>(header.grid.npix());
     for (const int number : header.requested) {
         const auto& info = header.columns[static_cast<std::size_t>(number - 1)];
-        map.columns.push_back(
-            {info.name, info.unit,
-             header.partial ? std::vector<double>(npix, undefined) : std::vector<double>(npix)});
+        map.columns.push_back({info.name, info.unit, make_values(npix, header.partial ? undefined : 0.0)});
     }
     read_columns(file, header, listed, map);
     return map;

@@ -48,7 +48,7 @@ beam_fwhm = "3 deg"                  # a Gaussian beam; without it no beam
 name      = "high"
 frequency = "95 GHz"
 bandwidth = "20 GHz"
-beam_fwhm = "2 deg"
+beam_fwhm = "2.5 deg"
 
 # Many regular channels, beside [[channel]] or instead of it; the files are grid_0000.fits and so on.
 # [channel_grid]

@@ -75,7 +75,7 @@ class BeamsAndFrames(harness.Case):
         ell = numpy.arange(129)
         window = numpy.exp(-ell * (ell + 1) * 0.0004) * (1 + 0.1 * numpy.sin(ell / 9))  # invented, with side lobes
         rows = "".join(f"{l},{b:.17g},{0.98 * b:.17g}\n" for l, b in zip(ell, window))
-        self.write("window.csv", "l,B_l,B_l_polarization\n" + rows)
+        self.write("window.csv", "l,B_l,B_l_pol\n" + rows)
         channel = '[[channel]]\nname = "a"\nfrequency = "30 GHz"\nbeam_window = "window.csv"\n'
         self.compare(STUDY + channel, 2e-4)
         self.compare(STUDY + "pixel_window = true\n" + channel, 2e-4)

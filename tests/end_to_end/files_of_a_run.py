@@ -71,7 +71,7 @@ class FilesOfARun(harness.Case):
 
     def read_with_everything(self, path):
         done = subprocess.run(["fitsverify", path], capture_output=True, text=True)
-        self.assertIn("0 warnings and 0 errors", done.stdout, done.stdout)
+        self.assertIn("0 warning(s) and 0 error(s)", done.stdout, done.stdout)
         with warnings.catch_warnings():
             warnings.simplefilter("error")
             warnings.filterwarnings("ignore", category=DeprecationWarning)  # of the readers' own code, not of the file

@@ -101,7 +101,7 @@ def pixel_error(maps, expected):
 def map_error(maps, expected):
     """Returns rms(error)/rms(map) of I without monopole and dipole, and of (Q, U) where there are."""
     def without_dipole(m):
-        return healpy.remove_dipole(m, copy=True, verbose=False)
+        return healpy.remove_dipole(m, copy=True)
 
     def rms(values):
         return numpy.sqrt(numpy.mean(numpy.square(values)))

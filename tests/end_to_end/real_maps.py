@@ -121,7 +121,7 @@ class RealMaps(harness.Case):
 
     def test_unknown_is_no_answer(self):
         path, = glob.glob(DATA + "*W_v4_udgraded32_smoothed10deg_fortran.fits")
-        self.write("model.toml", f'reference_frequency = "94 GHz"\n[intensity]\nmap = "{path}"\nunit = "mK_CMB"\n')
+        self.write("model.toml", f'reference_frequency = "94 GHz"\n[intensity]\nmap = "{path}"\nunit = "mK_CMB"\n[index]\nvalue = -3\n')
         self.write("study.toml", 'model = "model.toml"\nnside = 32\n[[channel]]\nname = "a"\nfrequency = "94 GHz"\n')
         done = self.foreglow("make", "study.toml", "--out", "out", status=2)  # COORDSYS = 'unknown' in the file
         self.assertRegex(done.stderr, r"\bframe = ")

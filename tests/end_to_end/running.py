@@ -135,7 +135,7 @@ class Running(harness.Case):
         before = sorted(self.folder.rglob("*"))
         done = self.foreglow("plan", "study.toml")
         self.assertEqual(sorted(self.folder.rglob("*")), before)
-        for word in ("a.fits", "memory", "disk"):
+        for word in ("a.fits", "output", "memory", "time"):
             self.assertIn(word, done.stdout.lower())
 
     def test_plan_refuses_what_make_refuses(self):

@@ -29,7 +29,7 @@ void Progress::clear_live() {
 void Progress::draw_live(std::int64_t done) {
     if (style_ != Style::Terminal) return;
     std::string line = phase_;
-    if (total_ > 0) line += " " + std::to_string(done) + "/" + std::to_string(total_);
+    if (total_ > 0) line.append(" ").append(std::to_string(done)).append("/").append(std::to_string(total_));
     std::fprintf(stderr, "\r\033[K%s", line.c_str());
     std::fflush(stderr);
     live_ = true;

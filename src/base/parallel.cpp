@@ -3,6 +3,7 @@
 
 #include <omp.h>
 
+#include <algorithm>
 #include <atomic>
 #include <exception>
 #include <limits>
@@ -31,20 +32,19 @@ void parallel_for_blocks(std::int64_t count, std::int64_t block,
                          const std::function<void(std::int64_t, std::int64_t)>& work) {
     FOREGLOW_EXPECTS(count >= 0 && block >= 1);
     const std::int64_t blocks = (count + block - 1) / block;
-    std::atomic<bool> failed{false};
+    // Blocks before the first failed one are still done: one of them may fail as well, and then it is the first.
+    std::atomic<std::int64_t> failed_block{std::numeric_limits<std::int64_t>::max()};
     std::mutex guard;
-    std::int64_t failed_block = std::numeric_limits<std::int64_t>::max();
     std::exception_ptr failure;
 #pragma omp parallel for schedule(dynamic, 1)
     for (std::int64_t b = 0; b < blocks; ++b) {
-        if (failed.load(std::memory_order_relaxed)) continue;
+        if (b > failed_block.load(std::memory_order_relaxed)) continue;
         try {
             work(b * block, std::min(count, (b + 1) * block));
         } catch (...) {
             const std::lock_guard lock(guard);
-            failed.store(true, std::memory_order_relaxed);
-            if (b < failed_block) {
-                failed_block = b;
+            if (b < failed_block.load(std::memory_order_relaxed)) {
+                failed_block.store(b, std::memory_order_relaxed);
                 failure = std::current_exception();
             }
         }

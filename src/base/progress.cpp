@@ -13,6 +13,11 @@ Progress::Style Progress::style_of_stderr() {
     return isatty(STDERR_FILENO) != 0 ? Style::Terminal : Style::Log;
 }
 
+Progress::~Progress() {
+    clear_live();
+    std::fflush(stderr);
+}
+
 void Progress::print_line(const std::string& line) {
     if (style_ == Style::Quiet) return;
     clear_live();

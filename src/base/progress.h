@@ -14,6 +14,10 @@ class Progress {
     enum class Style { Quiet, Log, Terminal };
 
     explicit Progress(Style style = Style::Quiet) : style_(style) {}
+    /// Takes the live line away, so that a message printed after an error begins on an empty one.
+    ~Progress();
+    Progress(const Progress&) = delete;
+    Progress& operator=(const Progress&) = delete;
     /// Returns the style that fits standard error: a live line on a terminal, plain lines elsewhere.
     [[nodiscard]] static Style style_of_stderr();
 

@@ -36,7 +36,7 @@ NumberWithUnit parse_number_with_unit(std::string_view text) {
     double value = 0;
     const char* first = trimmed.data();
     const char* last = first + trimmed.size();
-    if (first != last && *first == '+') ++first;
+    if (last - first >= 2 && first[0] == '+' && first[1] != '-') ++first;  // from_chars takes no plus sign
     const auto [end, code] = std::from_chars(first, last, value);
     if (code != std::errc() || !std::isfinite(value))
         throw InputError("does not begin with a number: '" + std::string(text) + "'");
@@ -47,6 +47,7 @@ Frequency parse_frequency(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     const double hz = quantity.value * scale_of(frequency_units, quantity, "30 GHz");
     if (!(hz > 0)) throw InputError("must be above zero, but is '" + std::string(text) + "'");
+    if (!std::isfinite(hz)) throw InputError("is too large: '" + std::string(text) + "'");
     return Frequency::from_hz(hz);
 }
 

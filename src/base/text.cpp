@@ -86,7 +86,7 @@ std::string format_bytes(std::uint64_t bytes) {
     constexpr std::array<const char*, 6> names{"B", "KiB", "MiB", "GiB", "TiB", "PiB"};
     double value = static_cast<double>(bytes);
     std::size_t step = 0;
-    while (value >= 1024 && step + 1 < names.size()) {
+    while (value >= (step == 0 ? 1024 : 1023.95) && step + 1 < names.size()) {  // 1023.95 would be written as 1024.0
         value /= 1024;
         ++step;
     }

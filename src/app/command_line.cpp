@@ -4,7 +4,7 @@
 #include <CLI/CLI.hpp>
 #include <csignal>
 #include <cstdio>
-#include <iostream>
+#include <map>
 #include <new>
 
 #include "base/build_info.h"
@@ -78,9 +78,16 @@ void add_study_options(CLI::App& command, StudyRequest& request) {
 
 void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>& center, std::string& size) {
     command.add_option("MAP", draw.map, "HEALPix FITS map")->required();
+    const std::map<std::string, Frame> frames{
+        {"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}};
+    command.add_option("--frame", draw.frame, "galactic, icrs or ecliptic, where the file does not say")
+        ->transform(CLI::CheckedTransformer(frames, CLI::ignore_case));
+    const std::map<std::string, Ordering> orderings{{"ring", Ordering::Ring}, {"nested", Ordering::Nested}};
+    command.add_option("--ordering", draw.ordering, "ring or nested, where the file does not say")
+        ->transform(CLI::CheckedTransformer(orderings, CLI::ignore_case));
     command.add_option("--column", draw.column, "number from 1, or name (default: the first)");
     command.add_option("--hdu", draw.hdu, "number of the table (default: the first HEALPix one)");
-    command.add_option("--output", draw.output, "picture to write (default: MAP's stem + \".png\" here)");
+    command.add_option("--out", draw.output, "picture to write (default: MAP's stem + \".png\" here)");
     command.add_option("--title", draw.title, "above the picture");
     command.add_option("--unit", draw.unit, "unit to show, or that of a file that does not say");
     command.add_option("--center", center, "longitude and latitude of a close-up in degrees, LON,LAT")->delimiter(',')->expected(2);

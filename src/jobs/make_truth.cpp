@@ -98,12 +98,12 @@ SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
     turn_plain(values.polarized_index);
     values.intensity = harmonic_regrid(SkyMap{sky.grid, sky.frame, "K_RJ", std::move(values.intensity)}, sky.grid, study.frame,
                                        study.lmax)
-                           .map.values;
+                           .values;
     if (!study.polarized) return values;
-    RegriddedStokes stokes = harmonic_regrid(StokesMaps{sky.grid, sky.frame, "K_RJ", std::move(values.q), std::move(values.u)},
+    StokesMaps stokes = harmonic_regrid(StokesMaps{sky.grid, sky.frame, "K_RJ", std::move(values.q), std::move(values.u)},
                                              sky.grid, study.frame, study.lmax);
-    values.q = std::move(stokes.maps.q);
-    values.u = std::move(stokes.maps.u);
+    values.q = std::move(stokes.q);
+    values.u = std::move(stokes.u);
     return values;
 }
 

@@ -10,8 +10,8 @@
 #include "base/text.h"
 #include "jobs/output_folder.h"
 #include "jobs/resources.h"
-#include "model/load_sky.h"
 #include "model/model_file.h"
+#include "picture/typeface.h"
 
 namespace foreglow {
 namespace {
@@ -86,6 +86,7 @@ void check_room(const Plan& plan) {
 
 void add_warnings(Plan& plan) {
     plan.warnings = plan.study.warnings;
+    plan.warnings.insert(plan.warnings.end(), plan.model.warnings.begin(), plan.model.warnings.end());
     const auto& beam = plan.model.sketch ? std::optional<Angle>(Angle::from_degrees(1.0))
                                          : (plan.model.intensity ? plan.model.intensity->beam_fwhm : std::nullopt);
     const double pixel = std::sqrt(HealpixGrid(plan.study.nside).pixel_area());
@@ -110,14 +111,15 @@ std::string map_stem(const Plan& plan, const std::string& channel, int realizati
 }
 
 Plan make_plan(PlanRequest request) {
+    check_typeface();  // else a run would fail at its end, at the report
     Plan plan;
     plan.study = std::move(request.study);
     plan.model = read_study_model(plan.study);
     check_polarization(plan.study, plan.model);
     plan.channels = make_channels(plan.study);
-    plan.sky_frame = check_model_maps(plan.model, plan.study.polarized);
+    plan.model_maps = check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized);
     for (const Channel& channel : plan.channels)
-        plan.per_pixel.push_back(is_made_per_pixel(channel, plan.study, plan.sky_frame));
+        plan.per_pixel.push_back(is_made_per_pixel(channel, plan.study, plan.model_maps.frame));
     if (plan.study.pixel_window) static_cast<void>(read_pixel_window(plan.study.nside, plan.study.lmax));
     if (plan.study.coverage) plan.coverage = read_study_coverage(plan.study);
     for (int r = 0; r < plan.study.realizations; ++r)

@@ -8,6 +8,7 @@
 #include <vector>
 
 #include "model/channel.h"
+#include "model/load_sky.h"
 #include "model/map_file.h"
 #include "model/model_spec.h"
 #include "model/study_spec.h"
@@ -28,7 +29,7 @@ struct Plan {
     std::vector<Channel> channels;
     std::vector<bool> per_pixel;          ///< [channels]: no beam, pixel window or rotation stands in the way
     std::vector<int> realizations;        ///< numbers to be made
-    Frame sky_frame = Frame::Galactic;    ///< where the law acts
+    ModelMaps model_maps;                 ///< what the headers of the model's maps say
     std::optional<Coverage> coverage;
     std::filesystem::path out;
     std::vector<PlannedFile> files;

@@ -12,6 +12,7 @@ namespace foreglow {
 namespace {
 
 constexpr double program_bytes = 60e6;          // libraries and buffers, measured on an empty study
+constexpr double strip_pixels = 4.2e6;         // of the strips in which maps are made
 constexpr double usual_components = 10;         // K for accuracies near 1e-5
 // Measured on two cores (docs/performance.md): one spin-0 transform takes 1.1e-9 s nside lmax^2, spin 2 takes 3.3 times that;
 // a law in a pixel takes 4 ns; a file is written at 1.5 GB/s.
@@ -27,10 +28,6 @@ std::filesystem::path existing_part(std::filesystem::path folder) {
            folder.parent_path() != folder)
         folder = folder.parent_path();
     return folder;
-}
-
-bool is_map(const ValueOrMap& value) {
-    return std::holds_alternative<MapSource>(value);
 }
 
 }  // namespace
@@ -56,20 +53,20 @@ void estimate_costs(Plan& plan) {
     const auto harmonic = static_cast<double>(std::count(plan.per_pixel.begin(), plan.per_pixel.end(), false));
     const double alm_values = 0.5 * (study.lmax + 1.0) * (study.lmax + 2.0);
     const double stokes = study.polarized ? 3 : 1;
-    double sky_maps = stokes;
-    if (plan.model.sketch || is_map(plan.model.index.value)) sky_maps += 1;
-    if (plan.model.sketch || is_map(plan.model.curvature)) sky_maps += 1;
-    double memory = program_bytes + std::min(sky_maps * npix, 1e9) * 8;
+    // Templates are read as whole maps and transformed before the maps are made; what stays is in held_values.
+    const double reading = plan.model_maps.largest_nside > 0
+                               ? 8 * 3 * static_cast<double>(HealpixGrid(plan.model_maps.largest_nside).npix())
+                               : 0.0;
+    double making = 8 * static_cast<double>(plan.model_maps.held_values) +
+                    8 * std::min(npix, strip_pixels) * (study.polarized ? 10 : 4);
     double transforms = 0;
     const double per_set = study.polarized ? 1 + spin2_factor : 1;
     if (harmonic > 0) {
         const double components = std::min(harmonic, usual_components);
-        memory += 8 * npix * (2 * stokes + 1) + 16 * alm_values * stokes * (components + 3);
+        making += 8 * npix * (2 * stokes + 1) + 16 * alm_values * stokes * (components + 3);
         transforms = per_set * (components + 2 + harmonic);
     }
-    const double strip_pixels = std::min(npix, 4.2e6);
-    memory += 8 * strip_pixels * (sky_maps + 4);
-    plan.memory_bytes = static_cast<std::int64_t>(memory);
+    plan.memory_bytes = static_cast<std::int64_t>(program_bytes + std::max(reading, making));
     plan.seconds = 0.1 + transforms * seconds_per_transform * study.nside * study.lmax * study.lmax +
                    seconds_per_pixel * npix * channels * stokes + static_cast<double>(plan.disk_bytes) / bytes_per_second;
 }

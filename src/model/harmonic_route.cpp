@@ -12,6 +12,7 @@
 #include "model/transform_plan.h"
 #include "sphere/fill.h"
 #include "sphere/harmonics.h"
+#include "sphere/regrid.h"
 #include "sphere/rotation.h"
 
 namespace foreglow {
@@ -70,6 +71,7 @@ HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels,
     make_bases(sky, tolerance);
     progress.end();
     transform_components(sky, progress);
+    turn_components(progress);
     const BasisErrors basis_errors = measure_basis_errors(sky, channels_, intensity_basis_,
                                                           options.polarized ? &polarized_basis_ : nullptr);
     for (std::size_t c = 0; c < channels_.size(); ++c)
@@ -126,6 +128,23 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
     progress.end();
 }
 
+// Rotation costs far more than the other steps and commutes with round beams: the few components are turned, not the channels.
+void HarmonicRoute::turn_components(Progress& progress) {
+    if (options_.frame == sky_frame_) return;
+    progress.begin("turning component maps to " + to_text(options_.frame));
+    for (std::size_t k = 0; k < std::max(intensity_alms_.size(), polarized_alms_.size()); ++k) {
+        check_interrupt();
+        const bool has_both = k < intensity_alms_.size() && k < polarized_alms_.size();
+        if (has_both)
+            rotate_alm(intensity_alms_[k], polarized_alms_[k], sky_frame_, options_.frame);
+        else if (k < intensity_alms_.size())
+            rotate_alm(intensity_alms_[k], sky_frame_, options_.frame);
+        else
+            rotate_alm(polarized_alms_[k], sky_frame_, options_.frame);
+    }
+    progress.end();
+}
+
 void HarmonicReport::add(const TransformState& state) {
     iterations = std::max(iterations, state.iterations);
     transform_error = std::max(transform_error, state.relative_error);
@@ -138,13 +157,11 @@ ChannelMaps HarmonicRoute::make_channel(std::size_t channel) const {
     ChannelMaps maps;
     Alm t = combine(intensity_alms_, intensity_basis_.weights, channel);
     multiply_by_l(t, window.temperature);
-    if (options_.frame != sky_frame_) rotate_alm(t, sky_frame_, options_.frame);
     maps.i = synthesize(t, grid_, last_l(window.temperature));
     if (options_.polarized) {
         AlmEB eb = combine(polarized_alms_, polarized_basis_.weights, channel);
         multiply_by_l(eb.e, window.polarization);
         multiply_by_l(eb.b, window.polarization);
-        if (options_.frame != sky_frame_) rotate_alm(eb, sky_frame_, options_.frame);
         StokesValues values = synthesize_spin2(eb, grid_, last_l(window.polarization));
         maps.q = std::move(values.q);
         maps.u = std::move(values.u);

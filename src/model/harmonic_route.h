@@ -51,6 +51,7 @@ class HarmonicRoute {
   private:
     void make_bases(const SkyModel& sky, double tolerance);
     void transform_components(const SkyModel& sky, Progress& progress);
+    void turn_components(Progress& progress);
     [[nodiscard]] Angle narrowest_beam() const;
     void undefine(const BeamWindow& window, ChannelMaps& maps) const;
 

@@ -9,8 +9,6 @@
 #include "model/map_source.h"
 #include "model/sketch_sky.h"
 #include "physics/spectral_law.h"
-#include "sphere/converged_analysis.h"
-#include "sphere/fill.h"
 #include "sphere/regrid.h"
 #include "sphere/rotation.h"
 
@@ -18,56 +16,32 @@ namespace foreglow {
 namespace {
 
 constexpr double template_tolerance = 1e-8;  // of a template's a_lm: far below any accuracy a study asks for
-constexpr int most_refinements = 12;
-
-// Above about 2.5 nside the transforms of pixelized maps are not trustworthy (measured; see docs/accuracy.md).
-int trusted_lmax(const HealpixGrid& map_grid, int lmax) {
-    return std::min(lmax, std::max(2, 5 * map_grid.nside() / 2));
-}
-
-std::shared_ptr<const SkyMap> map_of_filled(const HealpixGrid& grid, Frame frame, const std::vector<double>& values) {
-    auto filled = std::make_shared<SkyMap>();
-    filled->grid = grid;
-    filled->frame = frame;
-    bool any = false;
-    for (const double value : values) {
-        filled->values.push_back(is_defined(value) ? 0.0 : 1.0);
-        any = any || !is_defined(value);
-    }
-    return any ? filled : nullptr;
-}
 
 std::string regrid_notice(const char* what, const HealpixGrid& from, const HealpixGrid& to, int lmax) {
     return std::string(what) + " brought from nside " + std::to_string(from.nside()) + " to " + std::to_string(to.nside()) +
            " through its a_lm up to l = " + std::to_string(lmax);
 }
 
+// The map of filled pixels, shared with the fields that stay undefined near them.
+std::shared_ptr<const SkyMap> share_filled(const HealpixGrid& grid, Frame frame, std::vector<double> filled) {
+    if (filled.empty()) return nullptr;
+    return std::make_shared<const SkyMap>(SkyMap{grid, frame, "", std::move(filled)});
+}
+
 PixelField bring_intensity(SkyMap map, const HealpixGrid& grid, int lmax, Progress& progress) {
     if (map.grid == grid) return PixelField::of_map(std::make_shared<const SkyMap>(std::move(map)));
-    const int l = trusted_lmax(map.grid, lmax);
-    progress.notice(regrid_notice("intensity template", map.grid, grid, l));
-    auto filled = map_of_filled(map.grid, map.frame, map.values);
-    if (filled) fill_undefined(map.grid, map.values);
-    const RingWeights weights = make_ring_weights(map.grid.nside(), std::min(2 * l, 3 * map.grid.nside() - 1));
-    ConvergedAlm result = analyse_converged(map.grid, map.values, l, {template_tolerance, most_refinements, &weights, {}});
-    return PixelField::harmonic(std::move(result.alm), map.frame, std::move(filled));
+    progress.notice(regrid_notice("intensity template", map.grid, grid, trusted_lmax(map.grid, lmax)));
+    AnalysedMap result = analyse_filled(map, lmax, template_tolerance);
+    return PixelField::harmonic(std::move(result.alm), map.frame, share_filled(map.grid, map.frame, std::move(result.filled)));
 }
 
 StokesField bring_stokes(StokesMaps maps, const HealpixGrid& grid, Frame frame, int lmax, Progress& progress) {
     if (maps.grid == grid && maps.frame == frame) return {std::make_shared<const StokesMaps>(std::move(maps)), nullptr};
-    const int l = trusted_lmax(maps.grid, lmax);
-    progress.notice(regrid_notice("polarization template", maps.grid, grid, l) +
+    progress.notice(regrid_notice("polarization template", maps.grid, grid, trusted_lmax(maps.grid, lmax)) +
                     (maps.frame == frame ? "" : " and turned from " + to_text(maps.frame) + " to " + to_text(frame)));
-    auto filled = map_of_filled(maps.grid, maps.frame, maps.q);
-    if (filled) {
-        fill_undefined(maps.grid, maps.q);
-        fill_undefined(maps.grid, maps.u);
-    }
-    const RingWeights weights = make_ring_weights(maps.grid.nside(), std::min(2 * l, 3 * maps.grid.nside() - 1));
-    ConvergedAlmEB result =
-        analyse_converged_spin2(maps.grid, maps.q, maps.u, l, {template_tolerance, most_refinements, &weights, {}});
+    AnalysedStokes result = analyse_filled(maps, lmax, template_tolerance);
     if (maps.frame != frame) rotate_alm(result.alm, maps.frame, frame);
-    return {std::move(result.alm), std::move(filled)};
+    return {std::move(result.alm), share_filled(maps.grid, maps.frame, std::move(result.filled))};
 }
 
 // An index, curvature or fraction on the sky's grid; a finer one is first coarsened by means weighted with the brightness.
@@ -107,12 +81,6 @@ PolarizedSky load_polarization(const PolarizationSpec& spec, const SkyModel& sky
     return polarized;
 }
 
-void check_plain(const ValueOrMap& value) {
-    const auto* source = std::get_if<MapSource>(&value);
-    if (source == nullptr) return;
-    static_cast<void>(resolve_frame(*source, read_fits_map_header(make_request(*source)).frame));
-}
-
 void check_units(const MapSource& source, const FitsMapHeader& header, std::size_t columns) {
     FOREGLOW_EXPECTS(!header.requested.empty());
     for (std::size_t i = 0; i < std::min(columns, header.requested.size()); ++i)
@@ -120,33 +88,65 @@ void check_units(const MapSource& source, const FitsMapHeader& header, std::size
             if (column.number == header.requested[i]) static_cast<void>(resolve_unit(source, column.unit));
 }
 
+/// Looks at the headers of a model's maps one by one and adds up what they will hold in memory.
+class HeaderCheck {
+  public:
+    HeaderCheck(const HealpixGrid& grid, int lmax) : grid_(grid), lmax_(lmax) {}
+
+    void intensity(const MapSource& source) {
+        const FitsMapHeader header = open(source);
+        check_units(source, header, 1);
+        add(header, header.grid == grid_, 1);
+        maps_.frame = resolve_frame(source, header.frame);
+    }
+    void plain(const ValueOrMap& value) {
+        const auto* source = std::get_if<MapSource>(&value);
+        if (source == nullptr) return;
+        const FitsMapHeader header = open(*source);
+        static_cast<void>(resolve_frame(*source, header.frame));
+        maps_.held_values += std::min(header.grid.npix(), grid_.npix());
+    }
+    void stokes(const MapSource& source, bool brightness) {
+        const FitsMapHeader header = open(source);
+        const Frame frame = resolve_frame(source, header.frame);
+        if (brightness) check_units(source, header, 2);
+        static_cast<void>(resolve_convention(source, header.convention));
+        add(header, header.grid == grid_ && frame == maps_.frame, 2);
+    }
+    [[nodiscard]] ModelMaps result() const { return maps_; }
+
+  private:
+    FitsMapHeader open(const MapSource& source) {
+        FitsMapHeader header = read_fits_map_header(make_request(source));
+        maps_.largest_nside = std::max(maps_.largest_nside, header.grid.nside());
+        return header;
+    }
+    void add(const FitsMapHeader& header, bool pixel_for_pixel, std::int64_t columns) {
+        const std::int64_t l = trusted_lmax(header.grid, lmax_);
+        maps_.held_values += columns * (pixel_for_pixel ? grid_.npix() : (l + 1) * (l + 2));
+    }
+
+    HealpixGrid grid_;
+    int lmax_;
+    ModelMaps maps_;
+};
+
 }  // namespace
 
-Frame check_model_maps(const ModelSpec& model, bool with_polarization) {
-    if (model.sketch) return Frame::Galactic;
+ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization) {
+    if (model.sketch) return {Frame::Galactic, (with_polarization ? 5 : 3) * grid.npix(), 0};
     FOREGLOW_EXPECTS(model.intensity.has_value());
-    const MapSource& intensity = model.intensity->map;
-    const FitsMapHeader header = read_fits_map_header(make_request(intensity));
-    const Frame frame = resolve_frame(intensity, header.frame);
-    check_units(intensity, header, 1);
-    check_plain(model.index.value);
-    check_plain(model.curvature);
-    if (!with_polarization || !model.polarization) return frame;
+    HeaderCheck check(grid, lmax);
+    check.intensity(model.intensity->map);
+    check.plain(model.index.value);
+    check.plain(model.curvature);
+    if (!with_polarization || !model.polarization) return check.result();
     const PolarizationSpec& polarization = *model.polarization;
-    if (polarization.map) {
-        const FitsMapHeader stokes = read_fits_map_header(make_request(*polarization.map));
-        static_cast<void>(resolve_frame(*polarization.map, stokes.frame));
-        check_units(*polarization.map, stokes, 2);
-        static_cast<void>(resolve_convention(*polarization.map, stokes.convention));
-    }
-    if (polarization.angle_map) {
-        const FitsMapHeader angles = read_fits_map_header(make_request(*polarization.angle_map));
-        static_cast<void>(resolve_frame(*polarization.angle_map, angles.frame));
-        static_cast<void>(resolve_convention(*polarization.angle_map, angles.convention));
-    }
-    if (polarization.fraction) check_plain(*polarization.fraction);
-    if (polarization.index) check_plain(*polarization.index);
-    return frame;
+    if (polarization.map) check.stokes(*polarization.map, true);
+    if (polarization.angle_map) check.stokes(*polarization.angle_map, false);
+    if (polarization.fraction) check.plain(*polarization.fraction);
+    if (polarization.index) check.plain(*polarization.index);
+    return check.result();
 }
 
 SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization, Progress& progress) {

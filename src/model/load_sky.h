@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <cstdint>
+
 #include "base/progress.h"
 #include "model/model_spec.h"
 #include "model/sky_model.h"
@@ -10,9 +12,13 @@ namespace foreglow {
 /// Checks what the headers of a model's maps say against what the model says, without reading pixels; `plan` and `make` call it first.
 ///
 /// A missing or unknown unit, frame or polarization convention is a question to the user: the message names the line to add.
-/// @return the frame in which the law acts: that of the intensity map
 /// @throws InputError where something is left open or contradicts; DataError where a file is broken
-[[nodiscard]] Frame check_model_maps(const ModelSpec& model, bool with_polarization);
+struct ModelMaps {
+    Frame frame = Frame::Galactic;   ///< in which the law acts: that of the intensity map
+    std::int64_t held_values = 0;    ///< numbers that stay in memory while maps are made
+    int largest_nside = 0;           ///< of the maps to be read; 0 for the bundled sky
+};
+[[nodiscard]] ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization);
 
 /// Reads a model's maps and makes the sky on a grid, in the frame of the intensity map.
 ///

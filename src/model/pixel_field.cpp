@@ -5,7 +5,6 @@
 #include <vector>
 
 #include "base/error.h"
-#include "sphere/regrid.h"
 
 namespace foreglow {
 namespace {

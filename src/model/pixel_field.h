@@ -8,6 +8,7 @@
 
 #include "sphere/alm.h"
 #include "sphere/harmonics.h"
+#include "sphere/regrid.h"
 #include "sphere/sky_map.h"
 
 namespace foreglow {
@@ -55,9 +56,6 @@ class PixelField {
     explicit PixelField(Source source) : source_(std::move(source)) {}
     Source source_;
 };
-
-/// An output pixel is undefined when more than this share of its weight comes from pixels that were filled (interface page).
-inline constexpr double largest_filled_share = 0.01;
 
 /// Interpolates a map at the pixels of a strip of another grid and frame (interpolate_pixels).
 void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip, std::span<double> out);

@@ -15,12 +15,6 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t block = 4096;
-constexpr double weight_from_filled_allowed = 0.01;
-
-/// What lies above is aliased by the pixels beyond recovery (common practice).
-int trusted_lmax(const HealpixGrid& grid, int lmax) {
-    return std::min(lmax, 5 * grid.nside() / 2);
-}
 
 /// Calls work(index of the output pixel, stencil on the input) for a range of output pixels.
 template <typename Work>
@@ -47,22 +41,19 @@ double weighted_mean(std::span<const double> values, const HealpixGrid::Stencil&
     return weight > 0 ? sum / weight : undefined_pixel;
 }
 
-void undefine_near_filled(std::span<const double> original, const HealpixGrid& from_grid, Frame from,
-                          const HealpixGrid& to_grid, Frame to, std::span<double> out) {
-    for_each_stencil(from_grid, from, to_grid, to, 0, to_grid.npix(),
-                     [&](std::size_t i, const HealpixGrid::Stencil& stencil) {
-                         double filled = 0;
-                         for (std::size_t k = 0; k < 4; ++k)
-                             if (!is_defined(original[static_cast<std::size_t>(stencil.pixels[k])]))
-                                 filled += stencil.weights[k];
-                         if (filled > weight_from_filled_allowed) out[i] = undefined_pixel;
-                     });
+void undefine_near_filled(const SkyMap& filled, const HealpixGrid& to_grid, Frame to_frame, std::span<double> out) {
+    std::vector<double> share(out.size());
+    interpolate_pixels(filled, to_grid, to_frame, 0, share);
+    for (std::size_t i = 0; i < out.size(); ++i)
+        if (share[i] > largest_filled_share) out[i] = undefined_pixel;
 }
 
-std::vector<double> filled_copy(const HealpixGrid& grid, std::span<const double> values) {
-    std::vector<double> out(values.begin(), values.end());
-    fill_undefined(grid, out);
-    return out;
+// Returns 1 where a value is undefined; nothing where none is.
+std::vector<double> mark_undefined(std::span<const double> values) {
+    if (count_undefined(values) == 0) return {};
+    std::vector<double> filled(values.size());
+    for (std::size_t i = 0; i < values.size(); ++i) filled[i] = is_defined(values[i]) ? 0.0 : 1.0;
+    return filled;
 }
 
 double mean_over_children(std::span<const double> values, std::span<const double> weights,
@@ -126,71 +117,65 @@ std::vector<double> degrade(const HealpixGrid& grid, std::span<const double> val
     return out;
 }
 
-RegriddedMap harmonic_regrid(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame, int lmax,
-                             double tolerance) {
-    RegriddedMap out{{to_grid, to_frame, map.unit, {}}, {}};
-    out.report.lmax = trusted_lmax(map.grid, lmax);
-    out.report.filled = count_undefined(map.values);
+int trusted_lmax(const HealpixGrid& grid, int lmax) {
+    return std::min(lmax, std::max(2, 5 * grid.nside() / 2));
+}
+
+AnalysedMap analyse_filled(const SkyMap& map, int lmax, double tolerance) {
+    AnalysedMap out;
+    out.filled = mark_undefined(map.values);
+    std::vector<double> copy;
+    if (!out.filled.empty()) {
+        copy = map.values;
+        fill_undefined(map.grid, copy);
+    }
     ConvergenceOptions options;
     options.tolerance = tolerance;
-    const bool complete = out.report.filled == 0;
-    const std::vector<double> filled = complete ? std::vector<double>() : filled_copy(map.grid, map.values);
-    auto analysed = analyse_converged(map.grid, complete ? map.values : filled, out.report.lmax, options);
-    out.report.convergence = std::move(analysed.report);
-    rotate_alm(analysed.alm, map.frame, to_frame);
-    out.map.values = synthesize(analysed.alm, to_grid);
-    if (!complete) undefine_near_filled(map.values, map.grid, map.frame, to_grid, to_frame, out.map.values);
-    out.report.undefined = count_undefined(out.map.values);
+    ConvergedAlm result =
+        analyse_converged(map.grid, copy.empty() ? map.values : copy, trusted_lmax(map.grid, lmax), options);
+    out.alm = std::move(result.alm);
+    out.convergence = std::move(result.report);
     return out;
 }
 
-RegriddedStokes harmonic_regrid(const StokesMaps& maps, const HealpixGrid& to_grid, Frame to_frame, int lmax,
-                                double tolerance) {
-    RegriddedStokes out{{to_grid, to_frame, maps.unit, {}, {}}, {}};
-    out.report.lmax = trusted_lmax(maps.grid, lmax);
+AnalysedStokes analyse_filled(const StokesMaps& maps, int lmax, double tolerance) {
+    AnalysedStokes out;
     // A pixel that lacks one of Q and U has no polarization.
     std::vector<double> q = maps.q, u = maps.u;
     for (std::size_t i = 0; i < q.size(); ++i)
         if (!is_defined(q[i]) || !is_defined(u[i])) q[i] = u[i] = undefined_pixel;
-    out.report.filled = count_undefined(q);
-    const std::vector<double> original = out.report.filled > 0 ? q : std::vector<double>();
-    fill_undefined(maps.grid, q);
-    fill_undefined(maps.grid, u);
+    out.filled = mark_undefined(q);
+    if (!out.filled.empty()) {
+        fill_undefined(maps.grid, q);
+        fill_undefined(maps.grid, u);
+    }
     ConvergenceOptions options;
     options.tolerance = tolerance;
-    auto analysed = analyse_converged_spin2(maps.grid, q, u, out.report.lmax, options);
-    out.report.convergence = std::move(analysed.report);
-    rotate_alm(analysed.alm, maps.frame, to_frame);
-    auto values = synthesize_spin2(analysed.alm, to_grid);
-    out.maps.q = std::move(values.q);
-    out.maps.u = std::move(values.u);
-    if (!original.empty()) {
-        undefine_near_filled(original, maps.grid, maps.frame, to_grid, to_frame, out.maps.q);
-        undefine_near_filled(original, maps.grid, maps.frame, to_grid, to_frame, out.maps.u);
-    }
-    out.report.undefined = count_undefined(out.maps.q);
+    ConvergedAlmEB result = analyse_converged_spin2(maps.grid, q, u, trusted_lmax(maps.grid, lmax), options);
+    out.alm = std::move(result.alm);
+    out.convergence = std::move(result.report);
     return out;
 }
 
-std::vector<double> fraction_from_undefined(const SkyMap& map, std::span<const double> window,
-                                            const HealpixGrid& to_grid, Frame to_frame) {
-    FOREGLOW_EXPECTS(!window.empty() && window[0] != 0);
-    std::vector<double> mask(map.values.size());
-    for (std::size_t i = 0; i < mask.size(); ++i)
-        mask[i] = is_defined(map.values[i]) ? 0.0 : 1.0;
-    const int lmax = trusted_lmax(map.grid, static_cast<int>(window.size()) - 1);
-    ConvergenceOptions once;
-    once.tolerance = 0;
-    once.max_iterations = 1;
-    Alm alm = analyse_converged(map.grid, mask, lmax, once).alm;
-    std::vector<double> normalised(window.begin(), window.end());
-    for (double& b : normalised)
-        b /= window[0];
-    multiply_by_l(alm, normalised);
-    rotate_alm(alm, map.frame, to_frame);
-    auto out = synthesize(alm, to_grid);
-    for (double& value : out)
-        value = std::clamp(value, 0.0, 1.0);  // ringing of the mask's edge
+SkyMap harmonic_regrid(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame, int lmax, double tolerance) {
+    AnalysedMap analysed = analyse_filled(map, lmax, tolerance);
+    rotate_alm(analysed.alm, map.frame, to_frame);
+    SkyMap out{to_grid, to_frame, map.unit, synthesize(analysed.alm, to_grid)};
+    if (!analysed.filled.empty())
+        undefine_near_filled({map.grid, map.frame, "", std::move(analysed.filled)}, to_grid, to_frame, out.values);
+    return out;
+}
+
+StokesMaps harmonic_regrid(const StokesMaps& maps, const HealpixGrid& to_grid, Frame to_frame, int lmax,
+                           double tolerance) {
+    AnalysedStokes analysed = analyse_filled(maps, lmax, tolerance);
+    rotate_alm(analysed.alm, maps.frame, to_frame);
+    StokesValues values = synthesize_spin2(analysed.alm, to_grid);
+    StokesMaps out{to_grid, to_frame, maps.unit, std::move(values.q), std::move(values.u)};
+    if (analysed.filled.empty()) return out;
+    const SkyMap filled{maps.grid, maps.frame, "", std::move(analysed.filled)};
+    undefine_near_filled(filled, to_grid, to_frame, out.q);
+    undefine_near_filled(filled, to_grid, to_frame, out.u);
     return out;
 }
 

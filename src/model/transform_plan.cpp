@@ -11,7 +11,9 @@ namespace foreglow {
 namespace {
 
 constexpr double largest_cl_ratio = 1e-4;   // of the error's C_l to the map's (interface page) ...
-constexpr double window_that_counts = 1e-3; // ... where B_l^2 is above this
+constexpr double window_that_counts = 1e-3; // ... where B_l^2 is above this ...
+constexpr double power_that_counts = 1e-14; // ... and the map has more than this of its variance: a coarser template has none
+                                            // above its own lmax, where only rounding and its own transform's error are left
 constexpr int most_refinements = 16;
 
 BeamWindow unit_window(int lmax) {
@@ -21,9 +23,14 @@ BeamWindow unit_window(int lmax) {
 double worst_cl_ratio(const ConvergenceReport& report, std::span<const double> window) {
     const double ratio = report.contraction > 0 ? report.contraction : 0.5;
     const double remaining = ratio < 1 ? ratio / (1 - ratio) : 1.0;
+    const auto power = [&](std::size_t l) {
+        return (2 * static_cast<double>(l) + 1) * report.map_cl[l] * window[l] * window[l];
+    };
+    double total = 0;
+    for (std::size_t l = 2; l < report.map_cl.size(); ++l) total += power(l);
     double worst = 0;
     for (std::size_t l = 2; l < report.map_cl.size(); ++l) {
-        if (window[l] * window[l] <= window_that_counts || !(report.map_cl[l] > 0)) continue;
+        if (window[l] * window[l] <= window_that_counts || !(power(l) > power_that_counts * total)) continue;
         worst = std::max(worst, remaining * remaining * report.correction_cl[l] / report.map_cl[l]);
     }
     return worst;

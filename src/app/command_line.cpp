@@ -2,9 +2,9 @@
 #include "app/command_line.h"
 
 #include <CLI/CLI.hpp>
+#include <algorithm>
 #include <csignal>
 #include <cstdio>
-#include <map>
 #include <new>
 
 #include "base/build_info.h"
@@ -12,6 +12,7 @@
 #include "base/interrupt.h"
 #include "base/parallel.h"
 #include "base/progress.h"
+#include "base/text.h"
 #include "jobs/draw.h"
 #include "jobs/make.h"
 #include "jobs/models.h"
@@ -76,15 +77,27 @@ void add_study_options(CLI::App& command, StudyRequest& request) {
     command.add_option("--truth", study.truth, "false, true or full")->group(alone);
 }
 
+// An option that takes one of a few words.
+template <class Value>
+void add_choice(CLI::App& command, const std::string& name, std::optional<Value>& target,
+                const std::vector<std::pair<std::string, Value>>& choices, const std::string& help) {
+    std::string words;
+    for (const auto& choice : choices) words += (words.empty() ? "" : ", ") + choice.first;
+    const auto choose = [=, &target](const std::string& word) {
+        for (const auto& choice : choices)
+            if (choice.first == to_lower(word)) target = choice.second;
+        if (!target) throw InputError(name + " " + word + ": use one of " + words);
+    };
+    command.add_option_function<std::string>(name, choose, words + "; " + help);
+}
+
 void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>& center, std::string& size) {
     command.add_option("MAP", draw.map, "HEALPix FITS map")->required();
-    const std::map<std::string, Frame> frames{
-        {"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}};
-    command.add_option("--frame", draw.frame, "galactic, icrs or ecliptic, where the file does not say")
-        ->transform(CLI::CheckedTransformer(frames, CLI::ignore_case));
-    const std::map<std::string, Ordering> orderings{{"ring", Ordering::Ring}, {"nested", Ordering::Nested}};
-    command.add_option("--ordering", draw.ordering, "ring or nested, where the file does not say")
-        ->transform(CLI::CheckedTransformer(orderings, CLI::ignore_case));
+    add_choice<Frame>(command, "--frame", draw.frame,
+                      {{"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}},
+                      "where the file does not say");
+    add_choice<Ordering>(command, "--ordering", draw.ordering, {{"ring", Ordering::Ring}, {"nested", Ordering::Nested}},
+                         "where the file does not say");
     command.add_option("--column", draw.column, "number from 1, or name (default: the first)");
     command.add_option("--hdu", draw.hdu, "number of the table (default: the first HEALPix one)");
     command.add_option("--out", draw.output, "picture to write (default: MAP's stem + \".png\" here)");
@@ -180,8 +193,20 @@ int report(const std::string& message, int status) {
     return status;
 }
 
+// A word in the place of a command that is none; CLI11 would only say that one is missing.
+void check_command(CLI::App& app, int argc, char** argv) {
+    if (argc < 2 || argv[1][0] == '-') return;
+    std::vector<std::string> names;
+    for (const CLI::App* command : app.get_subcommands(nullptr)) names.push_back(command->get_name());
+    if (std::find(names.begin(), names.end(), argv[1]) != names.end()) return;
+    const std::string nearest = nearest_word(argv[1], names);
+    throw InputError(std::string("there is no command '") + argv[1] + "'" +
+                     (nearest.empty() ? "" : "; did you mean '" + nearest + "'?") + " (`foreglow --help` lists them)");
+}
+
 int run_guarded(CLI::App& app, int argc, char** argv) {
     try {
+        check_command(app, argc, argv);
         app.parse(argc, argv);
         return 0;
     } catch (const CLI::Success& success) {  // help and version

@@ -40,6 +40,6 @@ int foreglow_make(const char* study, const char* out, int replace, char* message
 }
 
 double foreglow_brightness_ratio(double frequency_hz, double reference_hz, double index, double curvature) {
-    return foreglow::api::brightness_ratio(foreglow::Frequency::from_hz(frequency_hz), foreglow::Frequency::from_hz(reference_hz),
-                                           index, curvature);
+    return foreglow::api::brightness_ratio(foreglow::Frequency::from_hz(frequency_hz),
+                                           foreglow::Frequency::from_hz(reference_hz), index, curvature);
 }

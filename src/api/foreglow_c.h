@@ -17,7 +17,8 @@ const char* foreglow_version(void);
  *  Returns 0 done, 1 the work failed, 2 the request was wrong: the command's exit statuses. */
 int foreglow_make(const char* study, const char* out, int replace, char* message, size_t message_size);
 
-/** Returns T(nu)/T(nu0) = (nu/nu0)^(index + curvature ln(nu/nu0)), brightness temperature in K_RJ; frequencies in Hz, above 0. */
+/** Returns T(nu)/T(nu0) = (nu/nu0)^(index + curvature ln(nu/nu0)), brightness temperature in K_RJ;
+ * frequencies in Hz, above 0. */
 double foreglow_brightness_ratio(double frequency_hz, double reference_hz, double index, double curvature);
 
 #ifdef __cplusplus

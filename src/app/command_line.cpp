@@ -41,33 +41,49 @@ Progress make_progress(const CommonOptions& common) {
 }
 
 void add_common(CLI::App& command, CommonOptions& common) {
-    command.add_option("--threads", common.threads, "how many threads to use (default: all processors)")->check(CLI::Range(1, 1024));
+    command.add_option("--threads", common.threads, "how many threads to use (default: all processors)")
+        ->check(CLI::Range(1, 1024));
     command.add_flag("--quiet", common.quiet, "nothing on standard error but errors");
 }
 
 // Options shared by make and plan.
 void add_study_options(CLI::App& command, StudyRequest& request) {
     StudyOptions& study = request.options;
-    command.add_option("STUDY", request.study, "study file (TOML); `foreglow start` prints one to begin from");
+    command.add_option("STUDY", request.study,
+                       "study file (TOML); `foreglow start` prints one to begin from");
     command.add_option("--out", request.out, "folder to write to (default: STUDY's stem + \"-out\" here)");
-    command.add_option("--set", study.overrides, "key=value, overrides a key of the study (dotted: channel.NAME.beam_fwhm=\"1 deg\")")
-        ->take_all()->expected(1)->allow_extra_args(false);
-    command.add_flag("--replace", request.replace, "write into a folder that is not empty, replacing an earlier run");
-    command.add_option("--realization", request.realization, "make just this one of the study's realizations");
+    command
+        .add_option("--set", study.overrides,
+                    "key=value, overrides a key of the study (dotted: channel.NAME.beam_fwhm=\"1 deg\")")
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false);
+    command.add_flag("--replace", request.replace,
+                     "write into a folder that is not empty, replacing an earlier run");
+    command.add_option("--realization", request.realization,
+                       "make just this one of the study's realizations");
     const char* alone = "Without a study file";
     command.add_option("--model", study.model, "bundled model's name, or a model file")->group(alone);
     command.add_option("--frequency", study.frequencies, "such as \"70 GHz\"; repeat for more channels")
-        ->take_all()->expected(1)->allow_extra_args(false)->group(alone);
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false)
+        ->group(alone);
     command.add_option("--nside", study.nside, "a power of two from 1 to 8192")->group(alone);
     command.add_option("--stokes", study.stokes, "I or IQU")->group(alone);
-    command.add_option("--unit", study.unit, "K_RJ, mK_RJ, uK_RJ, K_CMB, mK_CMB, uK_CMB, MJy/sr or Jy/pixel")->group(alone);
-    command.add_option("--bandwidth", study.bandwidth, "full width of every channel's flat response")->group(alone);
-    command.add_option("--beam-fwhm", study.beam_fwhm, "Gaussian beam of every channel, such as \"40 arcmin\"")->group(alone);
+    command.add_option("--unit", study.unit, "K_RJ, mK_RJ, uK_RJ, K_CMB, mK_CMB, uK_CMB, MJy/sr or Jy/pixel")
+        ->group(alone);
+    command.add_option("--bandwidth", study.bandwidth, "full width of every channel's flat response")
+        ->group(alone);
+    command
+        .add_option("--beam-fwhm", study.beam_fwhm, "Gaussian beam of every channel, such as \"40 arcmin\"")
+        ->group(alone);
     command.add_option("--title", study.title, "title of the study")->group(alone);
     command.add_option("--precision", study.precision, "float32 or float64")->group(alone);
     command.add_option("--frame", study.frame, "galactic, icrs or ecliptic")->group(alone);
     command.add_option("--ordering", study.ordering, "ring or nested")->group(alone);
-    command.add_option("--polarization-convention", study.polarization_convention, "COSMO or IAU")->group(alone);
+    command.add_option("--polarization-convention", study.polarization_convention, "COSMO or IAU")
+        ->group(alone);
     command.add_option("--monopole", study.monopole, "keep or remove")->group(alone);
     command.add_option("--coverage", study.coverage, "FITS map of the pixels to write")->group(alone);
     command.add_option("--lmax", study.lmax, "default 2 nside")->group(alone);
@@ -82,7 +98,8 @@ template <class Value>
 void add_choice(CLI::App& command, const std::string& name, std::optional<Value>& target,
                 const std::vector<std::pair<std::string, Value>>& choices, const std::string& help) {
     std::string words;
-    for (const auto& choice : choices) words += (words.empty() ? "" : ", ") + choice.first;
+    for (const auto& choice : choices)
+        words += (words.empty() ? "" : ", ") + choice.first;
     const auto choose = [=, &target](const std::string& word) {
         for (const auto& choice : choices)
             if (choice.first == to_lower(word)) target = choice.second;
@@ -96,14 +113,17 @@ void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>&
     add_choice<Frame>(command, "--frame", draw.frame,
                       {{"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}},
                       "where the file does not say");
-    add_choice<Ordering>(command, "--ordering", draw.ordering, {{"ring", Ordering::Ring}, {"nested", Ordering::Nested}},
+    add_choice<Ordering>(command, "--ordering", draw.ordering,
+                         {{"ring", Ordering::Ring}, {"nested", Ordering::Nested}},
                          "where the file does not say");
     command.add_option("--column", draw.column, "number from 1, or name (default: the first)");
     command.add_option("--hdu", draw.hdu, "number of the table (default: the first HEALPix one)");
     command.add_option("--out", draw.output, "picture to write (default: MAP's stem + \".png\" here)");
     command.add_option("--title", draw.title, "above the picture");
     command.add_option("--unit", draw.unit, "unit to show, or that of a file that does not say");
-    command.add_option("--center", center, "longitude and latitude of a close-up in degrees, LON,LAT")->delimiter(',')->expected(2);
+    command.add_option("--center", center, "longitude and latitude of a close-up in degrees, LON,LAT")
+        ->delimiter(',')
+        ->expected(2);
     command.add_option("--size", size, "of the close-up, such as \"10 deg\"");
     command.add_option("--scale", draw.scale, "linear, log or signed");
     command.add_option("--low", draw.low, "lower end of the colours, in the unit shown");
@@ -135,16 +155,19 @@ void run_draw_command(Request& request) {
         }
     }
     const DrawResult result = run_draw(request.draw);
-    for (const std::string& notice : result.notices) note(request.common, notice);
+    for (const std::string& notice : result.notices)
+        note(request.common, notice);
     say(result.picture.string() + "\n");
 }
 
 void run_start_command(const Request& request) {
     const StartResult result = run_start(request.start);
-    for (const std::string& notice : result.notices) note(request.common, notice);
+    for (const std::string& notice : result.notices)
+        note(request.common, notice);
     if (!request.start.output) say(result.text);
     if (result.questions > 0)
-        note(request.common, std::to_string(result.questions) + " questions are left open: look for the lines that begin with #?");
+        note(request.common, std::to_string(result.questions) +
+                                 " questions are left open: look for the lines that begin with #?");
 }
 
 void define_commands(CLI::App& app, Request& request) {
@@ -152,7 +175,8 @@ void define_commands(CLI::App& app, Request& request) {
     app.set_version_flag("--version", "foreglow " + version());
     app.failure_message(CLI::FailureMessage::simple);
 
-    CLI::App* make = app.add_subcommand("make", "makes the maps of a study: FITS maps, truth, report and manifest");
+    CLI::App* make =
+        app.add_subcommand("make", "makes the maps of a study: FITS maps, truth, report and manifest");
     add_study_options(*make, request.study);
     make->add_flag("--sha256", request.sha256, "put SHA-256 of the outputs into run.json besides XXH3-128");
     add_common(*make, request.common);
@@ -161,21 +185,25 @@ void define_commands(CLI::App& app, Request& request) {
         say(run_make({make_plan_request(request.study), request.sha256}, progress).text);
     });
 
-    CLI::App* plan = app.add_subcommand("plan", "checks a study without running it: files, memory, disk and time");
+    CLI::App* plan =
+        app.add_subcommand("plan", "checks a study without running it: files, memory, disk and time");
     add_study_options(*plan, request.study);
     add_common(*plan, request.common);
     plan->callback([&request] { say(describe_plan(make_plan(make_plan_request(request.study)))); });
 
-    CLI::App* start = app.add_subcommand("start", "prints a commented study to begin from, or a model for a downloaded map");
+    CLI::App* start = app.add_subcommand(
+        "start", "prints a commented study to begin from, or a model for a downloaded map");
     start->add_option("OUTPUT", request.start.output, "file to write (default: standard output)");
-    start->add_option("--model-for", request.start.model_for, "a survey map: prints a model for it, with what its header leaves open");
+    start->add_option("--model-for", request.start.model_for,
+                      "a survey map: prints a model for it, with what its header leaves open");
     add_common(*start, request.common);
     start->callback([&request] { run_start_command(request); });
 
     CLI::App* models = app.add_subcommand("models", "lists the bundled models, or prints one");
     models->add_option("NAME", request.model_name, "the model to print");
     add_common(*models, request.common);
-    models->callback([&request] { say(request.model_name.empty() ? list_models() : print_model(request.model_name)); });
+    models->callback(
+        [&request] { say(request.model_name.empty() ? list_models() : print_model(request.model_name)); });
 
     CLI::App* draw = app.add_subcommand("draw", "draws a map: all sky, or a close-up");
     add_draw_options(*draw, request.draw, request.draw_center, request.draw_size);
@@ -197,11 +225,13 @@ int report(const std::string& message, int status) {
 void check_command(CLI::App& app, int argc, char** argv) {
     if (argc < 2 || argv[1][0] == '-') return;
     std::vector<std::string> names;
-    for (const CLI::App* command : app.get_subcommands(nullptr)) names.push_back(command->get_name());
+    for (const CLI::App* command : app.get_subcommands(nullptr))
+        names.push_back(command->get_name());
     if (std::find(names.begin(), names.end(), argv[1]) != names.end()) return;
     const std::string nearest = nearest_word(argv[1], names);
     throw InputError(std::string("there is no command '") + argv[1] + "'" +
-                     (nearest.empty() ? "" : "; did you mean '" + nearest + "'?") + " (`foreglow --help` lists them)");
+                     (nearest.empty() ? "" : "; did you mean '" + nearest + "'?") +
+                     " (`foreglow --help` lists them)");
 }
 
 int run_guarded(CLI::App& app, int argc, char** argv) {

@@ -6,18 +6,22 @@
 
 namespace foreglow {
 
-/// Carries one sentence that says what is wrong, where, and what to do; the program's exit status depends on its kind.
+/// Carries one sentence that says what is wrong, where, and what to do; the program's exit status depends on
+/// its kind.
 class Error : public std::runtime_error {
   public:
-    Error(const std::string& message, int exit_status) : std::runtime_error(message), exit_status_(exit_status) {}
-    /// Returns the exit status that the command ends with: 1 the work failed, 2 the request was wrong, 128 + n a signal.
+    Error(const std::string& message, int exit_status)
+        : std::runtime_error(message), exit_status_(exit_status) {}
+    /// Returns the exit status that the command ends with: 1 the work failed, 2 the request was wrong, 128 +
+    /// n a signal.
     [[nodiscard]] int exit_status() const noexcept { return exit_status_; }
 
   private:
     int exit_status_;
 };
 
-/// Reports a wrong request: a key, a unit or frame left open, an input that does not exist, an output that does. Exit 2.
+/// Reports a wrong request: a key, a unit or frame left open, an input that does not exist, an output that
+/// does. Exit 2.
 class InputError : public Error {
   public:
     explicit InputError(const std::string& message) : Error(message, 2) {}

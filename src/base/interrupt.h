@@ -3,7 +3,8 @@
 
 namespace foreglow {
 
-/// Asks the process to note SIGINT and SIGTERM instead of dying, so that half-written files can be removed first.
+/// Asks the process to note SIGINT and SIGTERM instead of dying, so that half-written files can be removed
+/// first.
 void catch_interrupts();
 
 /// Throws when a caught signal has arrived; long loops call it between steps.

@@ -32,7 +32,8 @@ void parallel_for_blocks(std::int64_t count, std::int64_t block,
                          const std::function<void(std::int64_t, std::int64_t)>& work) {
     FOREGLOW_EXPECTS(count >= 0 && block >= 1);
     const std::int64_t blocks = (count + block - 1) / block;
-    // Blocks before the first failed one are still done: one of them may fail as well, and then it is the first.
+    // Blocks before the first failed one are still done: one of them may fail as well, and then it is the
+    // first.
     std::atomic<std::int64_t> failed_block{std::numeric_limits<std::int64_t>::max()};
     std::mutex guard;
     std::exception_ptr failure;
@@ -60,7 +61,8 @@ double parallel_sum(std::int64_t count, std::int64_t block,
         sums[static_cast<std::size_t>(begin / block)] = partial(begin, end);
     });
     double total = 0;
-    for (const double sum : sums) total += sum;
+    for (const double sum : sums)
+        total += sum;
     return total;
 }
 

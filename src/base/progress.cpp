@@ -50,7 +50,8 @@ void Progress::begin(const std::string& phase, std::int64_t total) {
 
 void Progress::step(std::int64_t done) {
     constexpr auto interval = std::chrono::milliseconds(100);
-    if (style_ == Style::Terminal && (Clock::now() - last_draw_ >= interval || done == total_)) draw_live(done);
+    if (style_ == Style::Terminal && (Clock::now() - last_draw_ >= interval || done == total_))
+        draw_live(done);
 }
 
 void Progress::end() {

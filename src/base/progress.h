@@ -8,7 +8,8 @@
 
 namespace foreglow {
 
-/// Tells a person on standard error how the work goes: one live line on a terminal, plain lines in a log, nothing when quiet.
+/// Tells a person on standard error how the work goes: one live line on a terminal, plain lines in a log,
+/// nothing when quiet.
 class Progress {
   public:
     enum class Style { Quiet, Log, Terminal };

@@ -13,19 +13,22 @@ namespace foreglow {
 namespace {
 
 using UnitScale = std::pair<std::string_view, double>;
-constexpr std::array<UnitScale, 5> frequency_units{{{"Hz", 1.0}, {"kHz", 1e3}, {"MHz", 1e6}, {"GHz", 1e9}, {"THz", 1e12}}};
+constexpr std::array<UnitScale, 5> frequency_units{
+    {{"Hz", 1.0}, {"kHz", 1e3}, {"MHz", 1e6}, {"GHz", 1e9}, {"THz", 1e12}}};
 constexpr double degree = 3.141592653589793238462643383279502884 / 180.0;
 constexpr std::array<UnitScale, 4> angle_units{
     {{"deg", degree}, {"arcmin", degree / 60.0}, {"arcsec", degree / 3600.0}, {"rad", 1.0}}};
 
 template <std::size_t N>
-double scale_of(const std::array<UnitScale, N>& units, const NumberWithUnit& quantity, const std::string& example) {
+double scale_of(const std::array<UnitScale, N>& units, const NumberWithUnit& quantity,
+                const std::string& example) {
     std::string list;
     for (const auto& [name, scale] : units) {
         if (name == quantity.unit) return scale;
         list += (list.empty() ? "" : ", ") + std::string(name);
     }
-    if (quantity.unit.empty()) throw InputError("has no unit: write it as \"" + example + "\" (" + list + ")");
+    if (quantity.unit.empty())
+        throw InputError("has no unit: write it as \"" + example + "\" (" + list + ")");
     throw InputError("has the unknown unit '" + quantity.unit + "': use one of " + list);
 }
 
@@ -59,7 +62,8 @@ Angle parse_angle(std::string_view text) {
 std::string to_text(Frequency frequency) {
     const double hz = frequency.hz();
     for (auto unit = frequency_units.rbegin(); unit != frequency_units.rend(); ++unit)
-        if (hz >= 0.99999999 * unit->second) return format_number(hz / unit->second, 9) + " " + std::string(unit->first);
+        if (hz >= 0.99999999 * unit->second)
+            return format_number(hz / unit->second, 9) + " " + std::string(unit->first);
     return format_number(hz, 9) + " Hz";
 }
 

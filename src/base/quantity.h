@@ -39,7 +39,8 @@ class Angle {
     double rad_ = 0;
 };
 
-/// Splits "30 GHz" into a finite number and its unit ("" where none is written); the blank between them is optional.
+/// Splits "30 GHz" into a finite number and its unit ("" where none is written); the blank between them is
+/// optional.
 /// @throws InputError with a message to be put behind the name of the key
 struct NumberWithUnit {
     double value = 0;

@@ -13,14 +13,18 @@ struct RandomKey {
     std::uint32_t field = 0;
 };
 
-/// Returns four 32-bit words of Philox4x32-10 (Salmon et al. 2011, "Parallel random numbers: as easy as 1, 2, 3").
+/// Returns four 32-bit words of Philox4x32-10 (Salmon et al. 2011, "Parallel random numbers: as easy as 1, 2,
+/// 3").
 ///
 /// The Philox key is the seed; the counter is (a, b, field, realization).
-[[nodiscard]] std::array<std::uint32_t, 4> random_words(const RandomKey& key, std::uint32_t a, std::uint32_t b);
+[[nodiscard]] std::array<std::uint32_t, 4> random_words(const RandomKey& key, std::uint32_t a,
+                                                        std::uint32_t b);
 
-/// Returns two independent standard normal deviates for a counter such as (l, m) or (pixel's low word, high word).
+/// Returns two independent standard normal deviates for a counter such as (l, m) or (pixel's low word, high
+/// word).
 ///
-/// Box-Muller on two 64-bit uniforms in (0, 1]: exact in the tails down to 2^-64 (8.6 sigma and beyond have the right odds).
+/// Box-Muller on two 64-bit uniforms in (0, 1]: exact in the tails down to 2^-64 (8.6 sigma and beyond have
+/// the right odds).
 /// @return deviates with mean 0 and variance 1, [2]
 [[nodiscard]] std::array<double, 2> normal_pair(const RandomKey& key, std::uint32_t a, std::uint32_t b);
 

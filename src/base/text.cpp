@@ -86,7 +86,8 @@ std::string format_bytes(std::uint64_t bytes) {
     constexpr std::array<const char*, 6> names{"B", "KiB", "MiB", "GiB", "TiB", "PiB"};
     double value = static_cast<double>(bytes);
     std::size_t step = 0;
-    while (value >= (step == 0 ? 1024 : 1023.95) && step + 1 < names.size()) {  // 1023.95 would be written as 1024.0
+    while (value >= (step == 0 ? 1024 : 1023.95) &&
+           step + 1 < names.size()) {  // 1023.95 would be written as 1024.0
         value /= 1024;
         ++step;
     }
@@ -100,16 +101,25 @@ std::uint64_t parse_bytes(std::string_view text) {
         std::string_view name;
         double bytes;
     };
-    constexpr std::array<Scale, 9> scales{{{"B", 1.0}, {"kB", 1e3}, {"MB", 1e6}, {"GB", 1e9}, {"TB", 1e12},
-        {"KiB", 1024.0}, {"MiB", 1048576.0}, {"GiB", 1073741824.0}, {"TiB", 1099511627776.0}}};
+    constexpr std::array<Scale, 9> scales{{{"B", 1.0},
+                                           {"kB", 1e3},
+                                           {"MB", 1e6},
+                                           {"GB", 1e9},
+                                           {"TB", 1e12},
+                                           {"KiB", 1024.0},
+                                           {"MiB", 1048576.0},
+                                           {"GiB", 1073741824.0},
+                                           {"TiB", 1099511627776.0}}};
     const NumberWithUnit quantity = parse_number_with_unit(text);
     for (const Scale& scale : scales) {
         if (scale.name != quantity.unit) continue;
         const double bytes = quantity.value * scale.bytes;
-        if (!(bytes >= 1 && bytes < 1e18)) throw InputError("must be a size above zero, but is '" + std::string(text) + "'");
+        if (!(bytes >= 1 && bytes < 1e18))
+            throw InputError("must be a size above zero, but is '" + std::string(text) + "'");
         return static_cast<std::uint64_t>(bytes);
     }
-    throw InputError("needs a unit of memory such as \"8 GiB\" or \"500 MB\", but is '" + std::string(text) + "'");
+    throw InputError("needs a unit of memory such as \"8 GiB\" or \"500 MB\", but is '" + std::string(text) +
+                     "'");
 }
 
 }  // namespace foreglow

@@ -18,7 +18,8 @@ namespace foreglow {
 /// Splits at each separator; empty pieces are kept, so n separators give n + 1 pieces.
 [[nodiscard]] std::vector<std::string> split(std::string_view text, char separator);
 
-/// Returns the candidate nearest to a word by Levenshtein distance, or "" when none is near enough to be a slip of the pen.
+/// Returns the candidate nearest to a word by Levenshtein distance, or "" when none is near enough to be a
+/// slip of the pen.
 [[nodiscard]] std::string nearest_word(std::string_view word, std::span<const std::string> candidates);
 
 /// Writes a number with at most `digits` significant digits and no needless zeros: 0.1, 1e-05, 30.

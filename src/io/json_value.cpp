@@ -22,11 +22,13 @@ Json to_library(const JsonValue& value) {
                 return std::isfinite(held) ? Json(held) : Json(nullptr);
             } else if constexpr (std::is_same_v<Held, JsonValue::Array>) {
                 Json array = Json::array();
-                for (const JsonValue& one : held) array.push_back(to_library(one));
+                for (const JsonValue& one : held)
+                    array.push_back(to_library(one));
                 return array;
             } else if constexpr (std::is_same_v<Held, JsonValue::Object>) {
                 Json object = Json::object();
-                for (const auto& [key, one] : held) object[key] = to_library(one);
+                for (const auto& [key, one] : held)
+                    object[key] = to_library(one);
                 return object;
             } else {
                 return held;
@@ -37,22 +39,30 @@ Json to_library(const JsonValue& value) {
 
 JsonValue from_library(const Json& json) {
     switch (json.type()) {
-        case Json::value_t::boolean: return json.get<bool>();
-        case Json::value_t::number_integer: return json.get<std::int64_t>();
-        case Json::value_t::number_unsigned: return json.get<std::uint64_t>();
-        case Json::value_t::number_float: return json.get<double>();
-        case Json::value_t::string: return json.get<std::string>();
+        case Json::value_t::boolean:
+            return json.get<bool>();
+        case Json::value_t::number_integer:
+            return json.get<std::int64_t>();
+        case Json::value_t::number_unsigned:
+            return json.get<std::uint64_t>();
+        case Json::value_t::number_float:
+            return json.get<double>();
+        case Json::value_t::string:
+            return json.get<std::string>();
         case Json::value_t::array: {
             JsonValue::Array array;
-            for (const Json& one : json) array.push_back(from_library(one));
+            for (const Json& one : json)
+                array.push_back(from_library(one));
             return array;
         }
         case Json::value_t::object: {
             JsonValue::Object object;
-            for (const auto& [key, one] : json.items()) object.emplace_back(key, from_library(one));
+            for (const auto& [key, one] : json.items())
+                object.emplace_back(key, from_library(one));
             return object;
         }
-        default: return {};
+        default:
+            return {};
     }
 }
 

@@ -18,14 +18,17 @@ void warn_about_result(const Plan& plan, const MakeResult& result, Progress& pro
     for (std::size_t c = 0; c < plan.channels.size(); ++c) {
         const ChannelOutcome& outcome = result.channels[c];
         if (outcome.accuracy > 1.001 * plan.study.accuracy + 0x1p-24)
-            progress.warn("channel " + plan.channels[c].name + " reached an accuracy of " + format_number(outcome.accuracy, 2) +
-                          ", not the " + format_number(plan.study.accuracy, 2) +
+            progress.warn("channel " + plan.channels[c].name + " reached an accuracy of " +
+                          format_number(outcome.accuracy, 2) + ", not the " +
+                          format_number(plan.study.accuracy, 2) +
                           " asked for: lower `lmax`, raise `nside`, or ask for less");
     }
     if (result.has_harmonic && !result.harmonic.converged)
-        progress.warn("the transforms did not converge to what was asked for; the template has structure finer than lmax " +
-                      std::to_string(plan.study.lmax) + " that pixels of nside " + std::to_string(plan.study.nside) +
-                      " cannot tell from larger scales");
+        progress.warn(
+            "the transforms did not converge to what was asked for; the template has structure finer than "
+            "lmax " +
+            std::to_string(plan.study.lmax) + " that pixels of nside " + std::to_string(plan.study.nside) +
+            " cannot tell from larger scales");
 }
 
 // A sky that is positive everywhere gets negative pixels when sharp structure is cut off at lmax.
@@ -34,7 +37,8 @@ void warn_about_ringing(const Plan& plan, const SkyModel& sky, const MakeResult&
     bool positive = true;
     for (const RingStrip& strip : cut_into_strips(sky.grid, std::int64_t{1} << 22)) {
         const SkyStrip values = make_sky_strip(sky, strip, false);
-        positive = positive && std::none_of(values.intensity.begin(), values.intensity.end(), [](double v) { return v < 0; });
+        positive = positive && std::none_of(values.intensity.begin(), values.intensity.end(),
+                                            [](double v) { return v < 0; });
     }
     if (!positive) return;
     for (std::size_t c = 0; c < plan.channels.size(); ++c) {
@@ -42,17 +46,20 @@ void warn_about_ringing(const Plan& plan, const SkyModel& sky, const MakeResult&
         if (outcome.per_pixel || outcome.i.negative == 0) continue;
         progress.warn("channel " + plan.channels[c].name + ": " + std::to_string(outcome.i.negative) +
                       " pixels of I became negative, down to " + format_number(outcome.i.lowest, 3) + " " +
-                      to_text(plan.study.unit) + ", though the template is positive: its structure is sharper than lmax " +
+                      to_text(plan.study.unit) +
+                      ", though the template is positive: its structure is sharper than lmax " +
                       std::to_string(plan.study.lmax) + " can hold");
     }
 }
 
 std::string summarize(const Plan& plan, const MakeResult& result) {
     double worst = 0;
-    for (const ChannelOutcome& outcome : result.channels) worst = std::max(worst, outcome.accuracy);
-    std::string text = std::to_string(plan.channels.size()) + " channels, nside " + std::to_string(plan.study.nside) + ", " +
-                       (plan.study.polarized ? "I Q U" : "I") + ", " + to_text(plan.study.unit) + ", " +
-                       to_text(plan.study.frame) + "; accuracy reached " + format_number(worst, 2) + "\n";
+    for (const ChannelOutcome& outcome : result.channels)
+        worst = std::max(worst, outcome.accuracy);
+    std::string text = std::to_string(plan.channels.size()) + " channels, nside " +
+                       std::to_string(plan.study.nside) + ", " + (plan.study.polarized ? "I Q U" : "I") +
+                       ", " + to_text(plan.study.unit) + ", " + to_text(plan.study.frame) +
+                       "; accuracy reached " + format_number(worst, 2) + "\n";
     text += "report    " + (plan.out / "report.html").string() + "\n";
     text += "maps      " + (plan.out / "maps").string() + "\n";
     if (plan.study.truth != TruthLevel::None) text += "truth     " + (plan.out / "truth").string() + "\n";
@@ -65,9 +72,11 @@ std::string summarize(const Plan& plan, const MakeResult& result) {
 MakeSummary run_make(MakeOptions options, Progress& progress) {
     const bool replace = options.plan.replace;
     const Plan plan = make_plan(std::move(options.plan));
-    for (const std::string& warning : plan.warnings) progress.warn(warning);
+    for (const std::string& warning : plan.warnings)
+        progress.warn(warning);
     progress.begin("loading the sky");
-    const SkyModel sky = load_sky(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized, progress);
+    const SkyModel sky =
+        load_sky(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized, progress);
     progress.end();
     OutputFolder folder(plan.out, replace);
     MakeResult result;

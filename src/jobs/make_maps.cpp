@@ -15,9 +15,9 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
-constexpr std::size_t group_size = 128;       // files open at once stay well below the usual limit of 1024
+constexpr std::size_t group_size = 128;  // files open at once stay well below the usual limit of 1024
 constexpr std::size_t most_previews = 3;
-constexpr double single_rounding = 0x1p-24;   // largest relative error of a float32
+constexpr double single_rounding = 0x1p-24;  // largest relative error of a float32
 
 std::string map_name(const Plan& plan, std::size_t channel, int realization) {
     return "maps/" + map_stem(plan, plan.channels[channel].name, realization) + ".fits";
@@ -35,8 +35,9 @@ bool has_preview(const Plan& plan, std::size_t channel) {
 
 std::unique_ptr<PreviewSampler> make_sampler(const Plan& plan, std::size_t channel) {
     if (!has_preview(plan, channel)) return nullptr;
-    return std::make_unique<PreviewSampler>(HealpixGrid(plan.study.nside), plan.study.frame, to_text(plan.study.unit),
-                                            plan.study.polarized ? 3 : 1, plan.channels[channel].name);
+    return std::make_unique<PreviewSampler>(HealpixGrid(plan.study.nside), plan.study.frame,
+                                            to_text(plan.study.unit), plan.study.polarized ? 3 : 1,
+                                            plan.channels[channel].name);
 }
 
 /// One channel's file of one realization, open.
@@ -48,13 +49,13 @@ struct OpenMap {
     double mean = 0;                          ///< to be subtracted from I
 };
 
-OpenMap open_map(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel, int realization,
-                 MakeResult& result) {
+OpenMap open_map(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel,
+                 int realization, MakeResult& result) {
     OpenMap map;
     map.channel = channel;
     const std::string name = map_name(plan, channel, realization);
-    const FitsMapLayout layout =
-        make_channel_layout(plan, sky, plan.channels[channel], realization, result.channels[channel].accuracy);
+    const FitsMapLayout layout = make_channel_layout(plan, sky, plan.channels[channel], realization,
+                                                     result.channels[channel].accuracy);
     map.file = std::make_unique<MapFile>(folder.prepare(name), layout, plan.study.polarized);
     result.outputs.push_back(name);
     map.counts = realization == plan.realizations.front();
@@ -64,11 +65,14 @@ OpenMap open_map(const Plan& plan, const SkyModel& sky, OutputFolder& folder, st
 }
 
 // Subtracts the mean, counts, samples, writes.
-void deliver(OpenMap& map, std::int64_t first_pixel, std::span<const std::span<double>> columns, StokesStatistics& statistics) {
+void deliver(OpenMap& map, std::int64_t first_pixel, std::span<const std::span<double>> columns,
+             StokesStatistics& statistics) {
     if (map.mean != 0)
-        for (double& value : columns[0]) value -= map.mean;
+        for (double& value : columns[0])
+            value -= map.mean;
     if (map.counts)
-        for (std::size_t c = 0; c < columns.size(); ++c) statistics[c].add(columns[c]);
+        for (std::size_t c = 0; c < columns.size(); ++c)
+            statistics[c].add(columns[c]);
     if (map.sampler) map.sampler->sample(first_pixel, columns);
     map.file->write(first_pixel, columns);
 }
@@ -80,8 +84,9 @@ void merge(ChannelOutcome& outcome, const StokesStatistics& statistics) {
 }
 
 void finish_all(std::vector<OpenMap>& maps, MakeResult& result) {
-    parallel_for_blocks(static_cast<std::int64_t>(maps.size()), 1,
-                        [&](std::int64_t begin, std::int64_t) { maps[static_cast<std::size_t>(begin)].file->finish(); });
+    parallel_for_blocks(static_cast<std::int64_t>(maps.size()), 1, [&](std::int64_t begin, std::int64_t) {
+        maps[static_cast<std::size_t>(begin)].file->finish();
+    });
     for (OpenMap& map : maps)
         if (map.sampler) result.previews.push_back(map.sampler->take());
 }
@@ -98,7 +103,8 @@ class PixelMaps {
             outcome.accuracy = route_.error_of(k) + rounding_of(plan_.study);
         }
         if (plan_.study.remove_monopole) measure_means(result);
-        progress.begin("writing maps made pixel by pixel", static_cast<std::int64_t>(channels_.size() * plan_.realizations.size()));
+        progress.begin("writing maps made pixel by pixel",
+                       static_cast<std::int64_t>(channels_.size() * plan_.realizations.size()));
         std::int64_t done = 0;
         for (const int realization : plan_.realizations)
             for (std::size_t first = 0; first < channels_.size(); first += group_size) {
@@ -112,33 +118,40 @@ class PixelMaps {
   private:
     [[nodiscard]] PixelRoute make_route() const {
         std::vector<BandSum> bands;
-        for (const std::size_t c : channels_) bands.push_back(plan_.channels[c].band);
-        // Ten times below what was asked for, and never worse than what float32 keeps: one more term costs next to nothing.
+        for (const std::size_t c : channels_)
+            bands.push_back(plan_.channels[c].band);
+        // Ten times below what was asked for, and never worse than what float32 keeps: one more term costs
+        // next to nothing.
         const double tolerance = std::clamp(0.1 * plan_.study.accuracy, 1e-11, 5e-8);
         return {sky_, bands, plan_.study.polarized, tolerance};
     }
 
-    // Calls work(channel's place, piece, columns, statistics of the piece) for all channels of a group and all pieces, strip by strip.
+    // Calls work(channel's place, piece, columns, statistics of the piece) for all channels of a group and
+    // all pieces, strip by strip.
     template <class Work, class AfterStrip>
-    void for_each_piece(std::size_t first, std::size_t count, const Work& work, const AfterStrip& after_strip) const {
+    void for_each_piece(std::size_t first, std::size_t count, const Work& work,
+                        const AfterStrip& after_strip) const {
         const std::size_t stokes = plan_.study.polarized ? 3 : 1;
         for (const RingStrip& strip : cut_into_strips(sky_.grid, strip_pixels)) {
             check_interrupt();
             const SkyStrip values = make_sky_strip(sky_, strip, plan_.study.polarized);
             const auto pieces = cut_into_pieces(sky_.grid, strip);
             std::vector<StokesStatistics> statistics(count * pieces.size());
-            parallel_for_blocks(static_cast<std::int64_t>(statistics.size()), 1, [&](std::int64_t task, std::int64_t) {
-                const auto t = static_cast<std::size_t>(task);
-                const std::size_t k = first + t / pieces.size();
-                const MapPiece& piece = pieces[t % pieces.size()];
-                std::vector<double> buffer(stokes * piece.size());
-                std::array<std::span<double>, 3> columns;
-                for (std::size_t s = 0; s < stokes; ++s) columns[s] = std::span(buffer).subspan(s * piece.size(), piece.size());
-                const std::span<const std::span<double>> view(columns.data(), stokes);
-                route_.make_pixels(values, k, piece.begin, piece.end, view);
-                work(k - first, piece, view, statistics[t]);
-            });
-            for (std::size_t t = 0; t < statistics.size(); ++t) after_strip(t / pieces.size(), statistics[t]);
+            parallel_for_blocks(
+                static_cast<std::int64_t>(statistics.size()), 1, [&](std::int64_t task, std::int64_t) {
+                    const auto t = static_cast<std::size_t>(task);
+                    const std::size_t k = first + t / pieces.size();
+                    const MapPiece& piece = pieces[t % pieces.size()];
+                    std::vector<double> buffer(stokes * piece.size());
+                    std::array<std::span<double>, 3> columns;
+                    for (std::size_t s = 0; s < stokes; ++s)
+                        columns[s] = std::span(buffer).subspan(s * piece.size(), piece.size());
+                    const std::span<const std::span<double>> view(columns.data(), stokes);
+                    route_.make_pixels(values, k, piece.begin, piece.end, view);
+                    work(k - first, piece, view, statistics[t]);
+                });
+            for (std::size_t t = 0; t < statistics.size(); ++t)
+                after_strip(t / pieces.size(), statistics[t]);
         }
     }
 
@@ -146,22 +159,22 @@ class PixelMaps {
         std::vector<MapStatistics> means(channels_.size());
         for_each_piece(
             0, channels_.size(),
-            [](std::size_t, const MapPiece&, std::span<const std::span<double>> columns, StokesStatistics& statistics) {
-                statistics[0].add(columns[0]);
-            },
+            [](std::size_t, const MapPiece&, std::span<const std::span<double>> columns,
+               StokesStatistics& statistics) { statistics[0].add(columns[0]); },
             [&](std::size_t k, const StokesStatistics& statistics) { means[k].merge(statistics[0]); });
-        for (std::size_t k = 0; k < channels_.size(); ++k) result.channels[channels_[k]].mean_removed = means[k].mean();
+        for (std::size_t k = 0; k < channels_.size(); ++k)
+            result.channels[channels_[k]].mean_removed = means[k].mean();
     }
 
-    void write_group(std::size_t first, std::size_t count, int realization, OutputFolder& folder, MakeResult& result) const {
+    void write_group(std::size_t first, std::size_t count, int realization, OutputFolder& folder,
+                     MakeResult& result) const {
         std::vector<OpenMap> maps;
         for (std::size_t k = first; k < first + count; ++k)
             maps.push_back(open_map(plan_, sky_, folder, channels_[k], realization, result));
         for_each_piece(
             first, count,
-            [&](std::size_t k, const MapPiece& piece, std::span<const std::span<double>> columns, StokesStatistics& statistics) {
-                deliver(maps[k], piece.first_pixel, columns, statistics);
-            },
+            [&](std::size_t k, const MapPiece& piece, std::span<const std::span<double>> columns,
+                StokesStatistics& statistics) { deliver(maps[k], piece.first_pixel, columns, statistics); },
             [&](std::size_t k, const StokesStatistics& statistics) {
                 if (maps[k].counts) merge(result.channels[maps[k].channel], statistics);
             });
@@ -181,13 +194,15 @@ class HarmonicMaps {
 
     void write(OutputFolder& folder, Progress& progress, MakeResult& result) const {
         std::vector<Channel> chosen;
-        for (const std::size_t c : channels_) chosen.push_back(plan_.channels[c]);
+        for (const std::size_t c : channels_)
+            chosen.push_back(plan_.channels[c]);
         HarmonicOptions options;
         options.polarized = plan_.study.polarized;
         options.lmax = plan_.study.lmax;
         options.accuracy = plan_.study.accuracy;
         options.frame = plan_.study.frame;
-        if (plan_.study.pixel_window) options.pixel_window = read_pixel_window(plan_.study.nside, plan_.study.lmax);
+        if (plan_.study.pixel_window)
+            options.pixel_window = read_pixel_window(plan_.study.nside, plan_.study.lmax);
         const HarmonicRoute route(sky_, std::move(chosen), options, progress);
         result.harmonic = route.report();
         result.has_harmonic = true;
@@ -202,7 +217,8 @@ class HarmonicMaps {
     }
 
   private:
-    void write_channel(ChannelMaps maps, std::size_t channel, OutputFolder& folder, MakeResult& result) const {
+    void write_channel(ChannelMaps maps, std::size_t channel, OutputFolder& folder,
+                       MakeResult& result) const {
         const RingStrip whole{0, sky_.grid.ring_count(), false};
         const auto pieces = cut_into_pieces(sky_.grid, whole);
         if (plan_.study.remove_monopole) {
@@ -211,25 +227,28 @@ class HarmonicMaps {
             result.channels[channel].mean_removed = all.mean();
         }
         std::vector<OpenMap> open;
-        for (const int realization : plan_.realizations) open.push_back(open_map(plan_, sky_, folder, channel, realization, result));
+        for (const int realization : plan_.realizations)
+            open.push_back(open_map(plan_, sky_, folder, channel, realization, result));
         for (OpenMap& map : open) {
             std::vector<StokesStatistics> statistics(pieces.size());
-            parallel_for_blocks(static_cast<std::int64_t>(pieces.size()), 1, [&](std::int64_t task, std::int64_t) {
-                const auto t = static_cast<std::size_t>(task);
-                const MapPiece& piece = pieces[t];
-                std::array<std::vector<double>, 3> copies;  // delivery changes signs and means
-                std::array<std::span<double>, 3> columns;
-                const std::array<const std::vector<double>*, 3> sources{&maps.i, &maps.q, &maps.u};
-                const std::size_t stokes = maps.q.empty() ? 1 : 3;
-                for (std::size_t s = 0; s < stokes; ++s) {
-                    const auto from = sources[s]->begin() + piece.first_pixel;
-                    copies[s].assign(from, from + static_cast<std::ptrdiff_t>(piece.size()));
-                    columns[s] = copies[s];
-                }
-                deliver(map, piece.first_pixel, {columns.data(), stokes}, statistics[t]);
-            });
+            parallel_for_blocks(
+                static_cast<std::int64_t>(pieces.size()), 1, [&](std::int64_t task, std::int64_t) {
+                    const auto t = static_cast<std::size_t>(task);
+                    const MapPiece& piece = pieces[t];
+                    std::array<std::vector<double>, 3> copies;  // delivery changes signs and means
+                    std::array<std::span<double>, 3> columns;
+                    const std::array<const std::vector<double>*, 3> sources{&maps.i, &maps.q, &maps.u};
+                    const std::size_t stokes = maps.q.empty() ? 1 : 3;
+                    for (std::size_t s = 0; s < stokes; ++s) {
+                        const auto from = sources[s]->begin() + piece.first_pixel;
+                        copies[s].assign(from, from + static_cast<std::ptrdiff_t>(piece.size()));
+                        columns[s] = copies[s];
+                    }
+                    deliver(map, piece.first_pixel, {columns.data(), stokes}, statistics[t]);
+                });
             if (map.counts)
-                for (const StokesStatistics& one : statistics) merge(result.channels[channel], one);
+                for (const StokesStatistics& one : statistics)
+                    merge(result.channels[channel], one);
         }
         finish_all(open, result);
     }
@@ -241,11 +260,13 @@ class HarmonicMaps {
 
 }  // namespace
 
-void write_channel_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress, MakeResult& result) {
+void write_channel_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
+                        MakeResult& result) {
     result.channels.resize(plan.channels.size());
     result.labels = sky.labels;
     std::vector<std::size_t> per_pixel, harmonic;
-    for (std::size_t c = 0; c < plan.channels.size(); ++c) (plan.per_pixel[c] ? per_pixel : harmonic).push_back(c);
+    for (std::size_t c = 0; c < plan.channels.size(); ++c)
+        (plan.per_pixel[c] ? per_pixel : harmonic).push_back(c);
     if (!per_pixel.empty()) PixelMaps(plan, sky, std::move(per_pixel)).write(folder, progress, result);
     if (!harmonic.empty()) HarmonicMaps(plan, sky, std::move(harmonic)).write(folder, progress, result);
     std::sort(result.outputs.begin(), result.outputs.end());

@@ -17,16 +17,16 @@ namespace foreglow {
 
 /// What became of one channel.
 struct ChannelOutcome {
-    double accuracy = 0;            ///< reached; see the study's `accuracy`
+    double accuracy = 0;  ///< reached; see the study's `accuracy`
     bool per_pixel = false;
-    MapStatistics i, q, u;          ///< of the first realization's map, in the study's unit
-    double mean_removed = 0;        ///< with monopole = "remove"
+    MapStatistics i, q, u;    ///< of the first realization's map, in the study's unit
+    double mean_removed = 0;  ///< with monopole = "remove"
 };
 
 /// A map thinned out for a picture: the pixel at the centre of each pixel of a coarser grid.
 struct Preview {
     std::string channel;
-    std::vector<SkyMap> columns;    ///< I or I, Q, U, in the study's unit and frame, COSMO
+    std::vector<SkyMap> columns;  ///< I or I, Q, U, in the study's unit and frame, COSMO
 };
 
 struct MakeResult {
@@ -34,14 +34,17 @@ struct MakeResult {
     std::vector<Preview> previews;         ///< of a few channels
     HarmonicReport harmonic;               ///< of the channels with beams
     bool has_harmonic = false;
-    std::vector<std::string> outputs;      ///< names within the output folder, in order
-    std::vector<std::string> labels;       ///< the sky's own cautions
+    std::vector<std::string> outputs;  ///< names within the output folder, in order
+    std::vector<std::string> labels;   ///< the sky's own cautions
 };
 
 /// Makes and writes the maps of all channels.
-void write_channel_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress, MakeResult& result);
+void write_channel_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
+                        MakeResult& result);
 
-/// Writes amplitude, tangent index and curvature at the reference frequency before beams and, for "full", each channel's sky.
-void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress, MakeResult& result);
+/// Writes amplitude, tangent index and curvature at the reference frequency before beams and, for "full",
+/// each channel's sky.
+void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
+                      MakeResult& result);
 
 }  // namespace foreglow

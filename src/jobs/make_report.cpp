@@ -16,10 +16,14 @@ constexpr int picture_width = 800;
 
 std::string unit_sentence(const BrightnessUnit& unit) {
     switch (unit.kind) {
-        case BrightnessUnit::Kind::RayleighJeans: return "Rayleigh-Jeans brightness temperature";
-        case BrightnessUnit::Kind::Thermodynamic: return "CMB temperature difference, linearised at T_CMB = 2.7255 K";
-        case BrightnessUnit::Kind::MegajanskyPerSteradian: return "specific intensity";
-        case BrightnessUnit::Kind::JanskyPerPixel: return "flux density of one pixel";
+        case BrightnessUnit::Kind::RayleighJeans:
+            return "Rayleigh-Jeans brightness temperature";
+        case BrightnessUnit::Kind::Thermodynamic:
+            return "CMB temperature difference, linearised at T_CMB = 2.7255 K";
+        case BrightnessUnit::Kind::MegajanskyPerSteradian:
+            return "specific intensity";
+        case BrightnessUnit::Kind::JanskyPerPixel:
+            return "flux density of one pixel";
     }
     return "";
 }
@@ -27,26 +31,33 @@ std::string unit_sentence(const BrightnessUnit& unit) {
 void add_facts(const Plan& plan, const SkyModel& sky, ReportContent& page) {
     const StudySpec& study = plan.study;
     page.facts.push_back({"Model", plan.model.name, plan.model.title});
-    page.facts.push_back({"Reference frequency", to_text(sky.reference), "where amplitude, index and curvature hold"});
+    page.facts.push_back(
+        {"Reference frequency", to_text(sky.reference), "where amplitude, index and curvature hold"});
     page.facts.push_back({"Grid", "nside " + std::to_string(study.nside),
                           (study.ordering == Ordering::Ring ? "RING order" : "NESTED order") +
                               std::string(plan.coverage ? ", partial sky" : ", full sky")});
     page.facts.push_back({"Channels", std::to_string(plan.channels.size()), ""});
     if (sky.beam_fwhm)
-        page.facts.push_back({"Template's own beam", to_text(*sky.beam_fwhm), "there is no structure below it"});
+        page.facts.push_back(
+            {"Template's own beam", to_text(*sky.beam_fwhm), "there is no structure below it"});
     page.conventions.push_back({"Unit", to_text(study.unit), unit_sentence(study.unit)});
-    page.conventions.push_back({"Frame", to_text(study.frame), std::string("COORDSYS = ") + coordsys_letter(study.frame)});
+    page.conventions.push_back(
+        {"Frame", to_text(study.frame), std::string("COORDSYS = ") + coordsys_letter(study.frame)});
     if (study.polarized)
-        page.conventions.push_back({"Sign of U", study.convention == PolarizationConvention::Cosmo ? "COSMO" : "IAU",
+        page.conventions.push_back({"Sign of U",
+                                    study.convention == PolarizationConvention::Cosmo ? "COSMO" : "IAU",
                                     "written as POLCCONV; pictures on this page are in COSMO"});
-    page.conventions.push_back({"Index", "T ~ nu^beta", "of brightness temperature; the flux index is alpha = beta + 2"});
-    page.conventions.push_back({"Curvature", "T ~ (nu/nu0)^(beta + c ln(nu/nu0))", "beta is the local index at nu0"});
+    page.conventions.push_back(
+        {"Index", "T ~ nu^beta", "of brightness temperature; the flux index is alpha = beta + 2"});
+    page.conventions.push_back(
+        {"Curvature", "T ~ (nu/nu0)^(beta + c ln(nu/nu0))", "beta is the local index at nu0"});
 }
 
 void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& page) {
     for (const Preview& preview : result.previews) {
         const auto draw = [&](const SkyMap& map, const std::string& quantity, ScaleKind scale) {
-            if (std::none_of(map.values.begin(), map.values.end(), [](double v) { return is_defined(v); })) return;
+            if (std::none_of(map.values.begin(), map.values.end(), [](double v) { return is_defined(v); }))
+                return;
             PictureOptions options;
             options.title = preview.channel + ": " + quantity;
             options.quantity = quantity;
@@ -57,8 +68,8 @@ void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& pag
             figure.png = picture.png;
             figure.width = picture.width;
             figure.height = picture.height;
-            figure.caption = quantity + " of channel " + preview.channel + ", " + to_text(plan.study.unit) + ", " +
-                             to_text(plan.study.frame) + " frame; longitude grows to the left.";
+            figure.caption = quantity + " of channel " + preview.channel + ", " + to_text(plan.study.unit) +
+                             ", " + to_text(plan.study.frame) + " frame; longitude grows to the left.";
             figure.alternative = "All-sky map of " + quantity + " in channel " + preview.channel;
             page.figures.push_back(std::move(figure));
         };
@@ -67,7 +78,8 @@ void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& pag
         draw(i, "I", positive ? ScaleKind::Log : ScaleKind::Signed);
         if (preview.columns.size() < 3) continue;
         SkyMap p = i;
-        for (std::size_t n = 0; n < p.values.size(); ++n) p.values[n] = std::hypot(preview.columns[1].values[n], preview.columns[2].values[n]);
+        for (std::size_t n = 0; n < p.values.size(); ++n)
+            p.values[n] = std::hypot(preview.columns[1].values[n], preview.columns[2].values[n]);
         draw(p, "P", ScaleKind::Log);
         if (&preview == &result.previews.front()) {
             draw(preview.columns[1], "Q", ScaleKind::Signed);
@@ -87,7 +99,8 @@ void add_chart(const Plan& plan, const MakeResult& result, ReportContent& page) 
     i.label = "I";
     p.label = "P";
     std::vector<std::size_t> order(plan.channels.size());
-    for (std::size_t c = 0; c < order.size(); ++c) order[c] = c;
+    for (std::size_t c = 0; c < order.size(); ++c)
+        order[c] = c;
     std::stable_sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) {
         return plan.channels[a].reference < plan.channels[b].reference;
     });
@@ -103,53 +116,66 @@ void add_chart(const Plan& plan, const MakeResult& result, ReportContent& page) 
     if (order.size() > 50) i.has_marks = p.has_marks = false;
     chart.chart.series.push_back(std::move(i));
     if (plan.study.polarized) chart.chart.series.push_back(std::move(p));
-    chart.caption = "rms over the defined pixels, monopole included, after band and beam; bars show the bandwidths.";
+    chart.caption =
+        "rms over the defined pixels, monopole included, after band and beam; bars show the bandwidths.";
     page.charts.push_back(std::move(chart));
 }
 
 void add_accuracy(const Plan& plan, const MakeResult& result, ReportContent& page) {
     double worst = 0;
-    for (const ChannelOutcome& outcome : result.channels) worst = std::max(worst, outcome.accuracy);
+    for (const ChannelOutcome& outcome : result.channels)
+        worst = std::max(worst, outcome.accuracy);
     page.accuracy.push_back({"Asked for", format_number(plan.study.accuracy, 2), "`accuracy` in the study"});
-    page.accuracy.push_back({"Reached by the worst channel", format_number(worst, 2),
-                             "rms(error)/rms(map) against the exact law; maps without beams: relative error of every pixel"});
+    page.accuracy.push_back(
+        {"Reached by the worst channel", format_number(worst, 2),
+         "rms(error)/rms(map) against the exact law; maps without beams: relative error of every pixel"});
     if (!result.has_harmonic) return;
-    page.accuracy.push_back({"Component maps", std::to_string(result.harmonic.intensity_components),
-                             plan.study.polarized ? "for I, and " + std::to_string(result.harmonic.polarized_components) + " for Q, U" : "for I"});
-    page.accuracy.push_back({"Left by the transforms", format_number(result.harmonic.transform_error, 2),
-                             "ring weights and " + std::to_string(result.harmonic.iterations) + " refinements"});
+    page.accuracy.push_back(
+        {"Component maps", std::to_string(result.harmonic.intensity_components),
+         plan.study.polarized
+             ? "for I, and " + std::to_string(result.harmonic.polarized_components) + " for Q, U"
+             : "for I"});
+    page.accuracy.push_back(
+        {"Left by the transforms", format_number(result.harmonic.transform_error, 2),
+         "ring weights and " + std::to_string(result.harmonic.iterations) + " refinements"});
 }
 
 void add_tables(const Plan& plan, const MakeResult& result, ReportContent& page) {
     ReportTable table;
     table.title = "Channels";
     table.note = "Numbers of the maps as written, in " + to_text(plan.study.unit) + ".";
-    table.header = {"Channel", "Frequency", "Bandwidth", "Beam FWHM", "Mean I", "Lowest I", "Highest I", "Undefined", "Accuracy"};
+    table.header = {"Channel",  "Frequency", "Bandwidth", "Beam FWHM", "Mean I",
+                    "Lowest I", "Highest I", "Undefined", "Accuracy"};
     constexpr std::size_t most_rows = 60;
     for (std::size_t c = 0; c < std::min(plan.channels.size(), most_rows); ++c) {
         const Channel& channel = plan.channels[c];
         const ChannelOutcome& outcome = result.channels[c];
-        table.rows.push_back({channel.name, to_text(channel.reference), channel.bandwidth ? to_text(*channel.bandwidth) : "single",
-                              channel.beam_fwhm ? to_text(*channel.beam_fwhm) : (channel.beam ? "tabulated" : "none"),
-                              format_number(outcome.i.mean(), 4), format_number(outcome.i.lowest, 4),
-                              format_number(outcome.i.highest, 4), std::to_string(outcome.i.undefined),
-                              format_number(outcome.accuracy, 2)});
+        table.rows.push_back(
+            {channel.name, to_text(channel.reference),
+             channel.bandwidth ? to_text(*channel.bandwidth) : "single",
+             channel.beam_fwhm ? to_text(*channel.beam_fwhm) : (channel.beam ? "tabulated" : "none"),
+             format_number(outcome.i.mean(), 4), format_number(outcome.i.lowest, 4),
+             format_number(outcome.i.highest, 4), std::to_string(outcome.i.undefined),
+             format_number(outcome.accuracy, 2)});
     }
     if (plan.channels.size() > most_rows)
-        table.note += " The first " + std::to_string(most_rows) + " of " + std::to_string(plan.channels.size()) +
-                      " channels; run.json has all.";
+        table.note += " The first " + std::to_string(most_rows) + " of " +
+                      std::to_string(plan.channels.size()) + " channels; run.json has all.";
     page.tables.push_back(std::move(table));
 }
 
 }  // namespace
 
-std::string make_report(const Plan& plan, const SkyModel& sky, const MakeResult& result, const Progress& progress) {
+std::string make_report(const Plan& plan, const SkyModel& sky, const MakeResult& result,
+                        const Progress& progress) {
     const StudySpec& study = plan.study;
     ReportContent page;
     page.title = study.title.empty() ? "Foreglow: simulated sky maps" : study.title;
-    page.subtitles.push_back(std::to_string(plan.channels.size()) + " channels, nside " + std::to_string(study.nside) + ", " +
-                             (study.polarized ? "I, Q, U" : "I") + ", " + to_text(study.unit));
-    for (const std::string& label : sky.labels) page.subtitles.push_back(label);
+    page.subtitles.push_back(std::to_string(plan.channels.size()) + " channels, nside " +
+                             std::to_string(study.nside) + ", " + (study.polarized ? "I, Q, U" : "I") + ", " +
+                             to_text(study.unit));
+    for (const std::string& label : sky.labels)
+        page.subtitles.push_back(label);
     page.warnings = progress.warnings();
     add_facts(plan, sky, page);
     add_pictures(plan, result, page);

@@ -10,6 +10,7 @@
 namespace foreglow {
 
 /// Makes the page that a person looks at first.
-[[nodiscard]] std::string make_report(const Plan& plan, const SkyModel& sky, const MakeResult& result, const Progress& progress);
+[[nodiscard]] std::string make_report(const Plan& plan, const SkyModel& sky, const MakeResult& result,
+                                      const Progress& progress);
 
 }  // namespace foreglow

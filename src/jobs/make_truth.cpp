@@ -18,12 +18,14 @@ namespace {
 constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
 constexpr double truth_tolerance = 1e-9;
 
-void write_pieces(const HealpixGrid& grid, const RingStrip& strip, MapFile& file, std::span<std::vector<double>* const> columns) {
+void write_pieces(const HealpixGrid& grid, const RingStrip& strip, MapFile& file,
+                  std::span<std::vector<double>* const> columns) {
     const auto pieces = cut_into_pieces(grid, strip);
     parallel_for_blocks(static_cast<std::int64_t>(pieces.size()), 1, [&](std::int64_t task, std::int64_t) {
         const MapPiece& piece = pieces[static_cast<std::size_t>(task)];
         std::array<std::span<double>, 3> parts;
-        for (std::size_t c = 0; c < columns.size(); ++c) parts[c] = std::span(*columns[c]).subspan(piece.begin, piece.size());
+        for (std::size_t c = 0; c < columns.size(); ++c)
+            parts[c] = std::span(*columns[c]).subspan(piece.begin, piece.size());
         file.write(piece.first_pixel, {parts.data(), columns.size()});
     });
 }
@@ -33,7 +35,8 @@ void carry_to_reference(const SkyModel& sky, SkyStrip& values) {
     const double log_ratio = log_frequency_ratio(sky.reference, sky.polarization->reference);
     if (log_ratio == 0) return;
     for (std::size_t i = 0; i < values.q.size(); ++i) {
-        const double factor = std::exp(log_brightness_ratio({values.polarized_index[i], values.polarized_curvature[i]}, log_ratio));
+        const double factor = std::exp(
+            log_brightness_ratio({values.polarized_index[i], values.polarized_curvature[i]}, log_ratio));
         values.q[i] *= factor;
         values.u[i] *= factor;
     }
@@ -52,8 +55,10 @@ class TruthFiles {
           own_index_(polarized_ && sky.polarization->index.has_value()),
           amplitude_(folder.prepare("truth/amplitude.fits"),
                      make_truth_layout(plan, sky, amplitude_columns(polarized_), polarized_), polarized_),
-          index_(folder.prepare("truth/index.fits"), make_truth_layout(plan, sky, index_columns(), false), false),
-          curvature_(folder.prepare("truth/curvature.fits"), make_truth_layout(plan, sky, {{"CURVATURE", ""}}, false), false) {
+          index_(folder.prepare("truth/index.fits"), make_truth_layout(plan, sky, index_columns(), false),
+                 false),
+          curvature_(folder.prepare("truth/curvature.fits"),
+                     make_truth_layout(plan, sky, {{"CURVATURE", ""}}, false), false) {
         for (const char* name : {"truth/amplitude.fits", "truth/index.fits", "truth/curvature.fits"})
             result.outputs.emplace_back(name);
     }
@@ -83,7 +88,8 @@ class TruthFiles {
     MapFile amplitude_, index_, curvature_;
 };
 
-// The whole sky in another frame: brightness through its a_lm (bilinear interpolation would smooth it), indices by interpolation.
+// The whole sky in another frame: brightness through its a_lm (bilinear interpolation would smooth it),
+// indices by interpolation.
 SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
     const StudySpec& study = plan.study;
     const RingStrip whole{0, sky.grid.ring_count(), false};
@@ -96,19 +102,20 @@ SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
     turn_plain(values.index);
     turn_plain(values.curvature);
     turn_plain(values.polarized_index);
-    values.intensity = harmonic_regrid(SkyMap{sky.grid, sky.frame, "K_RJ", std::move(values.intensity)}, sky.grid, study.frame,
-                                       study.lmax)
+    values.intensity = harmonic_regrid(SkyMap{sky.grid, sky.frame, "K_RJ", std::move(values.intensity)},
+                                       sky.grid, study.frame, study.lmax)
                            .values;
     if (!study.polarized) return values;
-    StokesMaps stokes = harmonic_regrid(StokesMaps{sky.grid, sky.frame, "K_RJ", std::move(values.q), std::move(values.u)},
-                                             sky.grid, study.frame, study.lmax);
+    StokesMaps stokes =
+        harmonic_regrid(StokesMaps{sky.grid, sky.frame, "K_RJ", std::move(values.q), std::move(values.u)},
+                        sky.grid, study.frame, study.lmax);
     values.q = std::move(stokes.q);
     values.u = std::move(stokes.u);
     return values;
 }
 
-MapFile open_channel_sky(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel, double accuracy,
-                         MakeResult& result) {
+MapFile open_channel_sky(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel,
+                         double accuracy, MakeResult& result) {
     const std::string name = "truth/channels/" + plan.channels[channel].name + ".fits";
     result.outputs.push_back(name);
     const FitsMapLayout layout =
@@ -119,7 +126,8 @@ MapFile open_channel_sky(const Plan& plan, const SkyModel& sky, OutputFolder& fo
 // Each channel's sky before its beam, pixel by pixel.
 void write_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder, MakeResult& result) {
     std::vector<BandSum> bands;
-    for (const Channel& channel : plan.channels) bands.push_back(channel.band);
+    for (const Channel& channel : plan.channels)
+        bands.push_back(channel.band);
     const PixelRoute route(sky, bands, plan.study.polarized, truth_tolerance);
     const std::size_t stokes = plan.study.polarized ? 3 : 1;
     for (std::size_t c = 0; c < bands.size(); ++c) {
@@ -143,10 +151,11 @@ void write_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& fo
 }
 
 // As above in another frame: through a_lm, as the maps themselves.
-void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
-                                MakeResult& result) {
+void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder,
+                                Progress& progress, MakeResult& result) {
     std::vector<Channel> channels = plan.channels;
-    for (Channel& channel : channels) channel.beam.reset();
+    for (Channel& channel : channels)
+        channel.beam.reset();
     HarmonicOptions options;
     options.polarized = plan.study.polarized;
     options.lmax = plan.study.lmax;
@@ -158,14 +167,16 @@ void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFol
         MapFile file = open_channel_sky(plan, sky, folder, c, route.error_of(c), result);
         ChannelMaps maps = route.make_channel(c);
         const std::array<std::vector<double>*, 3> columns{&maps.i, &maps.q, &maps.u};
-        write_pieces(sky.grid, {0, sky.grid.ring_count(), false}, file, {columns.data(), plan.study.polarized ? 3U : 1U});
+        write_pieces(sky.grid, {0, sky.grid.ring_count(), false}, file,
+                     {columns.data(), plan.study.polarized ? 3U : 1U});
         file.finish();
     }
 }
 
 }  // namespace
 
-void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress, MakeResult& result) {
+void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
+                      MakeResult& result) {
     if (plan.study.truth == TruthLevel::None) return;
     progress.begin("writing truth maps");
     TruthFiles files(plan, sky, folder, result);

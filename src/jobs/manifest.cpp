@@ -75,9 +75,10 @@ JsonValue describe_outputs(const Plan& plan, const MakeResult& result, bool with
     });
     JsonValue::Array array;
     for (std::size_t i = 0; i < sums.size(); ++i) {
-        JsonValue::Object file{{"name", result.outputs[i]},
-                               {"bytes", static_cast<std::int64_t>(fs::file_size(plan.out / result.outputs[i]))},
-                               {"xxh3_128", sums[i].xxh3}};
+        JsonValue::Object file{
+            {"name", result.outputs[i]},
+            {"bytes", static_cast<std::int64_t>(fs::file_size(plan.out / result.outputs[i]))},
+            {"xxh3_128", sums[i].xxh3}};
         if (with_sha256) file.emplace_back("sha256", sums[i].sha256);
         array.push_back(std::move(file));
     }
@@ -115,17 +116,21 @@ JsonValue describe_channels(const Plan& plan, const MakeResult& result) {
 template <class List>
 JsonValue texts(const List& list) {
     JsonValue::Array array;
-    for (const std::string& one : list) array.emplace_back(one);
+    for (const std::string& one : list)
+        array.emplace_back(one);
     return array;
 }
 
 JsonValue describe_accuracy(const Plan& plan, const MakeResult& result) {
     double worst = 0;
-    for (const ChannelOutcome& outcome : result.channels) worst = std::max(worst, outcome.accuracy);
+    for (const ChannelOutcome& outcome : result.channels)
+        worst = std::max(worst, outcome.accuracy);
     JsonValue::Object accuracy{{"asked", plan.study.accuracy}, {"reached", worst}};
     if (result.has_harmonic) {
-        accuracy.emplace_back("intensity_components", static_cast<std::int64_t>(result.harmonic.intensity_components));
-        accuracy.emplace_back("polarized_components", static_cast<std::int64_t>(result.harmonic.polarized_components));
+        accuracy.emplace_back("intensity_components",
+                              static_cast<std::int64_t>(result.harmonic.intensity_components));
+        accuracy.emplace_back("polarized_components",
+                              static_cast<std::int64_t>(result.harmonic.polarized_components));
         accuracy.emplace_back("transform_error", result.harmonic.transform_error);
         accuracy.emplace_back("transform_refinements", result.harmonic.iterations);
         accuracy.emplace_back("worst_cl_ratio", result.harmonic.worst_cl_ratio);
@@ -134,48 +139,51 @@ JsonValue describe_accuracy(const Plan& plan, const MakeResult& result) {
 }
 
 JsonValue describe_conventions(const StudySpec& study) {
-    JsonValue::Object conventions{
-        {"unit", to_text(study.unit)},
-        {"frame", to_text(study.frame)},
-        {"ordering", study.ordering == Ordering::Ring ? "RING" : "NESTED"},
-        {"index", "beta: T ~ nu^beta, brightness temperature, local at the reference frequency; flux index alpha = beta + 2"},
-        {"curvature", "c: T ~ (nu/nu0)^(beta + c ln(nu/nu0))"},
-        {"T_CMB_K", 2.7255}};
+    JsonValue::Object conventions{{"unit", to_text(study.unit)},
+                                  {"frame", to_text(study.frame)},
+                                  {"ordering", study.ordering == Ordering::Ring ? "RING" : "NESTED"},
+                                  {"index",
+                                   "beta: T ~ nu^beta, brightness temperature, local at the reference "
+                                   "frequency; flux index alpha = beta + 2"},
+                                  {"curvature", "c: T ~ (nu/nu0)^(beta + c ln(nu/nu0))"},
+                                  {"T_CMB_K", 2.7255}};
     if (study.polarized)
-        conventions.emplace_back("polarization", study.convention == PolarizationConvention::Cosmo ? "COSMO" : "IAU");
+        conventions.emplace_back("polarization",
+                                 study.convention == PolarizationConvention::Cosmo ? "COSMO" : "IAU");
     return conventions;
 }
 
 }  // namespace
 
-std::string make_manifest(const Plan& plan, const MakeResult& result, const Progress& progress, bool with_sha256) {
+std::string make_manifest(const Plan& plan, const MakeResult& result, const Progress& progress,
+                          bool with_sha256) {
     JsonValue::Array phases;
     for (const Progress::Phase& phase : progress.phases())
         phases.push_back(JsonValue::Object{{"phase", phase.name}, {"seconds", phase.seconds}});
     JsonValue::Array realizations;
-    for (const int r : plan.realizations) realizations.emplace_back(r);
-    const JsonValue::Object manifest{
-        {"program", "Foreglow"},
-        {"version", version()},
-        {"build", build_description()},
-        {"title", plan.study.title},
-        {"sky_notes", texts(result.labels)},
-        {"seed", plan.study.seed},
-        {"realizations", std::move(realizations)},
-        {"nside", plan.study.nside},
-        {"lmax", plan.study.lmax},
-        {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
-        {"conventions", describe_conventions(plan.study)},
-        {"accuracy", describe_accuracy(plan, result)},
-        {"channels", describe_channels(plan, result)},
-        {"warnings", texts(progress.warnings())},
-        {"notices", texts(progress.notices())},
-        {"inputs", describe_inputs(plan)},
-        {"outputs", describe_outputs(plan, result, with_sha256)},
-        {"threads", thread_count()},
-        {"timings", std::move(phases)},
-        {"study", without_absolute_paths(plan.study.source)},
-        {"model", without_absolute_paths(plan.model.source)}};
+    for (const int r : plan.realizations)
+        realizations.emplace_back(r);
+    const JsonValue::Object manifest{{"program", "Foreglow"},
+                                     {"version", version()},
+                                     {"build", build_description()},
+                                     {"title", plan.study.title},
+                                     {"sky_notes", texts(result.labels)},
+                                     {"seed", plan.study.seed},
+                                     {"realizations", std::move(realizations)},
+                                     {"nside", plan.study.nside},
+                                     {"lmax", plan.study.lmax},
+                                     {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
+                                     {"conventions", describe_conventions(plan.study)},
+                                     {"accuracy", describe_accuracy(plan, result)},
+                                     {"channels", describe_channels(plan, result)},
+                                     {"warnings", texts(progress.warnings())},
+                                     {"notices", texts(progress.notices())},
+                                     {"inputs", describe_inputs(plan)},
+                                     {"outputs", describe_outputs(plan, result, with_sha256)},
+                                     {"threads", thread_count()},
+                                     {"timings", std::move(phases)},
+                                     {"study", without_absolute_paths(plan.study.source)},
+                                     {"model", without_absolute_paths(plan.model.source)}};
     return write_json(manifest);
 }
 
@@ -188,7 +196,8 @@ std::vector<std::string> list_manifest_outputs(const fs::path& manifest) {
         const JsonValue* outputs = json.find("outputs");
         if (outputs == nullptr || outputs->array() == nullptr) return names;
         for (const JsonValue& file : *outputs->array())
-            if (const JsonValue* name = file.find("name"); name != nullptr && name->text() != nullptr) names.push_back(*name->text());
+            if (const JsonValue* name = file.find("name"); name != nullptr && name->text() != nullptr)
+                names.push_back(*name->text());
     } catch (const Error&) {
         names.clear();  // a manifest that cannot be read tells nothing; the files it meant stay
     }

@@ -10,11 +10,11 @@ namespace foreglow {
 
 /// Makes the complete layout of one channel's map: columns, units, and the cards of the interface page.
 /// @param accuracy  reached
-[[nodiscard]] FitsMapLayout make_channel_layout(const Plan& plan, const SkyModel& sky, const Channel& channel, int realization,
-                                                double accuracy, bool with_beam = true);
+[[nodiscard]] FitsMapLayout make_channel_layout(const Plan& plan, const SkyModel& sky, const Channel& channel,
+                                                int realization, double accuracy, bool with_beam = true);
 
 /// Makes the layout of a truth map with the given columns.
-[[nodiscard]] FitsMapLayout make_truth_layout(const Plan& plan, const SkyModel& sky, std::vector<FitsMapColumnName> columns,
-                                              bool polarized);
+[[nodiscard]] FitsMapLayout make_truth_layout(const Plan& plan, const SkyModel& sky,
+                                              std::vector<FitsMapColumnName> columns, bool polarized);
 
 }  // namespace foreglow

@@ -22,15 +22,17 @@ std::vector<MapPiece> cut_into_pieces(const HealpixGrid& grid, const RingStrip& 
     return pieces;
 }
 
-PreviewSampler::PreviewSampler(const HealpixGrid& grid, Frame frame, const std::string& unit, std::size_t columns,
-                               std::string channel) {
+PreviewSampler::PreviewSampler(const HealpixGrid& grid, Frame frame, const std::string& unit,
+                               std::size_t columns, std::string channel) {
     const HealpixGrid small(std::min(preview_nside, grid.nside()));
     preview_.channel = std::move(channel);
-    SkyMap empty{small, frame, unit, std::vector<double>(static_cast<std::size_t>(small.npix()), undefined_pixel)};
+    SkyMap empty{small, frame, unit,
+                 std::vector<double>(static_cast<std::size_t>(small.npix()), undefined_pixel)};
     preview_.columns.assign(columns, empty);
     for (std::int64_t target = 0; target < small.npix(); ++target)
         places_.push_back({small == grid ? target : grid.pixel_at(small.direction(target)), target});
-    std::sort(places_.begin(), places_.end(), [](const Place& a, const Place& b) { return a.pixel < b.pixel; });
+    std::sort(places_.begin(), places_.end(),
+              [](const Place& a, const Place& b) { return a.pixel < b.pixel; });
 }
 
 void PreviewSampler::sample(std::int64_t first_pixel, std::span<const std::span<double>> columns) {

@@ -17,7 +17,7 @@ namespace foreglow {
 
 /// A piece of a strip that one thread does at a time.
 struct MapPiece {
-    std::int64_t first_pixel = 0;  ///< RING number
+    std::int64_t first_pixel = 0;    ///< RING number
     std::size_t begin = 0, end = 0;  ///< in the strip's buffer
     [[nodiscard]] std::size_t size() const { return end - begin; }
 };
@@ -32,7 +32,8 @@ using StokesStatistics = std::array<MapStatistics, 3>;
 class PreviewSampler {
   public:
     /// @param columns  1 or 3
-    PreviewSampler(const HealpixGrid& grid, Frame frame, const std::string& unit, std::size_t columns, std::string channel);
+    PreviewSampler(const HealpixGrid& grid, Frame frame, const std::string& unit, std::size_t columns,
+                   std::string channel);
     /// Threads may sample disjoint pieces at once.
     void sample(std::int64_t first_pixel, std::span<const std::span<double>> columns);
     [[nodiscard]] Preview take() { return std::move(preview_); }
@@ -42,7 +43,7 @@ class PreviewSampler {
         std::int64_t pixel = 0;   ///< on the map's grid
         std::int64_t target = 0;  ///< on the preview's
     };
-    std::vector<Place> places_;   ///< ascending in pixel
+    std::vector<Place> places_;  ///< ascending in pixel
     Preview preview_;
 };
 

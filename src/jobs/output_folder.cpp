@@ -13,7 +13,8 @@ void check_output_folder(const fs::path& folder, bool replace) {
     std::error_code code;
     if (!fs::exists(folder, code)) return;
     if (!fs::is_directory(folder, code))
-        throw InputError("the output " + folder.string() + " exists and is no folder: give another with --out");
+        throw InputError("the output " + folder.string() +
+                         " exists and is no folder: give another with --out");
     if (!replace && !fs::is_empty(folder, code))
         throw InputError("the output folder " + folder.string() +
                          " exists and is not empty: add --replace, or give another with --out");
@@ -28,7 +29,8 @@ OutputFolder::OutputFolder(fs::path folder, bool replace) : folder_(std::move(fo
 OutputFolder::~OutputFolder() {
     if (kept_) return;
     std::error_code code;
-    for (const fs::path& file : written_) fs::remove(file, code);
+    for (const fs::path& file : written_)
+        fs::remove(file, code);
     for (auto made = made_folders_.rbegin(); made != made_folders_.rend(); ++made)
         if (fs::is_empty(*made, code)) fs::remove(*made, code);
 }
@@ -37,7 +39,8 @@ fs::path OutputFolder::prepare(const std::string& name) {
     const fs::path file = folder_ / name;
     std::vector<fs::path> missing;
     std::error_code code;
-    for (fs::path parent = file.parent_path(); !parent.empty() && !fs::exists(parent, code); parent = parent.parent_path())
+    for (fs::path parent = file.parent_path(); !parent.empty() && !fs::exists(parent, code);
+         parent = parent.parent_path())
         missing.push_back(parent);
     for (auto folder = missing.rbegin(); folder != missing.rend(); ++folder) {
         if (!fs::create_directory(*folder, code) && code)
@@ -59,7 +62,8 @@ void OutputFolder::remove_earlier_run() {
         fs::remove(folder_ / relative, code);
     }
     for (const char* sub : {"truth/channels", "truth", "maps", "patches"})
-        if (fs::is_directory(folder_ / sub, code) && fs::is_empty(folder_ / sub, code)) fs::remove(folder_ / sub, code);
+        if (fs::is_directory(folder_ / sub, code) && fs::is_empty(folder_ / sub, code))
+            fs::remove(folder_ / sub, code);
 }
 
 }  // namespace foreglow

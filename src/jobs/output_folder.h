@@ -11,11 +11,12 @@ namespace foreglow {
 /// @throws InputError with what to do
 void check_output_folder(const std::filesystem::path& folder, bool replace);
 
-/// The folder of a run: it makes subfolders, remembers what was written, and takes all of it back when the run fails.
+/// The folder of a run: it makes subfolders, remembers what was written, and takes all of it back when the
+/// run fails.
 class OutputFolder {
   public:
-    /// Makes the folder; with replace, removes what an earlier run says it left there (its manifest first, so that nothing
-    /// stale is taken for new); other files are left alone.
+    /// Makes the folder; with replace, removes what an earlier run says it left there (its manifest first, so
+    /// that nothing stale is taken for new); other files are left alone.
     /// @throws FileError with the system's reason
     OutputFolder(std::filesystem::path folder, bool replace);
     /// Removes what this run wrote unless keep() was called.

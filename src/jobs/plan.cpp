@@ -54,52 +54,62 @@ std::vector<FitsMapColumnName> map_columns(const StudySpec& study) {
 void list_files(Plan& plan) {
     const StudySpec& study = plan.study;
     const Coverage* coverage = plan.coverage ? &*plan.coverage : nullptr;
-    const std::int64_t map_bytes = fits_map_file_bytes(make_study_layout(study, coverage, map_columns(study), study.polarized));
+    const std::int64_t map_bytes =
+        fits_map_file_bytes(make_study_layout(study, coverage, map_columns(study), study.polarized));
     for (const int r : plan.realizations)
         for (const Channel& channel : plan.channels)
-            plan.files.push_back({"maps/" + map_stem(plan, channel.name, r) + ".fits", describe_channel(channel, study), map_bytes});
+            plan.files.push_back({"maps/" + map_stem(plan, channel.name, r) + ".fits",
+                                  describe_channel(channel, study), map_bytes});
     if (study.truth != TruthLevel::None) {
-        const std::int64_t one = fits_map_file_bytes(make_study_layout(study, coverage, {{"INDEX", ""}}, false));
-        plan.files.push_back({"truth/amplitude.fits", "amplitude at the reference frequency, K_RJ, before beams", map_bytes});
+        const std::int64_t one =
+            fits_map_file_bytes(make_study_layout(study, coverage, {{"INDEX", ""}}, false));
+        plan.files.push_back(
+            {"truth/amplitude.fits", "amplitude at the reference frequency, K_RJ, before beams", map_bytes});
         plan.files.push_back({"truth/index.fits", "tangent index there", one});
         plan.files.push_back({"truth/curvature.fits", "curvature there", one});
         if (study.truth == TruthLevel::Full)
             for (const Channel& channel : plan.channels)
-                plan.files.push_back({"truth/channels/" + channel.name + ".fits", "the channel's sky before its beam", map_bytes});
+                plan.files.push_back({"truth/channels/" + channel.name + ".fits",
+                                      "the channel's sky before its beam", map_bytes});
     }
     plan.files.push_back({"report.html", "what a person looks at first", 0});
     plan.files.push_back({"run.json", "manifest, written last", 0});
-    for (const PlannedFile& file : plan.files) plan.disk_bytes += file.bytes;
+    for (const PlannedFile& file : plan.files)
+        plan.disk_bytes += file.bytes;
 }
 
 void check_room(const Plan& plan) {
     const Resources resources = available_resources(plan.out);
     if (plan.memory_bytes > resources.memory_bytes)
-        throw InputError("the study wants about " + format_bytes(static_cast<std::uint64_t>(plan.memory_bytes)) +
-                         " of memory and " + format_bytes(static_cast<std::uint64_t>(resources.memory_bytes)) +
+        throw InputError("the study wants about " +
+                         format_bytes(static_cast<std::uint64_t>(plan.memory_bytes)) + " of memory and " +
+                         format_bytes(static_cast<std::uint64_t>(resources.memory_bytes)) +
                          " are free: lower `nside` or `lmax`, or leave the beams away");
     if (plan.disk_bytes > resources.disk_bytes)
-        throw InputError("the run would write " + format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)) + " to " +
-                         plan.out.string() + " and " + format_bytes(static_cast<std::uint64_t>(resources.disk_bytes)) +
+        throw InputError("the run would write " + format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)) +
+                         " to " + plan.out.string() + " and " +
+                         format_bytes(static_cast<std::uint64_t>(resources.disk_bytes)) +
                          " are free there: use another folder, fewer channels, or `precision = \"float32\"`");
 }
 
 void add_warnings(Plan& plan) {
     plan.warnings = plan.study.warnings;
     plan.warnings.insert(plan.warnings.end(), plan.model.warnings.begin(), plan.model.warnings.end());
-    const auto& beam = plan.model.sketch ? std::optional<Angle>(Angle::from_degrees(1.0))
-                                         : (plan.model.intensity ? plan.model.intensity->beam_fwhm : std::nullopt);
+    const auto& beam = plan.model.sketch
+                           ? std::optional<Angle>(Angle::from_degrees(1.0))
+                           : (plan.model.intensity ? plan.model.intensity->beam_fwhm : std::nullopt);
     const double pixel = std::sqrt(HealpixGrid(plan.study.nside).pixel_area());
     for (const Channel& channel : plan.channels) {
         if (!channel.beam_fwhm) continue;
         if (channel.beam_fwhm->radians() < 2.5 * pixel)
-            plan.warnings.push_back("channel " + channel.name + ": its beam of " + to_text(*channel.beam_fwhm) +
-                                    " is narrower than 2.5 pixels of nside " + std::to_string(plan.study.nside) +
+            plan.warnings.push_back("channel " + channel.name + ": its beam of " +
+                                    to_text(*channel.beam_fwhm) + " is narrower than 2.5 pixels of nside " +
+                                    std::to_string(plan.study.nside) +
                                     ", so the map does not hold all of it: raise `nside`");
         if (beam && *channel.beam_fwhm < *beam)
-            plan.warnings.push_back("channel " + channel.name + ": its beam of " + to_text(*channel.beam_fwhm) +
-                                    " is finer than the template's " + to_text(*beam) +
-                                    ", so there is no structure between the two");
+            plan.warnings.push_back("channel " + channel.name + ": its beam of " +
+                                    to_text(*channel.beam_fwhm) + " is finer than the template's " +
+                                    to_text(*beam) + ", so there is no structure between the two");
     }
 }
 
@@ -117,7 +127,8 @@ Plan make_plan(PlanRequest request) {
     plan.model = read_study_model(plan.study);
     check_polarization(plan.study, plan.model);
     plan.channels = make_channels(plan.study);
-    plan.model_maps = check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized);
+    plan.model_maps =
+        check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized);
     for (const Channel& channel : plan.channels)
         plan.per_pixel.push_back(is_made_per_pixel(channel, plan.study, plan.model_maps.frame));
     if (plan.study.pixel_window) static_cast<void>(read_pixel_window(plan.study.nside, plan.study.lmax));
@@ -125,8 +136,9 @@ Plan make_plan(PlanRequest request) {
     for (int r = 0; r < plan.study.realizations; ++r)
         if (!request.realization || *request.realization == r) plan.realizations.push_back(r);
     if (plan.realizations.empty())
-        throw InputError("--realization " + std::to_string(*request.realization) + ": the study has realizations 0 to " +
-                         std::to_string(plan.study.realizations - 1) + ": set `realizations` higher, or ask for one of these");
+        throw InputError("--realization " + std::to_string(*request.realization) +
+                         ": the study has realizations 0 to " + std::to_string(plan.study.realizations - 1) +
+                         ": set `realizations` higher, or ask for one of these");
     const std::string stem = plan.study.file.empty() ? "foreglow" : plan.study.file.stem().string();
     plan.out = request.out.value_or(stem + "-out");
     check_output_folder(plan.out, request.replace);
@@ -146,22 +158,29 @@ std::string describe_plan(const Plan& plan) {
     line("model      " + plan.model.name + ": " + plan.model.title);
     line("grid       nside " + std::to_string(study.nside) + ", " + to_text(study.frame) + ", " +
          (study.ordering == Ordering::Ring ? "RING" : "NESTED") +
-         (plan.coverage ? ", partial sky: " + std::to_string(plan.coverage->ring_pixels.size()) + " pixels" : ", full sky"));
+         (plan.coverage ? ", partial sky: " + std::to_string(plan.coverage->ring_pixels.size()) + " pixels"
+                        : ", full sky"));
     line("stokes     " + std::string(study.polarized ? "I, Q, U (" : "I") +
          (study.polarized ? (study.convention == PolarizationConvention::Cosmo ? "COSMO)" : "IAU)") : ""));
-    line("unit       " + to_text(study.unit) + ", " + (study.precision == MapPrecision::Float64 ? "float64" : "float32"));
+    line("unit       " + to_text(study.unit) + ", " +
+         (study.precision == MapPrecision::Float64 ? "float64" : "float32"));
     line("channels   " + std::to_string(plan.channels.size()) + ": " + std::to_string(per_pixel) +
-         " by the law in each pixel, " + std::to_string(static_cast<std::ptrdiff_t>(plan.channels.size()) - per_pixel) +
+         " by the law in each pixel, " +
+         std::to_string(static_cast<std::ptrdiff_t>(plan.channels.size()) - per_pixel) +
          " through a_lm up to l = " + std::to_string(study.lmax));
-    line("accuracy   " + format_number(study.accuracy, 3) + " asked for (rms of the error over rms of the map; in maps without beams of every pixel)");
+    line("accuracy   " + format_number(study.accuracy, 3) +
+         " asked for (rms of the error over rms of the map; in maps without beams of every pixel)");
     line("output     " + plan.out.string() + ": " + std::to_string(plan.files.size()) + " files");
-    line("disk       " + format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)) + " and a few MiB for the report");
+    line("disk       " + format_bytes(static_cast<std::uint64_t>(plan.disk_bytes)) +
+         " and a few MiB for the report");
     line("memory     about " + format_bytes(static_cast<std::uint64_t>(plan.memory_bytes)));
     line("time       about " + format_number(plan.seconds, 2) + " s on two cores");
-    for (const std::string& warning : plan.warnings) line("warning    " + warning);
+    for (const std::string& warning : plan.warnings)
+        line("warning    " + warning);
     line("files");
     for (const PlannedFile& file : plan.files)
-        line("  " + file.name + "  " + (file.bytes > 0 ? format_bytes(static_cast<std::uint64_t>(file.bytes)) + "  " : "") + file.what);
+        line("  " + file.name + "  " +
+             (file.bytes > 0 ? format_bytes(static_cast<std::uint64_t>(file.bytes)) + "  " : "") + file.what);
     return text;
 }
 

@@ -27,14 +27,14 @@ struct Plan {
     StudySpec study;
     ModelSpec model;
     std::vector<Channel> channels;
-    std::vector<bool> per_pixel;          ///< [channels]: no beam, pixel window or rotation stands in the way
-    std::vector<int> realizations;        ///< numbers to be made
-    ModelMaps model_maps;                 ///< what the headers of the model's maps say
+    std::vector<bool> per_pixel;    ///< [channels]: no beam, pixel window or rotation stands in the way
+    std::vector<int> realizations;  ///< numbers to be made
+    ModelMaps model_maps;           ///< what the headers of the model's maps say
     std::optional<Coverage> coverage;
     std::filesystem::path out;
     std::vector<PlannedFile> files;
     std::int64_t disk_bytes = 0, memory_bytes = 0;
-    double seconds = 0;                   ///< rough, from costs measured on two cores
+    double seconds = 0;  ///< rough, from costs measured on two cores
     std::vector<std::string> warnings;
 };
 

@@ -15,7 +15,8 @@ struct Resources {
 };
 [[nodiscard]] Resources available_resources(const std::filesystem::path& folder);
 
-/// Fills in the peak memory and the time that a plan wants, from the sizes of what is held at once and from measured costs.
+/// Fills in the peak memory and the time that a plan wants, from the sizes of what is held at once and from
+/// measured costs.
 void estimate_costs(Plan& plan);
 
 }  // namespace foreglow

@@ -7,9 +7,9 @@ namespace foreglow {
 namespace {
 
 bool has_own_keys(const StudyOptions& o) {
-    return !o.model.empty() || !o.frequencies.empty() || o.title || o.nside || o.stokes || o.unit || o.precision || o.frame ||
-           o.ordering || o.polarization_convention || o.monopole || o.coverage || o.bandwidth || o.beam_fwhm || o.lmax || o.seed ||
-           o.realizations || o.accuracy || o.truth;
+    return !o.model.empty() || !o.frequencies.empty() || o.title || o.nside || o.stokes || o.unit ||
+           o.precision || o.frame || o.ordering || o.polarization_convention || o.monopole || o.coverage ||
+           o.bandwidth || o.beam_fwhm || o.lmax || o.seed || o.realizations || o.accuracy || o.truth;
 }
 
 }  // namespace
@@ -18,8 +18,10 @@ PlanRequest make_plan_request(const StudyRequest& request) {
     PlanRequest plan;
     if (request.study) {
         if (has_own_keys(request.options))
-            throw InputError("a study file and options that stand for one contradict each other: change the file's keys with " +
-                             std::string("--set key=value, such as --set nside=64"));
+            throw InputError(
+                "a study file and options that stand for one contradict each other: change the file's keys "
+                "with " +
+                std::string("--set key=value, such as --set nside=64"));
         plan.study = read_study(*request.study, request.options.overrides);
     } else {
         if (!has_own_keys(request.options))

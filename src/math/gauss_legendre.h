@@ -13,7 +13,8 @@ struct QuadratureRule {
 
 /// Makes the Gauss-Legendre rule with 1 to 256 points, exact for polynomials of degree 2 points - 1.
 ///
-/// Newton iteration on P_n from the asymptotic zeros (Abramowitz & Stegun 1964, 25.4.30). Error of nodes and weights below 4e-16.
+/// Newton iteration on P_n from the asymptotic zeros (Abramowitz & Stegun 1964, 25.4.30). Error of nodes and
+/// weights below 4e-16.
 [[nodiscard]] QuadratureRule make_gauss_legendre(int points);
 
 }  // namespace foreglow

@@ -12,7 +12,8 @@ namespace {
 
 double squared_norm_below(const Matrix& a, std::size_t column, std::size_t first_row) {
     double sum = 0;
-    for (std::size_t i = first_row; i < a.rows; ++i) sum += a(i, column) * a(i, column);
+    for (std::size_t i = first_row; i < a.rows; ++i)
+        sum += a(i, column) * a(i, column);
     return sum;
 }
 
@@ -28,7 +29,8 @@ void bring_largest_column_forward(Matrix& a, std::vector<std::size_t>& order, st
     }
     if (best == k) return;
     std::swap(order[k], order[best]);
-    for (std::size_t i = 0; i < a.rows; ++i) std::swap(a(i, k), a(i, best));
+    for (std::size_t i = 0; i < a.rows; ++i)
+        std::swap(a(i, k), a(i, best));
 }
 
 // Makes column k zero below the diagonal by a reflection that also acts on the later columns and on b.
@@ -37,21 +39,27 @@ void reflect(Matrix& a, std::vector<double>& b, std::size_t k) {
     if (norm == 0) return;
     const double alpha = a(k, k) > 0 ? -norm : norm;
     std::vector<double> v(a.rows - k);
-    for (std::size_t i = k; i < a.rows; ++i) v[i - k] = a(i, k);
+    for (std::size_t i = k; i < a.rows; ++i)
+        v[i - k] = a(i, k);
     v[0] -= alpha;
     double vv = 0;
-    for (const double x : v) vv += x * x;
+    for (const double x : v)
+        vv += x * x;
     if (vv == 0) return;
     for (std::size_t j = k; j < a.columns; ++j) {
         double dot = 0;
-        for (std::size_t i = k; i < a.rows; ++i) dot += v[i - k] * a(i, j);
+        for (std::size_t i = k; i < a.rows; ++i)
+            dot += v[i - k] * a(i, j);
         const double factor = 2 * dot / vv;
-        for (std::size_t i = k; i < a.rows; ++i) a(i, j) -= factor * v[i - k];
+        for (std::size_t i = k; i < a.rows; ++i)
+            a(i, j) -= factor * v[i - k];
     }
     double dot = 0;
-    for (std::size_t i = k; i < a.rows; ++i) dot += v[i - k] * b[i];
+    for (std::size_t i = k; i < a.rows; ++i)
+        dot += v[i - k] * b[i];
     const double factor = 2 * dot / vv;
-    for (std::size_t i = k; i < a.rows; ++i) b[i] -= factor * v[i - k];
+    for (std::size_t i = k; i < a.rows; ++i)
+        b[i] -= factor * v[i - k];
 }
 
 }  // namespace
@@ -70,7 +78,8 @@ std::vector<double> solve_least_squares(Matrix a, std::vector<double> b) {
     std::vector<double> solution(a.columns, 0.0);
     for (std::size_t k = rank; k-- > 0;) {
         double sum = b[k];
-        for (std::size_t j = k + 1; j < rank; ++j) sum -= a(k, j) * solution[order[j]];
+        for (std::size_t j = k + 1; j < rank; ++j)
+            sum -= a(k, j) * solution[order[j]];
         solution[order[k]] = sum / a(k, k);
     }
     return solution;

@@ -8,13 +8,14 @@ namespace foreglow {
 
 /// Returns e^x for |x| < 700 in a form that compilers turn into vector code; relative error below 4e-16.
 ///
-/// x = n ln 2 + r with |r| <= ln 2/2 (Cody & Waite 1980), then the Taylor polynomial of degree 13, whose remainder is below 1e-17.
-/// Every step is exact or rounded alike on every processor, so that results do not depend on the vector width. NaN stays NaN.
+/// x = n ln 2 + r with |r| <= ln 2/2 (Cody & Waite 1980), then the Taylor polynomial of degree 13, whose
+/// remainder is below 1e-17. Every step is exact or rounded alike on every processor, so that results do not
+/// depend on the vector width. NaN stays NaN.
 [[nodiscard]] inline double vector_exp(double x) {
     constexpr double log2_e = 1.44269504088896340736;
-    constexpr double ln2_high = 6.93145751953125e-1;           // 20 bits, so that n ln2_high is exact
+    constexpr double ln2_high = 6.93145751953125e-1;  // 20 bits, so that n ln2_high is exact
     constexpr double ln2_low = 1.42860682030941723212e-6;
-    constexpr double shift = 6755399441055744.0;               // 1.5 * 2^52: adding it rounds to an integer
+    constexpr double shift = 6755399441055744.0;  // 1.5 * 2^52: adding it rounds to an integer
     const double shifted = x * log2_e + shift;
     const double n = shifted - shift;
     const double r = (x - n * ln2_high) - n * ln2_low;

@@ -15,18 +15,19 @@ namespace foreglow {
 /// One channel, its files read: what it does to a spectrum and to a_lm.
 struct Channel {
     std::string name;
-    Frequency reference;                  ///< the FREQ card
-    std::optional<Frequency> bandwidth;   ///< full width of the response; nothing for a single frequency
-    BandSum band;                         ///< in the study's unit
-    std::optional<BeamWindow> beam;       ///< up to the study's lmax
-    std::optional<Angle> beam_fwhm;       ///< where the beam is Gaussian
+    Frequency reference;                 ///< the FREQ card
+    std::optional<Frequency> bandwidth;  ///< full width of the response; nothing for a single frequency
+    BandSum band;                        ///< in the study's unit
+    std::optional<BeamWindow> beam;      ///< up to the study's lmax
+    std::optional<Angle> beam_fwhm;      ///< where the beam is Gaussian
 };
 
 /// Reads responses and beam windows and makes the channels of a study.
 /// @throws InputError or DataError with the place where a file is missing, broken, or shorter than lmax
 [[nodiscard]] std::vector<Channel> make_channels(const StudySpec& study);
 
-/// Tells whether a channel's map can be made pixel by pixel: no beam, no pixel window, no rotation to another frame.
+/// Tells whether a channel's map can be made pixel by pixel: no beam, no pixel window, no rotation to another
+/// frame.
 [[nodiscard]] bool is_made_per_pixel(const Channel& channel, const StudySpec& study, Frame sky_frame);
 
 }  // namespace foreglow

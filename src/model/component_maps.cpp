@@ -13,8 +13,9 @@ constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
 constexpr std::int64_t block = 4096;
 
 // Writes amplitude times the law's factor into a full map.
-void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandLaw& law, std::span<const double> index,
-                std::span<const double> curvature, std::span<const std::span<const double>> amplitudes,
+void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandLaw& law,
+                std::span<const double> index, std::span<const double> curvature,
+                std::span<const std::span<const double>> amplitudes,
                 std::span<std::vector<double>* const> maps) {
     for (const PixelRange& range : pixel_ranges(grid, strip))
         parallel_for_blocks(range.count, block, [&](std::int64_t begin, std::int64_t end) {
@@ -24,13 +25,16 @@ void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandLaw& 
             std::vector<double> factor(n);
             law.evaluate(index.subspan(from, n), curvature.subspan(from, n), factor);
             for (std::size_t a = 0; a < amplitudes.size(); ++a)
-                for (std::size_t i = 0; i < n; ++i) (*maps[a])[to + i] = amplitudes[a][from + i] * factor[i];
+                for (std::size_t i = 0; i < n; ++i)
+                    (*maps[a])[to + i] = amplitudes[a][from + i] * factor[i];
         });
 }
 
-void append_every(std::vector<double>& to, const std::vector<double>& from, const std::vector<std::size_t>& places) {
+void append_every(std::vector<double>& to, const std::vector<double>& from,
+                  const std::vector<std::size_t>& places) {
     if (from.empty()) return;
-    for (const std::size_t place : places) to.push_back(from[place]);
+    for (const std::size_t place : places)
+        to.push_back(from[place]);
 }
 
 }  // namespace
@@ -60,7 +64,8 @@ StokesComponent make_polarized_component(const SkyModel& sky, const BandLaw& law
     for_each_sky_strip(sky, true, [&](const RingStrip& strip, const SkyStrip& values) {
         const std::array<std::span<const double>, 2> amplitudes{values.q, values.u};
         const std::array<std::vector<double>*, 2> targets{&maps.q, &maps.u};
-        scale_into(strip, sky.grid, law, values.polarized_index, values.polarized_curvature, amplitudes, targets);
+        scale_into(strip, sky.grid, law, values.polarized_index, values.polarized_curvature, amplitudes,
+                   targets);
     });
     return maps;
 }

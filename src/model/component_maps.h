@@ -1,9 +1,9 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <array>
 #include <cstdint>
 #include <functional>
-#include <array>
 #include <span>
 #include <vector>
 

@@ -12,7 +12,8 @@
 namespace foreglow {
 namespace {
 
-constexpr double negligible = 1e-3;  // of the window; what lies above that l cannot move a share by a threshold of 1 %
+constexpr double negligible =
+    1e-3;  // of the window; what lies above that l cannot move a share by a threshold of 1 %
 
 double sigma_of(Angle fwhm) {
     return fwhm.radians() / std::sqrt(8 * std::log(2.0));
@@ -27,11 +28,14 @@ int last_useful_l(Angle fwhm) {
 Angle equivalent_fwhm(const BeamWindow& window, const HealpixGrid& grid) {
     const Angle pixel = Angle::from_radians(std::sqrt(grid.pixel_area()));
     std::size_t l = 1;
-    while (l < window.temperature.size() && std::abs(window.temperature[l]) > 0.5 * std::abs(window.temperature[0])) ++l;
+    while (l < window.temperature.size() &&
+           std::abs(window.temperature[l]) > 0.5 * std::abs(window.temperature[0]))
+        ++l;
     if (l == window.temperature.size()) {
         // The window has not fallen to 1/2 by lmax: continue it as a Gaussian.
         const double ell = static_cast<double>(l - 1);
-        const double fall = -std::log(std::min(std::abs(window.temperature[l - 1] / window.temperature[0]), 1.0 - 1e-12));
+        const double fall =
+            -std::log(std::min(std::abs(window.temperature[l - 1] / window.temperature[0]), 1.0 - 1e-12));
         const double sigma = std::sqrt(2 * fall / std::max(ell * (ell + 1), 1.0));
         return std::max(pixel, Angle::from_radians(sigma * std::sqrt(8 * std::log(2.0))));
     }
@@ -40,18 +44,21 @@ Angle equivalent_fwhm(const BeamWindow& window, const HealpixGrid& grid) {
     return std::max(pixel, Angle::from_radians(sigma * std::sqrt(8 * std::log(2.0))));
 }
 
-FilledShare::FilledShare(const HealpixGrid& grid, Frame frame, std::span<const double> values, Angle narrowest)
+FilledShare::FilledShare(const HealpixGrid& grid, Frame frame, std::span<const double> values,
+                         Angle narrowest)
     : grid_(grid), frame_(frame) {
     if (std::all_of(values.begin(), values.end(), is_defined)) return;
     const int wanted = last_useful_l(narrowest);
     int nside = grid.nside();
-    while (2 * nside < wanted && nside < 4 * grid.nside() && nside < HealpixGrid::max_nside) nside *= 2;
+    while (2 * nside < wanted && nside < 4 * grid.nside() && nside < HealpixGrid::max_nside)
+        nside *= 2;
     const HealpixGrid fine(nside);
     std::vector<double> mask(static_cast<std::size_t>(fine.npix()));
     parallel_for_blocks(fine.npix(), 16384, [&](std::int64_t begin, std::int64_t end) {
         for (std::int64_t p = begin; p < end; ++p) {
             const std::int64_t parent = fine == grid ? p : grid.pixel_at(fine.direction(p));
-            mask[static_cast<std::size_t>(p)] = is_defined(values[static_cast<std::size_t>(parent)]) ? 0.0 : 1.0;
+            mask[static_cast<std::size_t>(p)] =
+                is_defined(values[static_cast<std::size_t>(parent)]) ? 0.0 : 1.0;
         }
     });
     alm_ = analyse(fine, mask, std::max(2, std::min(wanted, 2 * nside)));

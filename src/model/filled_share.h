@@ -13,10 +13,12 @@
 
 namespace foreglow {
 
-/// Tells for each pixel which share of a beam's weight falls on pixels that were filled because a survey had no value there.
+/// Tells for each pixel which share of a beam's weight falls on pixels that were filled because a survey had
+/// no value there.
 ///
-/// The map of 0 and 1 is taken to a finer grid first (up to 4 times finer), so that its edges do not ring, and smoothed with a
-/// Gaussian as wide as the beam, at least one pixel. Accurate to about 2e-3, for a threshold of 1 %.
+/// The map of 0 and 1 is taken to a finer grid first (up to 4 times finer), so that its edges do not ring,
+/// and smoothed with a Gaussian as wide as the beam, at least one pixel. Accurate to about 2e-3, for a
+/// threshold of 1 %.
 class FilledShare {
   public:
     /// @param values     [npix]; NaN marks the filled pixels
@@ -33,7 +35,8 @@ class FilledShare {
     std::optional<Alm> alm_;
 };
 
-/// Returns the FWHM of the Gaussian whose window is 1/2 where that of a beam is; at least the side of a pixel.
+/// Returns the FWHM of the Gaussian whose window is 1/2 where that of a beam is; at least the side of a
+/// pixel.
 [[nodiscard]] Angle equivalent_fwhm(const BeamWindow& window, const HealpixGrid& grid);
 
 }  // namespace foreglow

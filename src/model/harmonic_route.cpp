@@ -23,7 +23,8 @@ constexpr double law_tolerance = 1e-9;      // of component maps: far below any 
 
 std::vector<BandSum> bands_of(const std::vector<Channel>& channels) {
     std::vector<BandSum> bands;
-    for (const Channel& channel : channels) bands.push_back(channel.band);
+    for (const Channel& channel : channels)
+        bands.push_back(channel.band);
     return bands;
 }
 
@@ -51,7 +52,8 @@ AlmEB combine(const std::vector<AlmEB>& terms, const Matrix& weights, std::size_
 
 int last_l(std::span<const double> window) {
     std::size_t l = window.size();
-    while (l > 1 && std::abs(window[l - 1]) < negligible_window) --l;
+    while (l > 1 && std::abs(window[l - 1]) < negligible_window)
+        --l;
     return static_cast<int>(l) - 1;
 }
 
@@ -62,11 +64,12 @@ void undefine_where(std::span<const double> share, std::vector<double>& values) 
 
 }  // namespace
 
-HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels, const HarmonicOptions& options,
-                             Progress& progress)
+HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels,
+                             const HarmonicOptions& options, Progress& progress)
     : grid_(sky.grid), sky_frame_(sky.frame), channels_(std::move(channels)), options_(options) {
     FOREGLOW_EXPECTS(!channels_.empty());
-    const double tolerance = options.accuracy / 3;  // basis and transforms share the accuracy, with something in hand
+    const double tolerance =
+        options.accuracy / 3;  // basis and transforms share the accuracy, with something in hand
     progress.begin("choosing component maps");
     make_bases(sky, tolerance);
     progress.end();
@@ -85,13 +88,15 @@ void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
     if (!options_.polarized) return;
     polarized_basis_ = polarization_shares_law(sky)
                            ? intensity_basis_
-                           : make_spectral_basis(bands, sky.polarization->reference, polarized_parameter_range(sky), tolerance);
+                           : make_spectral_basis(bands, sky.polarization->reference,
+                                                 polarized_parameter_range(sky), tolerance);
     report_.polarized_components = polarized_basis_.components.size();
 }
 
 void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress) {
     const auto widest = widest_window(channels_, options_);
-    const TransformPlan plan(grid_, options_.lmax, options_.accuracy / 3, widest.temperature, widest.polarization);
+    const TransformPlan plan(grid_, options_.lmax, options_.accuracy / 3, widest.temperature,
+                             widest.polarization);
     const ParameterRange range = parameter_range(sky);
     const auto total = static_cast<std::int64_t>(report_.intensity_components + report_.polarized_components);
     progress.begin("transforming component maps", total);
@@ -116,7 +121,8 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
         check_interrupt();
         auto maps = make_polarized_component(
             sky, BandLaw(component, sky.polarization->reference, polarized_range, law_tolerance));
-        if (polarized_alms_.empty()) filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
+        if (polarized_alms_.empty())
+            filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
         if (filled_polarization_->any()) {
             fill_undefined(grid_, maps.q);
             fill_undefined(grid_, maps.u);
@@ -128,7 +134,8 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
     progress.end();
 }
 
-// Rotation costs far more than the other steps and commutes with round beams: the few components are turned, not the channels.
+// Rotation costs far more than the other steps and commutes with round beams: the few components are turned,
+// not the channels.
 void HarmonicRoute::turn_components(Progress& progress) {
     if (options_.frame == sky_frame_) return;
     progress.begin("turning component maps to " + to_text(options_.frame));

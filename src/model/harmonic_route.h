@@ -19,9 +19,10 @@ namespace foreglow {
 /// How a harmonic route got its accuracy.
 struct HarmonicReport {
     std::size_t intensity_components = 0, polarized_components = 0;
-    int iterations = 0;                       ///< of each forward transform after the first, weighted one
-    double transform_error = 0;               ///< relative rms, estimated from the last correction, the larger of I and (Q, U)
-    double worst_cl_ratio = 0;                ///< of the error's C_l to the map's, where B_l^2 > 1e-3
+    int iterations = 0;  ///< of each forward transform after the first, weighted one
+    double transform_error =
+        0;  ///< relative rms, estimated from the last correction, the larger of I and (Q, U)
+    double worst_cl_ratio = 0;  ///< of the error's C_l to the map's, where B_l^2 > 1e-3
     bool converged = true;
 
     void add(const TransformState& state);
@@ -32,16 +33,17 @@ struct ChannelMaps {
     std::vector<double> i, q, u;
 };
 
-/// Makes channels with beams (or a pixel window, or in another frame): K component maps are transformed once, and each channel
-/// is a weighted sum of their a_lm times its beam, transformed back.
+/// Makes channels with beams (or a pixel window, or in another frame): K component maps are transformed once,
+/// and each channel is a weighted sum of their a_lm times its beam, transformed back.
 class HarmonicRoute {
   public:
     /// @throws NumericError, DataError as the law and the sky do
-    HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels, const HarmonicOptions& options, Progress& progress);
+    HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels, const HarmonicOptions& options,
+                  Progress& progress);
 
     [[nodiscard]] std::size_t channel_count() const { return channels_.size(); }
-    /// Returns rms(error)/rms(map) of a channel, the larger of I and (Q, U): the basis against the exact law on a sample of
-    /// the sky's pixels, and the transforms' remaining error, added in quadrature.
+    /// Returns rms(error)/rms(map) of a channel, the larger of I and (Q, U): the basis against the exact law
+    /// on a sample of the sky's pixels, and the transforms' remaining error, added in quadrature.
     [[nodiscard]] double error_of(std::size_t channel) const { return errors_[channel]; }
     [[nodiscard]] const HarmonicReport& report() const { return report_; }
 

@@ -18,8 +18,8 @@ namespace {
 constexpr double template_tolerance = 1e-8;  // of a template's a_lm: far below any accuracy a study asks for
 
 std::string regrid_notice(const char* what, const HealpixGrid& from, const HealpixGrid& to, int lmax) {
-    return std::string(what) + " brought from nside " + std::to_string(from.nside()) + " to " + std::to_string(to.nside()) +
-           " through its a_lm up to l = " + std::to_string(lmax);
+    return std::string(what) + " brought from nside " + std::to_string(from.nside()) + " to " +
+           std::to_string(to.nside()) + " through its a_lm up to l = " + std::to_string(lmax);
 }
 
 // The map of filled pixels, shared with the fields that stay undefined near them.
@@ -32,19 +32,24 @@ PixelField bring_intensity(SkyMap map, const HealpixGrid& grid, int lmax, Progre
     if (map.grid == grid) return PixelField::of_map(std::make_shared<const SkyMap>(std::move(map)));
     progress.notice(regrid_notice("intensity template", map.grid, grid, trusted_lmax(map.grid, lmax)));
     AnalysedMap result = analyse_filled(map, lmax, template_tolerance);
-    return PixelField::harmonic(std::move(result.alm), map.frame, share_filled(map.grid, map.frame, std::move(result.filled)));
+    return PixelField::harmonic(std::move(result.alm), map.frame,
+                                share_filled(map.grid, map.frame, std::move(result.filled)));
 }
 
-StokesField bring_stokes(StokesMaps maps, const HealpixGrid& grid, Frame frame, int lmax, Progress& progress) {
-    if (maps.grid == grid && maps.frame == frame) return {std::make_shared<const StokesMaps>(std::move(maps)), nullptr};
-    progress.notice(regrid_notice("polarization template", maps.grid, grid, trusted_lmax(maps.grid, lmax)) +
-                    (maps.frame == frame ? "" : " and turned from " + to_text(maps.frame) + " to " + to_text(frame)));
+StokesField bring_stokes(StokesMaps maps, const HealpixGrid& grid, Frame frame, int lmax,
+                         Progress& progress) {
+    if (maps.grid == grid && maps.frame == frame)
+        return {std::make_shared<const StokesMaps>(std::move(maps)), nullptr};
+    progress.notice(
+        regrid_notice("polarization template", maps.grid, grid, trusted_lmax(maps.grid, lmax)) +
+        (maps.frame == frame ? "" : " and turned from " + to_text(maps.frame) + " to " + to_text(frame)));
     AnalysedStokes result = analyse_filled(maps, lmax, template_tolerance);
     if (maps.frame != frame) rotate_alm(result.alm, maps.frame, frame);
     return {std::move(result.alm), share_filled(maps.grid, maps.frame, std::move(result.filled))};
 }
 
-// An index, curvature or fraction on the sky's grid; a finer one is first coarsened by means weighted with the brightness.
+// An index, curvature or fraction on the sky's grid; a finer one is first coarsened by means weighted with
+// the brightness.
 PixelField bring_plain(SkyMap map, const HealpixGrid& grid, Frame frame, const SkyMap& brightness) {
     if (map.grid.nside() > grid.nside()) {
         const SkyMap weights = interpolate(brightness, map.grid, map.frame);
@@ -53,31 +58,34 @@ PixelField bring_plain(SkyMap map, const HealpixGrid& grid, Frame frame, const S
     return PixelField::interpolated(std::make_shared<const SkyMap>(std::move(map)), grid, frame);
 }
 
-PixelField bring_value_or_map(const ValueOrMap& value, const HealpixGrid& grid, Frame frame, const SkyMap& brightness,
-                              Progress& progress) {
+PixelField bring_value_or_map(const ValueOrMap& value, const HealpixGrid& grid, Frame frame,
+                              const SkyMap& brightness, Progress& progress) {
     if (const double* number = std::get_if<double>(&value)) return PixelField::uniform(*number);
     return bring_plain(read_plain_map(std::get<MapSource>(value), progress), grid, frame, brightness);
 }
 
 void subtract_zero_level(SkyMap& map, const Brightness& level, Frequency reference) {
     const double kelvin = level.value * rayleigh_jeans_per_unit(level.unit, reference, map.grid.pixel_area());
-    for (double& value : map.values) value -= kelvin;
+    for (double& value : map.values)
+        value -= kelvin;
 }
 
-PolarizedSky load_polarization(const PolarizationSpec& spec, const SkyModel& sky, int lmax, const SkyMap& brightness,
-                               Progress& progress) {
+PolarizedSky load_polarization(const PolarizationSpec& spec, const SkyModel& sky, int lmax,
+                               const SkyMap& brightness, Progress& progress) {
     PolarizedSky polarized;
     polarized.reference = spec.reference_frequency.value_or(sky.reference);
     polarized.beam_fwhm = spec.beam_fwhm;
     if (spec.map) {
-        polarized.stokes = bring_stokes(read_stokes_maps(*spec.map, polarized.reference, progress), sky.grid, sky.frame, lmax,
-                                        progress);
+        polarized.stokes = bring_stokes(read_stokes_maps(*spec.map, polarized.reference, progress), sky.grid,
+                                        sky.frame, lmax, progress);
     } else {
         FOREGLOW_EXPECTS(spec.fraction && spec.angle_map);
-        polarized.stokes = bring_stokes(read_angle_map(*spec.angle_map, progress), sky.grid, sky.frame, lmax, progress);
+        polarized.stokes =
+            bring_stokes(read_angle_map(*spec.angle_map, progress), sky.grid, sky.frame, lmax, progress);
         polarized.fraction = bring_value_or_map(*spec.fraction, sky.grid, sky.frame, brightness, progress);
     }
-    if (spec.index) polarized.index = bring_value_or_map(*spec.index, sky.grid, sky.frame, brightness, progress);
+    if (spec.index)
+        polarized.index = bring_value_or_map(*spec.index, sky.grid, sky.frame, brightness, progress);
     return polarized;
 }
 
@@ -133,7 +141,8 @@ class HeaderCheck {
 
 }  // namespace
 
-ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization) {
+ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax,
+                           bool with_polarization) {
     if (model.sketch) return {Frame::Galactic, (with_polarization ? 5 : 3) * grid.npix(), 0};
     FOREGLOW_EXPECTS(model.intensity.has_value());
     HeaderCheck check(grid, lmax);
@@ -149,16 +158,20 @@ ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int 
     return check.result();
 }
 
-SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization, Progress& progress) {
-    if (model.sketch) return make_sketch_sky(*model.sketch, model.reference_frequency, grid, with_polarization);
+SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization,
+                  Progress& progress) {
+    if (model.sketch)
+        return make_sketch_sky(*model.sketch, model.reference_frequency, grid, with_polarization);
     SkyModel sky;
     sky.grid = grid;
     sky.reference = model.reference_frequency;
     SkyMap intensity = read_brightness_map(model.intensity->map, sky.reference, progress);
-    if (model.intensity->zero_level) subtract_zero_level(intensity, *model.intensity->zero_level, sky.reference);
+    if (model.intensity->zero_level)
+        subtract_zero_level(intensity, *model.intensity->zero_level, sky.reference);
     sky.frame = intensity.frame;
     sky.beam_fwhm = model.intensity->beam_fwhm;
-    if (model.index.frequency) sky.index_log_ratio = log_frequency_ratio(*model.index.frequency, sky.reference);
+    if (model.index.frequency)
+        sky.index_log_ratio = log_frequency_ratio(*model.index.frequency, sky.reference);
     sky.index = bring_value_or_map(model.index.value, grid, sky.frame, intensity, progress);
     sky.curvature = bring_value_or_map(model.curvature, grid, sky.frame, intensity, progress);
     if (with_polarization) {

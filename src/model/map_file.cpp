@@ -20,20 +20,21 @@ Coverage read_study_coverage(const StudySpec& study) {
         throw InputError(start + " has nside " + std::to_string(map.grid.nside()) + " but the study has " +
                          std::to_string(study.nside) + ": give a coverage on the study's grid");
     if (map.frame && *map.frame != study.frame)
-        throw InputError(start + " is in " + to_text(*map.frame) + " but the study in " + to_text(study.frame) +
-                         ": give a coverage in the study's frame");
+        throw InputError(start + " is in " + to_text(*map.frame) + " but the study in " +
+                         to_text(study.frame) + ": give a coverage in the study's frame");
     if (map.pixels.empty()) throw InputError(start + " wants no pixel: give one that is nonzero somewhere");
     Coverage coverage{map.pixels, map.pixels};
     if (study.ordering == Ordering::Nested) {
         const HealpixGrid grid(study.nside);
-        for (std::int64_t& pixel : coverage.file_pixels) pixel = grid.ring_to_nested(pixel);
+        for (std::int64_t& pixel : coverage.file_pixels)
+            pixel = grid.ring_to_nested(pixel);
         std::sort(coverage.file_pixels.begin(), coverage.file_pixels.end());
     }
     return coverage;
 }
 
-FitsMapLayout make_study_layout(const StudySpec& study, const Coverage* coverage, std::vector<FitsMapColumnName> columns,
-                                bool polarized) {
+FitsMapLayout make_study_layout(const StudySpec& study, const Coverage* coverage,
+                                std::vector<FitsMapColumnName> columns, bool polarized) {
     FitsMapLayout layout;
     layout.nside = study.nside;
     layout.ordering = study.ordering;
@@ -53,16 +54,19 @@ MapFile::MapFile(const std::filesystem::path& path, const FitsMapLayout& layout,
 
 void MapFile::write(std::int64_t first, std::span<const std::span<double>> columns) {
     if (negate_u_)
-        for (double& value : columns[2]) value = -value;
+        for (double& value : columns[2])
+            value = -value;
     std::array<std::span<const double>, 3> parts;
-    for (std::size_t c = 0; c < columns.size(); ++c) parts[c] = columns[c];
+    for (std::size_t c = 0; c < columns.size(); ++c)
+        parts[c] = columns[c];
     const FitsMapWriter::Columns view(parts.data(), columns.size());
     if (ordering_ == Ordering::Ring) {
         writer_.write_pixels(first, view);
         return;
     }
     std::vector<std::int64_t> nested(columns[0].size());
-    for (std::size_t i = 0; i < nested.size(); ++i) nested[i] = grid_.ring_to_nested(first + static_cast<std::int64_t>(i));
+    for (std::size_t i = 0; i < nested.size(); ++i)
+        nested[i] = grid_.ring_to_nested(first + static_cast<std::int64_t>(i));
     writer_.write_pixels_scattered(nested, view);
 }
 

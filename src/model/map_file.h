@@ -22,13 +22,15 @@ struct Coverage {
 /// @throws InputError where it is on another grid, in another frame, or empty
 [[nodiscard]] Coverage read_study_coverage(const StudySpec& study);
 
-/// One map file of a run, written from pieces in RING order and COSMO; it turns them into the file's ordering and convention.
+/// One map file of a run, written from pieces in RING order and COSMO; it turns them into the file's ordering
+/// and convention.
 class MapFile {
   public:
     /// @param polarized  whether columns 1 and 2 are Q and U
     MapFile(const std::filesystem::path& path, const FitsMapLayout& layout, bool polarized);
 
-    /// Writes pixels first, first + 1, ... (RING numbers); threads may write disjoint ranges at once. U is negated in place for IAU.
+    /// Writes pixels first, first + 1, ... (RING numbers); threads may write disjoint ranges at once. U is
+    /// negated in place for IAU.
     /// @param columns  [columns][n]
     void write(std::int64_t first, std::span<const std::span<double>> columns);
     void finish() { writer_.finish(); }

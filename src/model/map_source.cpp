@@ -19,7 +19,8 @@ FitsMap read_map(const MapSource& source, std::size_t columns, Progress& progres
     if (request.columns.empty() && columns == 1) request.columns = {1};
     FitsMap map = read_fits_map(request);
     FOREGLOW_EXPECTS(map.columns.size() == columns);
-    for (const std::string& notice : map.notices) progress.notice(notice);
+    for (const std::string& notice : map.notices)
+        progress.notice(notice);
     if (map.undefined > 0)
         progress.notice(source.path.filename().string() + ": " + std::to_string(map.undefined) + " of " +
                         std::to_string(map.grid.npix()) + " pixels are undefined and stay so");
@@ -36,28 +37,32 @@ std::optional<double> scale_of_bare_kelvin(const std::string& tunit) {
 }
 
 bool is_temperature(const BrightnessUnit& unit) {
-    return unit.kind == BrightnessUnit::Kind::RayleighJeans || unit.kind == BrightnessUnit::Kind::Thermodynamic;
+    return unit.kind == BrightnessUnit::Kind::RayleighJeans ||
+           unit.kind == BrightnessUnit::Kind::Thermodynamic;
 }
 
 void scale_to_rayleigh_jeans(std::vector<double>& values, const BrightnessUnit& unit, Frequency frequency,
                              const HealpixGrid& grid) {
     const double factor = rayleigh_jeans_per_unit(unit, frequency, grid.pixel_area());
-    for (double& value : values) value *= factor;
+    for (double& value : values)
+        value *= factor;
 }
 
 }  // namespace
 
 FitsMapRequest make_request(const MapSource& source) {
-    return {source.path, source.place, source.section, source.columns, source.hdu, source.ordering, source.frame};
+    return {source.path, source.place,    source.section, source.columns,
+            source.hdu,  source.ordering, source.frame};
 }
 
 Frame resolve_frame(const MapSource& source, std::optional<Frame> in_header) {
     if (in_header && source.frame && *in_header != *source.frame)
-        throw InputError(start_of(source) + " has COORDSYS " + to_text(*in_header) + " but [" + source.section + "] says " +
-                         to_text(*source.frame) + ": correct one of them");
+        throw InputError(start_of(source) + " has COORDSYS " + to_text(*in_header) + " but [" +
+                         source.section + "] says " + to_text(*source.frame) + ": correct one of them");
     if (source.frame) return *source.frame;
     if (in_header) return *in_header;
-    throw InputError(start_of(source) + " does not say its frame (COORDSYS is absent or unknown): add `frame = \"galactic\"` " +
+    throw InputError(start_of(source) +
+                     " does not say its frame (COORDSYS is absent or unknown): add `frame = \"galactic\"` " +
                      "(or \"icrs\", \"ecliptic\") to [" + source.section + "]");
 }
 
@@ -65,8 +70,9 @@ BrightnessUnit resolve_unit(const MapSource& source, const std::string& tunit) {
     const auto in_header = find_brightness_unit(tunit);
     if (!source.unit) {
         if (in_header) return *in_header;
-        const std::string what = trim(tunit).empty() ? "does not say its unit (TUNIT is absent or unknown)"
-                                                     : "has TUNIT '" + tunit + "', which does not say which scale it is in";
+        const std::string what = trim(tunit).empty()
+                                     ? "does not say its unit (TUNIT is absent or unknown)"
+                                     : "has TUNIT '" + tunit + "', which does not say which scale it is in";
         throw InputError(start_of(source) + " " + what + ": add `unit = \"K_RJ\"` (or another of " +
                          list_of_brightness_units() + ") to [" + source.section + "]");
     }
@@ -74,12 +80,13 @@ BrightnessUnit resolve_unit(const MapSource& source, const std::string& tunit) {
     const bool contradicts = (in_header && *in_header != *source.unit) ||
                              (bare && (!is_temperature(*source.unit) || *bare != source.unit->scale));
     if (contradicts)
-        throw InputError(start_of(source) + " has TUNIT '" + tunit + "' but [" + source.section + "] says \"" +
-                         to_text(*source.unit) + "\": correct one of them");
+        throw InputError(start_of(source) + " has TUNIT '" + tunit + "' but [" + source.section +
+                         "] says \"" + to_text(*source.unit) + "\": correct one of them");
     return *source.unit;
 }
 
-PolarizationConvention resolve_convention(const MapSource& source, std::optional<PolarizationConvention> in_header) {
+PolarizationConvention resolve_convention(const MapSource& source,
+                                          std::optional<PolarizationConvention> in_header) {
     if (in_header && source.convention && *in_header != *source.convention)
         throw InputError(start_of(source) + " has another POLCCONV than [" + source.section +
                          "] says in `polarization_convention`: correct one of them");
@@ -128,7 +135,8 @@ StokesMaps read_angle_map(const MapSource& source, Progress& progress) {
     StokesMaps out;
     out.grid = map.grid;
     out.frame = resolve_frame(source, map.frame);
-    const double sign = resolve_convention(source, map.convention) == PolarizationConvention::Iau ? -1.0 : 1.0;
+    const double sign =
+        resolve_convention(source, map.convention) == PolarizationConvention::Iau ? -1.0 : 1.0;
     for (const double degrees : map.columns[0].values) {
         const double twice = 2 * degrees * constants::pi / 180;
         out.q.push_back(std::cos(twice));

@@ -7,7 +7,8 @@
 
 namespace foreglow {
 
-/// Counts and moments of a map's defined pixels; merging in a fixed order gives the same numbers for any number of threads.
+/// Counts and moments of a map's defined pixels; merging in a fixed order gives the same numbers for any
+/// number of threads.
 struct MapStatistics {
     std::int64_t defined = 0, undefined = 0, negative = 0;
     double sum = 0, sum_of_squares = 0;

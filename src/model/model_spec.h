@@ -21,27 +21,27 @@ using ColumnRef = std::variant<int, std::string>;
 /// A FITS map named by a model, with what the model says where the file does not.
 struct MapSource {
     std::filesystem::path path;
-    std::string place;                       ///< FILE:LINE:COLUMN of the `map` key
-    std::string section;                     ///< "intensity", "index", ...
+    std::string place;    ///< FILE:LINE:COLUMN of the `map` key
+    std::string section;  ///< "intensity", "index", ...
     std::vector<ColumnRef> columns;
     std::optional<int> hdu;
     std::optional<Ordering> ordering;
     std::optional<Frame> frame;
-    std::optional<BrightnessUnit> unit;      ///< brightness maps only
+    std::optional<BrightnessUnit> unit;  ///< brightness maps only
     std::optional<PolarizationConvention> convention;
 };
 
 /// Parameters of the bundled invented sky, made from closed formulas (docs/models.md).
 struct SketchSpec {
     bool disc = true, loops = true, texture = true;
-    double pole_brightness = 10.0;           ///< of the disc layer at |b| = 90 deg, K_RJ at the reference frequency
-    double plane_brightness = 60.0;          ///< added on the plane at the anticentre, K_RJ
+    double pole_brightness = 10.0;   ///< of the disc layer at |b| = 90 deg, K_RJ at the reference frequency
+    double plane_brightness = 60.0;  ///< added on the plane at the anticentre, K_RJ
     Angle plane_height = Angle::from_degrees(4.0);
     double texture_rms = 0.12;               ///< of ln T
     double index = -2.75, index_rms = 0.06;  ///< mean and scatter of the index at the reference frequency
     double curvature = -0.04, curvature_rms = 0.01;
     double polarized_fraction = 0.2;
-    std::uint64_t seed = 1;                  ///< of the sky itself, not of a study
+    std::uint64_t seed = 1;  ///< of the sky itself, not of a study
 };
 
 /// A number everywhere, or a map.
@@ -55,33 +55,33 @@ struct IntensitySpec {
 
 /// Q and U from a map, or a fraction of the intensity with an angle map.
 struct PolarizationSpec {
-    std::optional<MapSource> map;            ///< two columns
-    std::optional<ValueOrMap> fraction;      ///< with angle_map
-    std::optional<MapSource> angle_map;      ///< degrees, in `convention`
+    std::optional<MapSource> map;        ///< two columns
+    std::optional<ValueOrMap> fraction;  ///< with angle_map
+    std::optional<MapSource> angle_map;  ///< degrees, in `convention`
     std::optional<Frequency> reference_frequency;
     std::optional<Angle> beam_fwhm;
-    std::optional<ValueOrMap> index;         ///< own power law; else the intensity's own curve
+    std::optional<ValueOrMap> index;  ///< own power law; else the intensity's own curve
 };
 
 struct IndexSpec {
     ValueOrMap value = -3.0;
-    std::optional<Frequency> frequency;      ///< where it holds, if not at the reference frequency;
-                                             ///< `between` is turned into the geometric mean
+    std::optional<Frequency> frequency;  ///< where it holds, if not at the reference frequency;
+                                         ///< `between` is turned into the geometric mean
 };
 
 /// A model as written, every key checked by itself and against the others.
 struct ModelSpec {
-    std::filesystem::path file;              ///< empty for a bundled model
-    std::string name;                        ///< the bundled name, or the file's stem
-    std::string source;                      ///< the TOML text as read
+    std::filesystem::path file;  ///< empty for a bundled model
+    std::string name;            ///< the bundled name, or the file's stem
+    std::string source;          ///< the TOML text as read
     std::string title;
     Frequency reference_frequency;
-    std::optional<SketchSpec> sketch;        ///< instead of the four below
+    std::optional<SketchSpec> sketch;  ///< instead of the four below
     std::optional<IntensitySpec> intensity;
     std::optional<PolarizationSpec> polarization;
     IndexSpec index;
     ValueOrMap curvature = 0.0;
-    std::vector<std::string> warnings;       ///< e.g. an index that looks like one of flux
+    std::vector<std::string> warnings;  ///< e.g. an index that looks like one of flux
 };
 
 }  // namespace foreglow

@@ -32,8 +32,9 @@ std::optional<PixelField::Range> range_of(const SkyMap& map) {
 void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                        std::span<double> out) {
     for (const PixelRange& range : pixel_ranges(grid, strip))
-        interpolate_pixels(map, grid, frame, range.first_pixel,
-                           out.subspan(static_cast<std::size_t>(range.offset), static_cast<std::size_t>(range.count)));
+        interpolate_pixels(
+            map, grid, frame, range.first_pixel,
+            out.subspan(static_cast<std::size_t>(range.offset), static_cast<std::size_t>(range.count)));
 }
 
 void undefine_filled(const SkyMap& filled, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
@@ -75,13 +76,16 @@ void PixelField::evaluate(const HealpixGrid& grid, const RingStrip& strip, std::
                           },
                           [&](const Harmonic& source) {
                               synthesize_strip(source.alm, grid, strip, out);
-                              if (source.filled) undefine_filled(*source.filled, grid, source.frame, strip, out);
+                              if (source.filled)
+                                  undefine_filled(*source.filled, grid, source.frame, strip, out);
                           }},
                source_);
 }
 
 std::optional<PixelField::Range> PixelField::range() const {
-    return std::visit(Overloaded{[](double value) { return std::optional<Range>(Range{value, value}); },
+    return std::visit(Overloaded{[](double value) {
+                                     return std::optional<Range>(Range{value, value});
+                                 },
                                  [](const Map& source) { return range_of(*source.map); },
                                  [](const Interpolated& source) { return range_of(*source.map); },
                                  [](const Harmonic&) { return std::optional<Range>(); }},

@@ -13,7 +13,8 @@
 
 namespace foreglow {
 
-/// A scalar on the pixels of one grid that is made strip by strip when asked for, so that no full map of it need exist.
+/// A scalar on the pixels of one grid that is made strip by strip when asked for, so that no full map of it
+/// need exist.
 class PixelField {
   public:
     /// The same value everywhere.
@@ -22,9 +23,12 @@ class PixelField {
     [[nodiscard]] static PixelField of_map(std::shared_ptr<const SkyMap> map);
     /// A map on another grid or in another frame, by bilinear interpolation between its four nearest pixels.
     ///
-    /// Undefined neighbours are left out and the others' weights renormalised; without any the pixel is undefined.
-    [[nodiscard]] static PixelField interpolated(std::shared_ptr<const SkyMap> map, const HealpixGrid& grid, Frame frame);
-    /// The map of some a_lm; a pixel is undefined where `filled` (a map of 0 and 1, interpolated) exceeds 1 %.
+    /// Undefined neighbours are left out and the others' weights renormalised; without any the pixel is
+    /// undefined.
+    [[nodiscard]] static PixelField interpolated(std::shared_ptr<const SkyMap> map, const HealpixGrid& grid,
+                                                 Frame frame);
+    /// The map of some a_lm; a pixel is undefined where `filled` (a map of 0 and 1, interpolated) exceeds 1
+    /// %.
     [[nodiscard]] static PixelField harmonic(Alm alm, Frame frame,
                                              std::shared_ptr<const SkyMap> filled = nullptr);
 
@@ -58,9 +62,11 @@ class PixelField {
 };
 
 /// Interpolates a map at the pixels of a strip of another grid and frame (interpolate_pixels).
-void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip, std::span<double> out);
+void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
+                       std::span<double> out);
 
-/// Makes pixels of a strip undefined where the interpolated map of filled pixels exceeds largest_filled_share.
+/// Makes pixels of a strip undefined where the interpolated map of filled pixels exceeds
+/// largest_filled_share.
 void undefine_filled(const SkyMap& filled, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                      std::span<double> values);
 

@@ -11,14 +11,17 @@ namespace {
 constexpr std::size_t block = 512;
 
 void multiply(std::span<const double> amplitude, std::span<const double> factor, std::span<double> out) {
-    for (std::size_t i = 0; i < out.size(); ++i) out[i] = amplitude[i] * factor[i];
+    for (std::size_t i = 0; i < out.size(); ++i)
+        out[i] = amplitude[i] * factor[i];
 }
 
 }  // namespace
 
-PixelRoute::PixelRoute(const SkyModel& sky, std::span<const BandSum> bands, bool polarized, double tolerance) {
+PixelRoute::PixelRoute(const SkyModel& sky, std::span<const BandSum> bands, bool polarized,
+                       double tolerance) {
     const ParameterRange range = parameter_range(sky);
-    for (const BandSum& band : bands) intensity_laws_.emplace_back(band, sky.reference, range, tolerance);
+    for (const BandSum& band : bands)
+        intensity_laws_.emplace_back(band, sky.reference, range, tolerance);
     if (!polarized || polarization_shares_law(sky)) return;
     const ParameterRange own_range = polarized_parameter_range(sky);
     for (const BandSum& band : bands)
@@ -37,12 +40,15 @@ void PixelRoute::make_pixels(const SkyStrip& strip, std::size_t channel, std::si
     for (std::size_t first = begin; first < end; first += block) {
         const std::size_t n = std::min(block, end - first);
         const std::span<double> f(factor.data(), n);
-        const auto part = [&](const std::vector<double>& values) { return std::span(values).subspan(first, n); };
+        const auto part = [&](const std::vector<double>& values) {
+            return std::span(values).subspan(first, n);
+        };
         intensity_laws_[channel].evaluate(part(strip.index), part(strip.curvature), f);
         multiply(part(strip.intensity), f, out[0].subspan(first - begin, n));
         if (out.size() == 1) continue;
         if (!polarized_laws_.empty())
-            polarized_laws_[channel].evaluate(part(strip.polarized_index), part(strip.polarized_curvature), f);
+            polarized_laws_[channel].evaluate(part(strip.polarized_index), part(strip.polarized_curvature),
+                                              f);
         multiply(part(strip.q), f, out[1].subspan(first - begin, n));
         multiply(part(strip.u), f, out[2].subspan(first - begin, n));
     }

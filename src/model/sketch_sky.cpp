@@ -56,18 +56,21 @@ double smooth_brightness(const SketchSpec& sketch, const Vector3& n) {
     constexpr double softening = 0.12;  // of sin b, keeps the cosecant finite in the plane
     double t = 0;
     if (sketch.disc) {
-        t += sketch.pole_brightness * std::sqrt((1 + softening * softening) / (sine * sine + softening * softening));
+        t += sketch.pole_brightness *
+             std::sqrt((1 + softening * softening) / (sine * sine + softening * softening));
         const double latitude = std::asin(std::clamp(sine, -1.0, 1.0)) / sketch.plane_height.radians();
         const double towards_centre = 0.5 * (1 + n[0] / std::max(std::hypot(n[0], n[1]), 1e-12));
         const double bulge = std::pow(towards_centre, 4);
         t += sketch.plane_brightness * (1 + 4 * bulge) / std::cosh(latitude);
     }
     if (sketch.loops)
-        for (const Loop& loop : loops) t += loop_brightness(loop, n);
+        for (const Loop& loop : loops)
+            t += loop_brightness(loop, n);
     return t;
 }
 
-// C_l ~ (l^2 + l0^2)^-power from l = 2 on, unit variance when summed to infinity, so that it is the same field at every nside.
+// C_l ~ (l^2 + l0^2)^-power from l = 2 on, unit variance when summed to infinity, so that it is the same
+// field at every nside.
 std::vector<double> unit_spectrum(int lmax, double l0, double power) {
     const BeamWindow finest = make_gaussian_beam(Angle::from_degrees(finest_scale_deg), 2048);
     std::vector<double> cl(static_cast<std::size_t>(2049));
@@ -77,7 +80,8 @@ std::vector<double> unit_spectrum(int lmax, double l0, double power) {
         cl[l] = std::pow(ell * ell + l0 * l0, -power) * finest.temperature[l] * finest.temperature[l];
         variance += (2 * ell + 1) / (4 * constants::pi) * cl[l];
     }
-    for (double& c : cl) c /= variance;
+    for (double& c : cl)
+        c /= variance;
     cl.resize(std::min(cl.size(), static_cast<std::size_t>(lmax) + 1));
     return cl;
 }
@@ -104,26 +108,31 @@ std::shared_ptr<const SkyMap> make_intensity(const SketchSpec& sketch, const Hea
     parallel_for_blocks(grid.npix(), 4096, [&](std::int64_t begin, std::int64_t end) {
         for (std::int64_t p = begin; p < end; ++p) {
             const auto i = static_cast<std::size_t>(p);
-            map->values[i] = smooth_brightness(sketch, grid.direction(p)) * std::exp(rms * texture[i] - 0.5 * rms * rms);
+            map->values[i] =
+                smooth_brightness(sketch, grid.direction(p)) * std::exp(rms * texture[i] - 0.5 * rms * rms);
         }
     });
     return map;
 }
 
-PixelField make_scattered(const SketchSpec& sketch, const HealpixGrid& grid, Field field, double mean, double rms) {
+PixelField make_scattered(const SketchSpec& sketch, const HealpixGrid& grid, Field field, double mean,
+                          double rms) {
     if (rms == 0) return PixelField::uniform(mean);
     auto map = empty_map(grid);
     map->values = unit_field(sketch, grid, field, 1.3);
-    for (double& value : map->values) value = mean + rms * std::clamp(value, -4.0, 4.0);
+    for (double& value : map->values)
+        value = mean + rms * std::clamp(value, -4.0, 4.0);
     return PixelField::of_map(map);
 }
 
-// Field lines along the plane give E vectors across it (Q > 0 in COSMO); a random part turns them, the plane depolarizes.
+// Field lines along the plane give E vectors across it (Q > 0 in COSMO); a random part turns them, the plane
+// depolarizes.
 std::shared_ptr<const StokesMaps> make_stokes(const SketchSpec& sketch, const SkyMap& intensity) {
     const HealpixGrid& grid = intensity.grid;
     const int lmax = std::min(2048, 2 * grid.nside());
     const auto cl = unit_spectrum(lmax, 18, 11.0 / 6);
-    AlmEB alm{make_gaussian_alm(cl, lmax, {sketch.seed, 0, EField}), make_gaussian_alm(cl, lmax, {sketch.seed, 0, BField})};
+    AlmEB alm{make_gaussian_alm(cl, lmax, {sketch.seed, 0, EField}),
+              make_gaussian_alm(cl, lmax, {sketch.seed, 0, BField})};
     multiply_by_l(alm.b, std::vector<double>(static_cast<std::size_t>(lmax) + 1, std::sqrt(0.5)));
     StokesValues random = synthesize_spin2(alm, grid);
     auto maps = std::make_shared<StokesMaps>();
@@ -133,8 +142,10 @@ std::shared_ptr<const StokesMaps> make_stokes(const SketchSpec& sketch, const Sk
     maps->u.resize(intensity.values.size());
     constexpr double highest_fraction = 0.7;  // below the 75 % that no electron distribution exceeds by much
     for (std::size_t i = 0; i < maps->q.size(); ++i) {
-        const double latitude = std::asin(std::clamp(grid.direction(static_cast<std::int64_t>(i))[2], -1.0, 1.0)) / degree;
-        const double fraction = sketch.polarized_fraction * (1 - 0.75 * std::exp(-0.5 * latitude * latitude / 36));
+        const double latitude =
+            std::asin(std::clamp(grid.direction(static_cast<std::int64_t>(i))[2], -1.0, 1.0)) / degree;
+        const double fraction =
+            sketch.polarized_fraction * (1 - 0.75 * std::exp(-0.5 * latitude * latitude / 36));
         double q = fraction * (0.8 + 0.5 * random.q[i]);
         double u = fraction * 0.5 * random.u[i];
         const double cap = std::min(1.0, highest_fraction / std::max(std::hypot(q, u), 1e-30));
@@ -146,7 +157,8 @@ std::shared_ptr<const StokesMaps> make_stokes(const SketchSpec& sketch, const Sk
 
 }  // namespace
 
-SkyModel make_sketch_sky(const SketchSpec& sketch, Frequency reference, const HealpixGrid& grid, bool with_polarization) {
+SkyModel make_sketch_sky(const SketchSpec& sketch, Frequency reference, const HealpixGrid& grid,
+                         bool with_polarization) {
     SkyModel sky;
     sky.grid = grid;
     sky.frame = Frame::Galactic;

@@ -16,8 +16,8 @@ PixelField::Range require_range(const PixelField& field, const char* name) {
     return *range;
 }
 
-void evaluate_stokes(const SkyModel& sky, const StokesField& field, const RingStrip& strip, std::span<double> q,
-                     std::span<double> u) {
+void evaluate_stokes(const SkyModel& sky, const StokesField& field, const RingStrip& strip,
+                     std::span<double> q, std::span<double> u) {
     if (const auto* maps = std::get_if<std::shared_ptr<const StokesMaps>>(&field.source)) {
         FOREGLOW_EXPECTS((*maps)->grid == sky.grid);
         for (const PixelRange& range : pixel_ranges(sky.grid, strip)) {
@@ -39,7 +39,8 @@ void scale_to_fraction(const SkyModel& sky, const RingStrip& strip, SkyStrip& va
     polarized.fraction->evaluate(sky.grid, strip, fraction);
     const double log_ratio = log_frequency_ratio(polarized.reference, sky.reference);
     for (std::size_t i = 0; i < fraction.size(); ++i) {
-        const double there = std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
+        const double there =
+            std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
         const double length = std::hypot(values.q[i], values.u[i]);
         const double factor = fraction[i] * values.intensity[i] * there / length;
         values.q[i] *= factor;
@@ -94,7 +95,8 @@ SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_p
 }
 
 ParameterRange parameter_range(const SkyModel& sky) {
-    return shifted(require_range(sky.index, "index"), require_range(sky.curvature, "curvature"), -2 * sky.index_log_ratio);
+    return shifted(require_range(sky.index, "index"), require_range(sky.curvature, "curvature"),
+                   -2 * sky.index_log_ratio);
 }
 
 ParameterRange polarized_parameter_range(const SkyModel& sky) {

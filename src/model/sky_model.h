@@ -23,36 +23,40 @@ struct StokesField {
 
 /// The polarized part of a sky.
 struct PolarizedSky {
-    StokesField stokes;                  ///< K_RJ at `reference`; with `fraction`: the direction only, any length
+    StokesField stokes;  ///< K_RJ at `reference`; with `fraction`: the direction only, any length
     std::optional<PixelField> fraction;  ///< P = fraction times the intensity at `reference`
     Frequency reference;
-    std::optional<PixelField> index;     ///< own power law from `reference`; else the intensity's own curve
+    std::optional<PixelField> index;  ///< own power law from `reference`; else the intensity's own curve
     std::optional<Angle> beam_fwhm;
 };
 
-/// What one strip of a sky is made of; each [pixel_count], NaN where undefined; the last four empty without polarization.
+/// What one strip of a sky is made of; each [pixel_count], NaN where undefined; the last four empty without
+/// polarization.
 struct SkyStrip {
     std::vector<double> intensity;         ///< K_RJ at the reference frequency
     std::vector<double> index, curvature;  ///< at the reference frequency
     std::vector<double> q, u;              ///< K_RJ at the polarization's reference frequency, COSMO
-    std::vector<double> polarized_index, polarized_curvature;  ///< of Q and U, at the polarization's reference frequency
+    std::vector<double> polarized_index,
+        polarized_curvature;  ///< of Q and U, at the polarization's reference frequency
 };
 
 /// A sky on one grid: what each pixel's spectrum is made of.
 struct SkyModel {
     HealpixGrid grid{1};
-    Frame frame = Frame::Galactic;   ///< of the intensity map; the law acts in it
+    Frame frame = Frame::Galactic;  ///< of the intensity map; the law acts in it
     Frequency reference;
     PixelField intensity = PixelField::uniform(0);
-    PixelField index = PixelField::uniform(-3);   ///< where it was measured
-    double index_log_ratio = 0;                   ///< ln(nu1/nu0) of that frequency
+    PixelField index = PixelField::uniform(-3);  ///< where it was measured
+    double index_log_ratio = 0;                  ///< ln(nu1/nu0) of that frequency
     PixelField curvature = PixelField::uniform(0);
     std::optional<PolarizedSky> polarization;
-    std::optional<Angle> beam_fwhm;               ///< the template's own
-    std::vector<std::string> labels;              ///< sentences a reader of the maps must see, e.g. that the sky is invented
+    std::optional<Angle> beam_fwhm;  ///< the template's own
+    std::vector<std::string>
+        labels;  ///< sentences a reader of the maps must see, e.g. that the sky is invented
 };
 
-/// Makes one strip; indices are carried to the reference frequencies: beta(nu0) = beta(nu1) - 2 c ln(nu1/nu0).
+/// Makes one strip; indices are carried to the reference frequencies: beta(nu0) = beta(nu1) - 2 c
+/// ln(nu1/nu0).
 [[nodiscard]] SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization);
 
 /// Returns bounds of index and curvature at the reference frequency over the sky's pixels.
@@ -60,7 +64,8 @@ struct SkyModel {
 [[nodiscard]] ParameterRange parameter_range(const SkyModel& sky);
 /// Returns the bounds of what Q and U follow, at the polarization's reference frequency.
 [[nodiscard]] ParameterRange polarized_parameter_range(const SkyModel& sky);
-/// Tells whether Q and U share the intensity's reference frequency and curve, so that one factor serves all three.
+/// Tells whether Q and U share the intensity's reference frequency and curve, so that one factor serves all
+/// three.
 [[nodiscard]] bool polarization_shares_law(const SkyModel& sky);
 
 }  // namespace foreglow

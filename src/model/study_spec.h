@@ -21,25 +21,26 @@ enum class TruthLevel { None, Maps, Full };
 /// One channel as the study file asks for it; a [channel_grid] is expanded into these.
 struct ChannelSpec {
     std::string name;
-    std::string place;                       ///< FILE:LINE:COLUMN of the entry, for messages
-    std::optional<Frequency> frequency;      ///< the reference; absent only with a response file
-    std::optional<Frequency> bandwidth;      ///< full width of a flat response
-    std::optional<Frequency> band_low, band_high;  ///< both or none: exact edges (grids); else frequency -+ bandwidth/2
+    std::string place;                   ///< FILE:LINE:COLUMN of the entry, for messages
+    std::optional<Frequency> frequency;  ///< the reference; absent only with a response file
+    std::optional<Frequency> bandwidth;  ///< full width of a flat response
+    std::optional<Frequency> band_low,
+        band_high;  ///< both or none: exact edges (grids); else frequency -+ bandwidth/2
     std::optional<std::filesystem::path> response;
     std::optional<Angle> beam_fwhm;
     std::optional<std::filesystem::path> beam_window;
-    std::optional<std::string> noise;        ///< checked, "5 uK_CMB arcmin"
+    std::optional<std::string> noise;  ///< checked, "5 uK_CMB arcmin"
     ResponseWeights response_weights = ResponseWeights::Temperature;
     double reference_flux_index = 0;
 };
 
 /// A study as written, every key checked by itself and against the others.
 struct StudySpec {
-    std::filesystem::path file;              ///< empty where no file was given
-    std::string source;                      ///< the TOML text as read, with overrides listed behind it
+    std::filesystem::path file;  ///< empty where no file was given
+    std::string source;          ///< the TOML text as read, with overrides listed behind it
     std::string title;
-    std::string model;                       ///< a bundled model's name, or the path of a model file
-    std::string model_place;                 ///< FILE:LINE:COLUMN of the key
+    std::string model;        ///< a bundled model's name, or the path of a model file
+    std::string model_place;  ///< FILE:LINE:COLUMN of the key
     bool model_is_bundled = false;
     int nside = 0;
     bool polarized = false;
@@ -58,7 +59,7 @@ struct StudySpec {
     int realizations = 1;
     TruthLevel truth = TruthLevel::Maps;
     std::vector<ChannelSpec> channels;
-    std::vector<std::string> warnings;       ///< e.g. lmax above 2.5 nside
+    std::vector<std::string> warnings;  ///< e.g. lmax above 2.5 nside
 };
 
 }  // namespace foreglow

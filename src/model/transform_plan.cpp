@@ -10,10 +10,11 @@
 namespace foreglow {
 namespace {
 
-constexpr double largest_cl_ratio = 1e-4;   // of the error's C_l to the map's (interface page) ...
-constexpr double window_that_counts = 1e-3; // ... where B_l^2 is above this ...
-constexpr double power_that_counts = 1e-14; // ... and the map has more than this of its variance: a coarser template has none
-                                            // above its own lmax, where only rounding and its own transform's error are left
+constexpr double largest_cl_ratio = 1e-4;    // of the error's C_l to the map's (interface page) ...
+constexpr double window_that_counts = 1e-3;  // ... where B_l^2 is above this ...
+constexpr double power_that_counts =
+    1e-14;  // ... and the map has more than this of its variance: a coarser template has none
+            // above its own lmax, where only rounding and its own transform's error are left
 constexpr int most_refinements = 16;
 
 BeamWindow unit_window(int lmax) {
@@ -27,7 +28,8 @@ double worst_cl_ratio(const ConvergenceReport& report, std::span<const double> w
         return (2 * static_cast<double>(l) + 1) * report.map_cl[l] * window[l] * window[l];
     };
     double total = 0;
-    for (std::size_t l = 2; l < report.map_cl.size(); ++l) total += power(l);
+    for (std::size_t l = 2; l < report.map_cl.size(); ++l)
+        total += power(l);
     double worst = 0;
     for (std::size_t l = 2; l < report.map_cl.size(); ++l) {
         if (window[l] * window[l] <= window_that_counts || !(power(l) > power_that_counts * total)) continue;
@@ -36,12 +38,15 @@ double worst_cl_ratio(const ConvergenceReport& report, std::span<const double> w
     return worst;
 }
 
-// Runs the refinement of the first component, harder until the spectrum of what remains is small enough as well.
+// Runs the refinement of the first component, harder until the spectrum of what remains is small enough as
+// well.
 template <class Analyse>
-auto measure(const Analyse& analyse, double tolerance, std::span<const double> window, TransformState& state) {
+auto measure(const Analyse& analyse, double tolerance, std::span<const double> window,
+             TransformState& state) {
     auto result = analyse(tolerance, most_refinements);
     state.worst_cl_ratio = worst_cl_ratio(result.report, window);
-    for (int round = 0; round < 3 && result.report.reached && state.worst_cl_ratio > largest_cl_ratio; ++round) {
+    for (int round = 0; round < 3 && result.report.reached && state.worst_cl_ratio > largest_cl_ratio;
+         ++round) {
         tolerance *= 0.1;
         result = analyse(tolerance, most_refinements);
         state.worst_cl_ratio = worst_cl_ratio(result.report, window);
@@ -49,9 +54,11 @@ auto measure(const Analyse& analyse, double tolerance, std::span<const double> w
     state.measured = true;
     state.converged = result.report.reached && state.worst_cl_ratio <= largest_cl_ratio;
     // A first correction that is itself negligible says that the weighted analysis alone was good enough.
-    const bool first_was_enough = result.report.iterations == 1 && 2 * result.report.relative_correction <= tolerance;
+    const bool first_was_enough =
+        result.report.iterations == 1 && 2 * result.report.relative_correction <= tolerance;
     state.iterations = first_was_enough ? 0 : result.report.iterations;
-    state.relative_error = first_was_enough ? 2 * result.report.relative_correction : result.report.relative_error;
+    state.relative_error =
+        first_was_enough ? 2 * result.report.relative_correction : result.report.relative_error;
     return std::move(result.alm);
 }
 
@@ -75,8 +82,8 @@ BeamWindow widest_window(std::span<const Channel> channels, const HarmonicOption
     return widest;
 }
 
-TransformPlan::TransformPlan(const HealpixGrid& grid, int lmax, double tolerance, std::vector<double> temperature_window,
-                             std::vector<double> polarization_window)
+TransformPlan::TransformPlan(const HealpixGrid& grid, int lmax, double tolerance,
+                             std::vector<double> temperature_window, std::vector<double> polarization_window)
     : grid_(grid),
       lmax_(lmax),
       tolerance_(tolerance),
@@ -92,9 +99,11 @@ Alm TransformPlan::analyse(std::span<const double> map, TransformState& state) c
     return run(0.0, state.iterations).alm;
 }
 
-AlmEB TransformPlan::analyse_spin2(std::span<const double> q, std::span<const double> u, TransformState& state) const {
+AlmEB TransformPlan::analyse_spin2(std::span<const double> q, std::span<const double> u,
+                                   TransformState& state) const {
     const auto run = [&](double tolerance, int refinements) {
-        return analyse_converged_spin2(grid_, q, u, lmax_, {tolerance, refinements, &weights_, polarization_window_});
+        return analyse_converged_spin2(grid_, q, u, lmax_,
+                                       {tolerance, refinements, &weights_, polarization_window_});
     };
     if (!state.measured) return measure(run, tolerance_, polarization_window_, state);
     return run(0.0, state.iterations).alm;

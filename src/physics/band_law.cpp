@@ -36,30 +36,35 @@ struct Axis {
 std::vector<double> chebyshev_points(const Axis& axis, int count) {
     if (!axis.varies()) return {0.0};
     std::vector<double> points;
-    for (int i = 0; i < count; ++i) points.push_back(-std::cos(constants::pi * (i + 0.5) / count));
+    for (int i = 0; i < count; ++i)
+        points.push_back(-std::cos(constants::pi * (i + 0.5) / count));
     return points;
 }
 
 std::vector<double> even_points(const Axis& axis, int count) {
     if (!axis.varies()) return {0.0};
     std::vector<double> points;
-    for (int i = 0; i < count; ++i) points.push_back(-1.0 + 2.0 * i / (count - 1));
+    for (int i = 0; i < count; ++i)
+        points.push_back(-1.0 + 2.0 * i / (count - 1));
     return points;
 }
 
 FOREGLOW_WIDE
 void exponentiate(double* values, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i) values[i] = vector_exp(values[i]);
+    for (std::size_t i = 0; i < n; ++i)
+        values[i] = vector_exp(values[i]);
 }
 
 FOREGLOW_WIDE
 void horner(double* sum, const double* x, double coefficient, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i) sum[i] = sum[i] * x[i] + coefficient;
+    for (std::size_t i = 0; i < n; ++i)
+        sum[i] = sum[i] * x[i] + coefficient;
 }
 
 FOREGLOW_WIDE
 void add_product(double* sum, const double* factor, const double* added, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i) sum[i] = sum[i] * factor[i] + added[i];
+    for (std::size_t i = 0; i < n; ++i)
+        sum[i] = sum[i] * factor[i] + added[i];
 }
 
 }  // namespace
@@ -93,9 +98,11 @@ BandLaw::BandLaw(const BandSum& band, Frequency reference, const ParameterRange&
         worst_error_ = error_on_check_grid(band, reference, range);
         if (worst_error_ <= tolerance) return;
     }
-    throw NumericError("the average over the band around " + to_text(Frequency::from_hz(reference.hz() * std::exp(log_ref_))) +
+    throw NumericError("the average over the band around " +
+                       to_text(Frequency::from_hz(reference.hz() * std::exp(log_ref_))) +
                        " reaches a relative error of " + format_number(worst_error_, 2) + ", not the " +
-                       format_number(tolerance, 2) + " asked for: narrow the band, or the range of the index map");
+                       format_number(tolerance, 2) +
+                       " asked for: narrow the band, or the range of the index map");
 }
 
 void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange& range) {
@@ -103,7 +110,8 @@ void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange
     const Axis curvature(range.curvature_low, range.curvature_high);
     std::vector<std::array<int, 2>> powers;
     for (int j = 0; j <= (curvature.varies() ? degree_ : 0); ++j)
-        for (int i = 0; i <= (index.varies() ? degree_ - j : 0); ++i) powers.push_back({i, j});
+        for (int i = 0; i <= (index.varies() ? degree_ - j : 0); ++i)
+            powers.push_back({i, j});
     const auto x_fit = chebyshev_points(index, degree_ + 4);
     const auto y_fit = chebyshev_points(curvature, degree_ + 4);
     Matrix a(x_fit.size() * y_fit.size(), powers.size());
@@ -112,16 +120,20 @@ void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange
     for (const double y : y_fit)
         for (const double x : x_fit) {
             const SpectralParameters p{index.at(x), curvature.at(y)};
-            b[row] = std::log(exact_band_value(band, reference, p.index, p.curvature)) - log_brightness_ratio(p, log_ref_);
-            for (std::size_t k = 0; k < powers.size(); ++k) a(row, k) = std::pow(x, powers[k][0]) * std::pow(y, powers[k][1]);
+            b[row] = std::log(exact_band_value(band, reference, p.index, p.curvature)) -
+                     log_brightness_ratio(p, log_ref_);
+            for (std::size_t k = 0; k < powers.size(); ++k)
+                a(row, k) = std::pow(x, powers[k][0]) * std::pow(y, powers[k][1]);
             ++row;
         }
     const std::vector<double> solution = solve_least_squares(std::move(a), std::move(b));
     rows_.assign(static_cast<std::size_t>(powers.back()[1]) + 1, {});
-    for (std::size_t k = 0; k < powers.size(); ++k) rows_[static_cast<std::size_t>(powers[k][1])].push_back(solution[k]);
+    for (std::size_t k = 0; k < powers.size(); ++k)
+        rows_[static_cast<std::size_t>(powers[k][1])].push_back(solution[k]);
 }
 
-double BandLaw::error_on_check_grid(const BandSum& band, Frequency reference, const ParameterRange& range) const {
+double BandLaw::error_on_check_grid(const BandSum& band, Frequency reference,
+                                    const ParameterRange& range) const {
     const Axis index(range.index_low, range.index_high);
     const Axis curvature(range.curvature_low, range.curvature_high);
     double worst = 0;
@@ -143,14 +155,17 @@ void BandLaw::evaluate_block(const double* index, const double* curvature, doubl
     for (std::size_t j = rows_.size(); j-- > 0;) {
         const std::vector<double>& row = rows_[j];
         std::fill_n(inner.begin(), n, row.back());
-        for (std::size_t k = row.size() - 1; k-- > 0;) horner(inner.data(), x.data(), row[k], n);
+        for (std::size_t k = row.size() - 1; k-- > 0;)
+            horner(inner.data(), x.data(), row[k], n);
         add_product(out, y.data(), inner.data(), n);
     }
-    for (std::size_t i = 0; i < n; ++i) out[i] += (index[i] + curvature[i] * log_ref_) * log_ref_;
+    for (std::size_t i = 0; i < n; ++i)
+        out[i] += (index[i] + curvature[i] * log_ref_) * log_ref_;
     exponentiate(out, n);
 }
 
-void BandLaw::evaluate(std::span<const double> index, std::span<const double> curvature, std::span<double> out) const {
+void BandLaw::evaluate(std::span<const double> index, std::span<const double> curvature,
+                       std::span<double> out) const {
     FOREGLOW_EXPECTS(index.size() == out.size() && curvature.size() == out.size());
     for (std::size_t first = 0; first < out.size(); first += block)
         evaluate_block(index.data() + first, curvature.data() + first, out.data() + first,

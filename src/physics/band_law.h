@@ -15,17 +15,20 @@ struct ParameterRange {
     double curvature_low = 0, curvature_high = 0;
 };
 
-/// Returns M(beta, c)/A = sum over i of weight_i (nu_i/nu0)^(beta + c ln(nu_i/nu0)), the channel's number for a pixel of
-/// unit amplitude at nu0, by the sum itself: the oracle of BandLaw and of the spectral basis.
-[[nodiscard]] double exact_band_value(const BandSum& band, Frequency reference, double index, double curvature);
+/// Returns M(beta, c)/A = sum over i of weight_i (nu_i/nu0)^(beta + c ln(nu_i/nu0)), the channel's number for
+/// a pixel of unit amplitude at nu0, by the sum itself: the oracle of BandLaw and of the spectral basis.
+[[nodiscard]] double exact_band_value(const BandSum& band, Frequency reference, double index,
+                                      double curvature);
 
 /// A channel's number per unit amplitude as a fast function of index and curvature.
 ///
-/// M(beta, c) = exp(ln_ref (beta + c ln_ref)) exp(P(beta, c)): the law at the band's mean frequency times a small band correction,
-/// ln of which is a polynomial of total degree d over the range. For one frequency P is a constant and the law is exact.
+/// M(beta, c) = exp(ln_ref (beta + c ln_ref)) exp(P(beta, c)): the law at the band's mean frequency times a
+/// small band correction, ln of which is a polynomial of total degree d over the range. For one frequency P
+/// is a constant and the law is exact.
 class BandLaw {
   public:
-    /// Fits the correction by least squares on Chebyshev points and raises d until a grid between them agrees with the exact sum.
+    /// Fits the correction by least squares on Chebyshev points and raises d until a grid between them agrees
+    /// with the exact sum.
     /// @param tolerance  largest relative error allowed over the range, 1e-12 or more
     /// @throws NumericError when degree 12 does not reach the tolerance
     BandLaw(const BandSum& band, Frequency reference, const ParameterRange& range, double tolerance);
@@ -33,22 +36,25 @@ class BandLaw {
     /// Returns the largest relative error found over the range.
     [[nodiscard]] double worst_error() const { return worst_error_; }
 
-    /// Writes M(index[i], curvature[i]) of pixels of unit amplitude; NaN in either gives NaN. All spans [n], any n.
-    void evaluate(std::span<const double> index, std::span<const double> curvature, std::span<double> out) const;
+    /// Writes M(index[i], curvature[i]) of pixels of unit amplitude; NaN in either gives NaN. All spans [n],
+    /// any n.
+    void evaluate(std::span<const double> index, std::span<const double> curvature,
+                  std::span<double> out) const;
 
     /// Returns M(index, curvature) of one pixel of unit amplitude, as evaluate computes it.
     [[nodiscard]] double value(double index, double curvature) const;
 
   private:
     void fit(const BandSum& band, Frequency reference, const ParameterRange& range);
-    [[nodiscard]] double error_on_check_grid(const BandSum& band, Frequency reference, const ParameterRange& range) const;
+    [[nodiscard]] double error_on_check_grid(const BandSum& band, Frequency reference,
+                                             const ParameterRange& range) const;
     void evaluate_block(const double* index, const double* curvature, double* out, std::size_t n) const;
 
     int degree_ = 0;
-    double log_ref_ = 0;                    // ln(nu_mean/nu0)
+    double log_ref_ = 0;  // ln(nu_mean/nu0)
     double index_middle_ = 0, index_scale_ = 1;
     double curvature_middle_ = 0, curvature_scale_ = 1;
-    std::vector<std::vector<double>> rows_; // rows_[j][i]: coefficient of x^i y^j
+    std::vector<std::vector<double>> rows_;  // rows_[j][i]: coefficient of x^i y^j
     double worst_error_ = 0;
 };
 

@@ -47,7 +47,8 @@ std::string to_text(const BrightnessUnit& unit) {
 
 std::string list_of_brightness_units() {
     std::string list;
-    for (const Name& name : names) list += (list.empty() ? "" : ", ") + std::string(name.text);
+    for (const Name& name : names)
+        list += (list.empty() ? "" : ", ") + std::string(name.text);
     return list;
 }
 
@@ -61,8 +62,10 @@ double rayleigh_jeans_per_thermodynamic(Frequency frequency) {
 
 double rayleigh_jeans_per_unit(const BrightnessUnit& unit, Frequency frequency, double pixel_area_sr) {
     switch (unit.kind) {
-        case Kind::RayleighJeans: return unit.scale;
-        case Kind::Thermodynamic: return unit.scale * rayleigh_jeans_per_thermodynamic(frequency);
+        case Kind::RayleighJeans:
+            return unit.scale;
+        case Kind::Thermodynamic:
+            return unit.scale * rayleigh_jeans_per_thermodynamic(frequency);
         case Kind::MegajanskyPerSteradian:
             return unit.scale * 1e6 * constants::jansky * rayleigh_jeans_per_intensity(frequency);
         case Kind::JanskyPerPixel:
@@ -77,8 +80,9 @@ Brightness parse_brightness(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     const auto unit = find_brightness_unit(quantity.unit);
     if (!unit)
-        throw InputError((quantity.unit.empty() ? "has no unit" : "has the unknown unit '" + quantity.unit + "'") +
-                         ": use one of " + list_of_brightness_units());
+        throw InputError(
+            (quantity.unit.empty() ? "has no unit" : "has the unknown unit '" + quantity.unit + "'") +
+            ": use one of " + list_of_brightness_units());
     return {quantity.value, *unit};
 }
 

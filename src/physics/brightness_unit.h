@@ -28,13 +28,17 @@ struct BrightnessUnit {
 /// Returns the units' names, for messages: "K_RJ, mK_RJ, ...".
 [[nodiscard]] std::string list_of_brightness_units();
 
-/// Returns d(K_CMB)/d(K_RJ)^-1, the Rayleigh-Jeans temperature of 1 K_CMB: x^2 e^x/(e^x - 1)^2, x = h nu/(k T_CMB).
+/// Returns d(K_CMB)/d(K_RJ)^-1, the Rayleigh-Jeans temperature of 1 K_CMB: x^2 e^x/(e^x - 1)^2, x = h nu/(k
+/// T_CMB).
 ///
-/// The linearised unit at T_CMB = 2.7255 K (Planck 2013 IX, eq. 8). Relative error below 1e-14 from 1 Hz to 10 THz.
+/// The linearised unit at T_CMB = 2.7255 K (Planck 2013 IX, eq. 8). Relative error below 1e-14 from 1 Hz to
+/// 10 THz.
 [[nodiscard]] double rayleigh_jeans_per_thermodynamic(Frequency frequency);
 
-/// Returns the K_RJ of one unit at one frequency: T_RJ = c^2 I/(2 k nu^2); Jy/pixel needs the pixel's area [sr].
-[[nodiscard]] double rayleigh_jeans_per_unit(const BrightnessUnit& unit, Frequency frequency, double pixel_area_sr);
+/// Returns the K_RJ of one unit at one frequency: T_RJ = c^2 I/(2 k nu^2); Jy/pixel needs the pixel's area
+/// [sr].
+[[nodiscard]] double rayleigh_jeans_per_unit(const BrightnessUnit& unit, Frequency frequency,
+                                             double pixel_area_sr);
 
 /// A brightness such as "8.9 K_RJ".
 struct Brightness {

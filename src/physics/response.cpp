@@ -10,11 +10,13 @@
 namespace foreglow {
 namespace {
 
-// Pieces are cut where their ends differ by more than this ratio, which bounds the points that one piece needs.
+// Pieces are cut where their ends differ by more than this ratio, which bounds the points that one piece
+// needs.
 constexpr double widest_ratio = 1.35;
 
 // The integrand has its nearest singularity at nu = 0; n points leave rho^(-2n) with
-// rho = (sqrt b + sqrt a)/(sqrt b - sqrt a) (Trefethen 2008, "Is Gauss quadrature better than Clenshaw-Curtis?", thm 4.5).
+// rho = (sqrt b + sqrt a)/(sqrt b - sqrt a) (Trefethen 2008, "Is Gauss quadrature better than
+// Clenshaw-Curtis?", thm 4.5).
 int points_for(double ratio) {
     const double root = std::sqrt(ratio);
     const double rho = (root + 1) / std::max(root - 1, 1e-300);
@@ -25,9 +27,12 @@ int points_for(double ratio) {
 double weight_power(double hz, double scale, ResponseWeights weights) {
     const double x = hz / scale;
     switch (weights) {
-        case ResponseWeights::Temperature: return 1.0;
-        case ResponseWeights::Photon: return x;
-        case ResponseWeights::Radiance: return x * x;
+        case ResponseWeights::Temperature:
+            return 1.0;
+        case ResponseWeights::Photon:
+            return x;
+        case ResponseWeights::Radiance:
+            return x * x;
     }
     return 1.0;
 }
@@ -60,7 +65,8 @@ Response Response::table(std::vector<ResponseRow> rows) {
         FOREGLOW_EXPECTS(rows[i].transmission >= 0);
         if (i == 0) continue;
         FOREGLOW_EXPECTS(rows[i].frequency >= rows[i - 1].frequency);
-        passes = passes || (rows[i].frequency > rows[i - 1].frequency && rows[i].transmission + rows[i - 1].transmission > 0);
+        passes = passes || (rows[i].frequency > rows[i - 1].frequency &&
+                            rows[i].transmission + rows[i - 1].transmission > 0);
     }
     FOREGLOW_EXPECTS(passes);
     return Response(std::move(rows));
@@ -76,7 +82,8 @@ std::vector<Response::Node> Response::nodes(ResponseWeights weights) const {
         const double t_low = rows_[i - 1].transmission;
         const double t_high = rows_[i].transmission;
         if (!(high > low) || (t_low == 0 && t_high == 0)) continue;
-        const int cuts = std::max(1, static_cast<int>(std::ceil(std::log(high / low) / std::log(widest_ratio))));
+        const int cuts =
+            std::max(1, static_cast<int>(std::ceil(std::log(high / low) / std::log(widest_ratio))));
         const double step_ratio = std::pow(high / low, 1.0 / cuts);
         const QuadratureRule rule = make_gauss_legendre(points_for(step_ratio));
         for (int cut = 0; cut < cuts; ++cut) {
@@ -85,7 +92,8 @@ std::vector<Response::Node> Response::nodes(ResponseWeights weights) const {
             for (std::size_t j = 0; j < rule.nodes.size(); ++j) {
                 const double hz = 0.5 * ((a + b) + (b - a) * rule.nodes[j]);
                 const double tau = t_low + (t_high - t_low) * ((hz - low) / (high - low));
-                all.push_back({hz, 0.5 * (b - a) / scale * rule.weights[j] * tau * weight_power(hz, scale, weights)});
+                all.push_back(
+                    {hz, 0.5 * (b - a) / scale * rule.weights[j] * tau * weight_power(hz, scale, weights)});
             }
         }
     }
@@ -105,7 +113,8 @@ Frequency Response::mean_frequency(ResponseWeights weights) const {
 BandSum make_band_sum(const Response& response, ResponseWeights weights, const Calibration& calibration) {
     const auto nodes = response.nodes(weights);
     double denominator = 0;
-    for (const auto& node : nodes) denominator += node.weight * calibration_temperature(calibration, node.hz);
+    for (const auto& node : nodes)
+        denominator += node.weight * calibration_temperature(calibration, node.hz);
     BandSum sum;
     for (const auto& node : nodes) {
         sum.hz.push_back(node.hz);

@@ -16,7 +16,8 @@ struct ResponseRow {
     double transmission = 0;
 };
 
-/// What a channel lets through: one frequency, or a transmission tau(nu) that is linear between rows and zero outside them.
+/// What a channel lets through: one frequency, or a transmission tau(nu) that is linear between rows and zero
+/// outside them.
 class Response {
   public:
     /// A delta function.
@@ -25,7 +26,8 @@ class Response {
     /// @throws ContractError unless 0 < low < high
     [[nodiscard]] static Response flat(Frequency low, Frequency high);
     /// A table; equal neighbouring frequencies are steps.
-    /// @throws ContractError unless frequencies are above zero and never fall, and some transmission on a piece of width is above zero
+    /// @throws ContractError unless frequencies are above zero and never fall, and some transmission on a
+    /// piece of width is above zero
     [[nodiscard]] static Response table(std::vector<ResponseRow> rows);
 
     [[nodiscard]] bool is_delta() const { return rows_.size() == 1; }
@@ -38,7 +40,8 @@ class Response {
         double hz = 0;
         double weight = 0;  ///< of w(nu) dnu [any scale]
     };
-    /// Returns Gauss-Legendre nodes on each linear piece, dense enough that integrals of laws nu^p, |p| < 8, are good to 1e-13.
+    /// Returns Gauss-Legendre nodes on each linear piece, dense enough that integrals of laws nu^p, |p| < 8,
+    /// are good to 1e-13.
     [[nodiscard]] std::vector<Node> nodes(ResponseWeights weights) const;
 
   private:
@@ -55,14 +58,16 @@ struct BandSum {
 /// How a channel's number is calibrated.
 struct Calibration {
     BrightnessUnit unit;
-    Frequency reference;               ///< of the calibration source's flux law (MJy/sr and Jy/pixel)
-    double reference_flux_index = 0;   ///< I of that source ~ (nu/reference)^index
-    double pixel_area_sr = 0;          ///< needed for Jy/pixel
+    Frequency reference;              ///< of the calibration source's flux law (MJy/sr and Jy/pixel)
+    double reference_flux_index = 0;  ///< I of that source ~ (nu/reference)^index
+    double pixel_area_sr = 0;         ///< needed for Jy/pixel
 };
 
-/// Makes M = integral w T dnu / integral w t_cal dnu, t_cal the brightness temperature of one unit of the calibration source:
-/// 1 for K_RJ, x^2 e^x/(e^x-1)^2 for K_CMB, c^2 I/(2 k nu^2) of 1 MJy/sr (nu/reference)^reference_flux_index (Planck 2013 IX, sec. 2).
+/// Makes M = integral w T dnu / integral w t_cal dnu, t_cal the brightness temperature of one unit of the
+/// calibration source: 1 for K_RJ, x^2 e^x/(e^x-1)^2 for K_CMB, c^2 I/(2 k nu^2) of 1 MJy/sr
+/// (nu/reference)^reference_flux_index (Planck 2013 IX, sec. 2).
 /// @return relative error of the sum below 1e-12 for laws T ~ nu^p, |p| < 6
-[[nodiscard]] BandSum make_band_sum(const Response& response, ResponseWeights weights, const Calibration& calibration);
+[[nodiscard]] BandSum make_band_sum(const Response& response, ResponseWeights weights,
+                                    const Calibration& calibration);
 
 }  // namespace foreglow

@@ -41,7 +41,8 @@ double weighted_mean(std::span<const double> values, const HealpixGrid::Stencil&
     return weight > 0 ? sum / weight : undefined_pixel;
 }
 
-void undefine_near_filled(const SkyMap& filled, const HealpixGrid& to_grid, Frame to_frame, std::span<double> out) {
+void undefine_near_filled(const SkyMap& filled, const HealpixGrid& to_grid, Frame to_frame,
+                          std::span<double> out) {
     std::vector<double> share(out.size());
     interpolate_pixels(filled, to_grid, to_frame, 0, share);
     for (std::size_t i = 0; i < out.size(); ++i)
@@ -52,7 +53,8 @@ void undefine_near_filled(const SkyMap& filled, const HealpixGrid& to_grid, Fram
 std::vector<double> mark_undefined(std::span<const double> values) {
     if (count_undefined(values) == 0) return {};
     std::vector<double> filled(values.size());
-    for (std::size_t i = 0; i < values.size(); ++i) filled[i] = is_defined(values[i]) ? 0.0 : 1.0;
+    for (std::size_t i = 0; i < values.size(); ++i)
+        filled[i] = is_defined(values[i]) ? 0.0 : 1.0;
     return filled;
 }
 
@@ -157,12 +159,14 @@ AnalysedStokes analyse_filled(const StokesMaps& maps, int lmax, double tolerance
     return out;
 }
 
-SkyMap harmonic_regrid(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame, int lmax, double tolerance) {
+SkyMap harmonic_regrid(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame, int lmax,
+                       double tolerance) {
     AnalysedMap analysed = analyse_filled(map, lmax, tolerance);
     rotate_alm(analysed.alm, map.frame, to_frame);
     SkyMap out{to_grid, to_frame, map.unit, synthesize(analysed.alm, to_grid)};
     if (!analysed.filled.empty())
-        undefine_near_filled({map.grid, map.frame, "", std::move(analysed.filled)}, to_grid, to_frame, out.values);
+        undefine_near_filled({map.grid, map.frame, "", std::move(analysed.filled)}, to_grid, to_frame,
+                             out.values);
     return out;
 }
 

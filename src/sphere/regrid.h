@@ -35,7 +35,8 @@ void interpolate_pixels(const SkyMap& map, const HealpixGrid& to_grid, Frame to_
 /// A map's a_lm, holes filled first (fill.h), and where the holes were.
 struct AnalysedMap {
     Alm alm;
-    std::vector<double> filled;  ///< [npix], 1 where the map was undefined and else 0; empty where all was defined
+    std::vector<double>
+        filled;  ///< [npix], 1 where the map was undefined and else 0; empty where all was defined
     ConvergenceReport convergence;
 };
 struct AnalysedStokes {
@@ -44,8 +45,8 @@ struct AnalysedStokes {
     ConvergenceReport convergence;
 };
 
-/// Returns min(lmax, 2.5 nside): what lies above is aliased by the pixels beyond recovery (measured: the refinement of
-/// analyse_converged contracts by 0.3 a step there, and not at all at 3 nside).
+/// Returns min(lmax, 2.5 nside): what lies above is aliased by the pixels beyond recovery (measured: the
+/// refinement of analyse_converged contracts by 0.3 a step there, and not at all at 3 nside).
 [[nodiscard]] int trusted_lmax(const HealpixGrid& grid, int lmax);
 
 /// Fills a map and analyses it up to trusted_lmax.
@@ -59,12 +60,12 @@ inline constexpr double largest_filled_share = 0.01;
 
 /// Brings a map to another grid and frame through its a_lm (analyse_filled).
 ///
-/// A pixel of the result is undefined where the bilinear stencil at its centre takes more than largest_filled_share of its
-/// weight from filled ones.
+/// A pixel of the result is undefined where the bilinear stencil at its centre takes more than
+/// largest_filled_share of its weight from filled ones.
 /// @throws DataError where no pixel is defined
 [[nodiscard]] SkyMap harmonic_regrid(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame, int lmax,
                                      double tolerance = 1e-6);
-[[nodiscard]] StokesMaps harmonic_regrid(const StokesMaps& maps, const HealpixGrid& to_grid, Frame to_frame, int lmax,
-                                         double tolerance = 1e-6);
+[[nodiscard]] StokesMaps harmonic_regrid(const StokesMaps& maps, const HealpixGrid& to_grid, Frame to_frame,
+                                         int lmax, double tolerance = 1e-6);
 
 }  // namespace foreglow

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
-// What a stranger would write first: a ratio, a study of one channel, and the sentence that a wrong study gives.
+// What a stranger would write first: a ratio, a study of one channel, and the sentence that a wrong study
+// gives.
 #include <api/foreglow.h>
 #include <api/foreglow_c.h>
 
@@ -14,7 +15,8 @@ int main() {
     if (std::abs(ratio - std::pow(2.0, -2.5)) > 1e-15) return 1;
     if (foreglow_brightness_ratio(816e6, 408e6, -2.5, 0) != ratio) return 2;
 
-    std::ofstream("study.toml") << "model = \"disc-and-loops\"\nnside = 16\n[[channel]]\nname = \"a\"\nfrequency = \"30 GHz\"\n";
+    std::ofstream("study.toml")
+        << "model = \"disc-and-loops\"\nnside = 16\n[[channel]]\nname = \"a\"\nfrequency = \"30 GHz\"\n";
     const foreglow::api::RunResult run = foreglow::api::make_maps("study.toml");
     if (!std::filesystem::exists(run.out / "maps" / "a.fits")) return 3;
 

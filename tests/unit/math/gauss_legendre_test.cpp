@@ -25,10 +25,12 @@ TEST(GaussLegendre, AgreesWithTheHandbookForFivePoints) {
 TEST(GaussLegendre, IsExactUpToDegreeTwiceThePointsLessOne) {
     for (const int points : {1, 2, 3, 8, 31, 64, 256}) {
         const QuadratureRule rule = make_gauss_legendre(points);
-        EXPECT_NEAR(std::accumulate(rule.weights.begin(), rule.weights.end(), 0.0), 2.0, 4e-15);  // a few roundings of 2
+        EXPECT_NEAR(std::accumulate(rule.weights.begin(), rule.weights.end(), 0.0), 2.0,
+                    4e-15);  // a few roundings of 2
         const int even = 2 * points - 2;
         double sum = 0;
-        for (std::size_t i = 0; i < rule.nodes.size(); ++i) sum += rule.weights[i] * std::pow(rule.nodes[i], even);
+        for (std::size_t i = 0; i < rule.nodes.size(); ++i)
+            sum += rule.weights[i] * std::pow(rule.nodes[i], even);
         EXPECT_NEAR(sum * (even + 1), 2.0, 2e-13) << points;  // node errors of 1e-16 times degree 510
     }
 }

@@ -16,7 +16,8 @@ TEST(VectorExp, AgreesWithTheLibraryOverItsRange) {
     for (int i = -69900; i <= 69900; ++i) {
         const double x = 0.01 * i + 0.003;
         const long double exact = std::exp(static_cast<long double>(x));
-        worst = std::max(worst, static_cast<double>(std::abs((static_cast<long double>(vector_exp(x)) - exact) / exact)));
+        worst = std::max(
+            worst, static_cast<double>(std::abs((static_cast<long double>(vector_exp(x)) - exact) / exact)));
     }
     EXPECT_LE(worst, 4e-16);  // two roundings of 1.1e-16 and one of r
     EXPECT_EQ(vector_exp(0.0), 1.0);

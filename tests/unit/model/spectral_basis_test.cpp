@@ -40,16 +40,20 @@ TEST(SpectralBasis, KeepsItsToleranceBetweenItsSamplesWithFewComponents) {
     const Frequency nu0 = Frequency::from_ghz(0.408);
     struct Case {
         double low, high, width, tolerance;
-        std::size_t most;  // components: 8, 9, 10 were measured for 20-350 GHz, 13 to 15 for 41-408 MHz; one more for bands
+        std::size_t most;  // components: 8, 9, 10 were measured for 20-350 GHz, 13 to 15 for 41-408 MHz; one
+                           // more for bands
     };
-    for (const Case& one : {Case{20, 350, 0.2, 1e-4, 9}, {20, 350, 0.2, 1e-5, 10}, {20, 350, 0.2, 1e-6, 11},
+    for (const Case& one : {Case{20, 350, 0.2, 1e-4, 9},
+                            {20, 350, 0.2, 1e-5, 10},
+                            {20, 350, 0.2, 1e-6, 11},
                             {0.041, 0.408, 0, 1e-5, 15}}) {
         const auto channels = log_channels(one.low, one.high, 40, one.width);
         const SpectralBasis basis = make_spectral_basis(channels, nu0, wide, one.tolerance);
         EXPECT_FALSE(basis.is_exact);
         EXPECT_LE(basis.components.size(), one.most);
         EXPECT_LE(basis.worst_error, one.tolerance);
-        EXPECT_LE(worst_between(basis, channels, nu0), 1.5 * one.tolerance);  // other points than the basis checked itself on
+        EXPECT_LE(worst_between(basis, channels, nu0),
+                  1.5 * one.tolerance);  // other points than the basis checked itself on
     }
 }
 
@@ -63,7 +67,8 @@ TEST(SpectralBasis, UsesTheChannelsThemselvesWhenTheyAreFew) {
 
 TEST(SpectralBasis, NeedsOneComponentForAUniformSpectrum) {
     const auto channels = log_channels(20, 350, 12, 0.2);
-    const SpectralBasis basis = make_spectral_basis(channels, Frequency::from_ghz(30), {-3, -3, -0.02, -0.02}, 1e-9);
+    const SpectralBasis basis =
+        make_spectral_basis(channels, Frequency::from_ghz(30), {-3, -3, -0.02, -0.02}, 1e-9);
     EXPECT_EQ(basis.components.size(), 1U);
 }
 

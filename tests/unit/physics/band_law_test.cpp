@@ -12,9 +12,11 @@ namespace {
 constexpr ParameterRange wide{-3.4, -2.4, -0.15, 0.05};
 
 BandSum band(double low_ghz, double high_ghz) {
-    const Response response = low_ghz == high_ghz ? Response::at(Frequency::from_ghz(low_ghz))
-                                                  : Response::flat(Frequency::from_ghz(low_ghz), Frequency::from_ghz(high_ghz));
-    return make_band_sum(response, ResponseWeights::Radiance, {*find_brightness_unit("uK_CMB"), Frequency::from_ghz(30), 0, 0});
+    const Response response =
+        low_ghz == high_ghz ? Response::at(Frequency::from_ghz(low_ghz))
+                            : Response::flat(Frequency::from_ghz(low_ghz), Frequency::from_ghz(high_ghz));
+    return make_band_sum(response, ResponseWeights::Radiance,
+                         {*find_brightness_unit("uK_CMB"), Frequency::from_ghz(30), 0, 0});
 }
 
 TEST(BandLaw, AgreesWithTheExactSumBetweenItsPoints) {
@@ -27,7 +29,8 @@ TEST(BandLaw, AgreesWithTheExactSumBetweenItsPoints) {
             for (double beta = -3.397; beta < -2.4; beta += 0.0371)
                 for (double c = -0.149; c < 0.05; c += 0.0173) {
                     const double exact = exact_band_value(sum, nu0, beta, c);
-                    EXPECT_NEAR(law.value(beta, c) / exact, 1, 1.5 * tolerance + 1e-14);  // the check grid is not this one
+                    EXPECT_NEAR(law.value(beta, c) / exact, 1,
+                                1.5 * tolerance + 1e-14);  // the check grid is not this one
                 }
         }
 }
@@ -54,7 +57,8 @@ TEST(BandLaw, WorksOnManyPixelsAndKeepsUndefinedOnes) {
     const BandLaw law(band(27, 33), nu0, wide, 1e-9);
     const std::size_t n = 1300;  // more than one block, with a rest
     std::vector<double> index(n), curvature(n, -0.02), out(n);
-    for (std::size_t i = 0; i < n; ++i) index[i] = -3.3 + 0.0005 * static_cast<double>(i);
+    for (std::size_t i = 0; i < n; ++i)
+        index[i] = -3.3 + 0.0005 * static_cast<double>(i);
     index[700] = curvature[5] = std::numeric_limits<double>::quiet_NaN();
     law.evaluate(index, curvature, out);
     for (std::size_t i = 0; i < n; ++i) {

@@ -14,19 +14,19 @@ struct UnitCase {
 };
 
 // From outside: Planck 2013 IX definitions evaluated by mpmath with CODATA 2018 and T_CMB = 2.7255 K;
-// 100, 143, 217 GHz by astropy.units 5.2 (thermodynamic_temperature and brightness_temperature, T_cmb = 2.7255 K).
-constexpr UnitCase cases[] = {{0.408, 1.000004301233, 0.005114370644496},
-                              {30, 1.023472292418, 27.65122537033},
-                              {70, 1.133198953383, 150.5455603496},
-                              {100, 1.286624230529, 307.2358374481},
-                              {143, 1.653629089097, 628.2665639976},
-                              {217, 2.991333766166, 1446.742834959},
-                              {353, 12.90549557014, 3828.435046857}};
+// 100, 143, 217 GHz by astropy.units 5.2 (thermodynamic_temperature and brightness_temperature, T_cmb
+// = 2.7255 K).
+constexpr UnitCase cases[] = {
+    {0.408, 1.000004301233, 0.005114370644496}, {30, 1.023472292418, 27.65122537033},
+    {70, 1.133198953383, 150.5455603496},       {100, 1.286624230529, 307.2358374481},
+    {143, 1.653629089097, 628.2665639976},      {217, 2.991333766166, 1446.742834959},
+    {353, 12.90549557014, 3828.435046857}};
 
 TEST(BrightnessUnit, AgreesWithPublishedFactors) {
     for (const UnitCase& one : cases) {
         const Frequency nu = Frequency::from_ghz(one.ghz);
-        EXPECT_NEAR(1 / rayleigh_jeans_per_thermodynamic(nu) / one.kcmb_per_krj, 1.0, 1e-12) << one.ghz;  // 13 digits were printed
+        EXPECT_NEAR(1 / rayleigh_jeans_per_thermodynamic(nu) / one.kcmb_per_krj, 1.0, 1e-12)
+            << one.ghz;  // 13 digits were printed
         const BrightnessUnit mjysr = *find_brightness_unit("MJy/sr");
         EXPECT_NEAR(1 / rayleigh_jeans_per_unit(mjysr, nu, 0) / one.mjysr_per_krj, 1.0, 1e-12) << one.ghz;
     }
@@ -52,7 +52,8 @@ TEST(BrightnessUnit, JanskyPerPixelIsMegajanskyPerSteradianTimesThePixel) {
 TEST(BrightnessUnit, TextAndUnitGoBothWays) {
     for (const char* text : {"K_RJ", "mK_RJ", "uK_RJ", "K_CMB", "mK_CMB", "uK_CMB", "MJy/sr", "Jy/pixel"})
         EXPECT_EQ(to_text(*find_brightness_unit(text)), text);
-    for (const char* text : {"K", "mK", "uK", "unknown", "", "k_rj", "MJy"}) EXPECT_FALSE(find_brightness_unit(text)) << text;
+    for (const char* text : {"K", "mK", "uK", "unknown", "", "k_rj", "MJy"})
+        EXPECT_FALSE(find_brightness_unit(text)) << text;
     EXPECT_NEAR(find_brightness_unit("uK_CMB")->scale, 1e-6, 0);
 }
 

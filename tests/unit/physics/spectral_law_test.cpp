@@ -9,13 +9,14 @@ namespace foreglow {
 namespace {
 
 TEST(SpectralLaw, SignTableHolds) {
-    // Rybicki & Lightman eq. 6.22a: s = 1 - 2 alpha; flux indices of -0.75 to -0.5 are -2.75 to -2.5 in brightness
-    // temperature, from electrons of slope 2.5 to 2 (common practice).
+    // Rybicki & Lightman eq. 6.22a: s = 1 - 2 alpha; flux indices of -0.75 to -0.5 are -2.75 to -2.5 in
+    // brightness temperature, from electrons of slope 2.5 to 2 (common practice).
     EXPECT_DOUBLE_EQ(flux_index(-2.75), -0.75);
     EXPECT_DOUBLE_EQ(flux_index(-2.5), -0.5);
     EXPECT_DOUBLE_EQ(electron_slope(-2.75), 2.5);
     EXPECT_DOUBLE_EQ(electron_slope(-2.5), 2.0);
-    for (const double beta : {-3.1, -2.7, -2.5}) EXPECT_NEAR(electron_slope(beta), 1 - 2 * flux_index(beta), 1e-15);
+    for (const double beta : {-3.1, -2.7, -2.5})
+        EXPECT_NEAR(electron_slope(beta), 1 - 2 * flux_index(beta), 1e-15);
 }
 
 TEST(SpectralLaw, LocalIndexIsTheDerivative) {
@@ -23,7 +24,8 @@ TEST(SpectralLaw, LocalIndexIsTheDerivative) {
     for (const double x : {-3.0, -0.1, 0.0, 2.5}) {
         const double h = 1e-4;
         const double slope = (log_brightness_ratio(p, x + h) - log_brightness_ratio(p, x - h)) / (2 * h);
-        EXPECT_NEAR(slope, local_index(p, x), 1e-11);  // central differences are exact for a parabola: rounding/h
+        EXPECT_NEAR(slope, local_index(p, x),
+                    1e-11);  // central differences are exact for a parabola: rounding/h
     }
 }
 

@@ -7,8 +7,8 @@
 #include <limits>
 
 #include "base/error.h"
+#include "base/vector_width.h"
 #include "io/fits_sentinel.h"
-#include "io/fits_vector_width.h"
 
 namespace foreglow {
 namespace {
@@ -16,7 +16,7 @@ namespace {
 constexpr double undefined = std::numeric_limits<double>::quiet_NaN();
 
 template <class Bits>
-FOREGLOW_FITS_INLINE Bits load_big_endian(const std::byte* at) {
+FOREGLOW_INLINE Bits load_big_endian(const std::byte* at) {
     Bits bits = 0;
     std::memcpy(&bits, at, sizeof bits);
     if constexpr (sizeof bits == 2) return __builtin_bswap16(bits);
@@ -27,8 +27,8 @@ FOREGLOW_FITS_INLINE Bits load_big_endian(const std::byte* at) {
 
 /// Calls take(cell bytes, index) for each cell, row by row.
 template <class Take>
-FOREGLOW_FITS_INLINE void for_each_cell(const std::byte* cells, std::int64_t stride, std::int64_t per_row,
-                                        std::int64_t width, std::size_t count, const Take& take) {
+FOREGLOW_INLINE void for_each_cell(const std::byte* cells, std::int64_t stride, std::int64_t per_row,
+                                   std::int64_t width, std::size_t count, const Take& take) {
     const auto rows = static_cast<std::int64_t>(count) / per_row;
     if (per_row == 1) {
         for (std::int64_t row = 0; row < rows; ++row)
@@ -74,7 +74,7 @@ Sentinels no_sentinels() {
     return {none, none};
 }
 
-FOREGLOW_FITS_INLINE double defined_or_nan(const Sentinels& sentinels, double value) {
+FOREGLOW_INLINE double defined_or_nan(const Sentinels& sentinels, double value) {
     constexpr double largest = std::numeric_limits<double>::max();
     const bool is_bad = (value >= sentinels.unseen.low) & (value <= sentinels.unseen.high);
     const bool is_other = (value >= sentinels.bad.low) & (value <= sentinels.bad.high);
@@ -82,8 +82,7 @@ FOREGLOW_FITS_INLINE double defined_or_nan(const Sentinels& sentinels, double va
     return (is_bad | is_other | is_infinite) ? undefined : value;
 }
 
-FOREGLOW_FITS_WIDE void scale_and_mark(double scale, double zero, Sentinels sentinels,
-                                       std::span<double> values) {
+FOREGLOW_WIDE void scale_and_mark(double scale, double zero, Sentinels sentinels, std::span<double> values) {
     // FITS scales what the bytes say, so a sentinel written by value is looked for afterwards.
     for (double& value : values)
         value = defined_or_nan(sentinels, zero + scale * value);
@@ -91,8 +90,8 @@ FOREGLOW_FITS_WIDE void scale_and_mark(double scale, double zero, Sentinels sent
 
 /// Reals are the common case: one pass over them.
 template <class Real, class Bits>
-FOREGLOW_FITS_INLINE void decode_real(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
-                                      std::int64_t per_row, std::span<double> out) {
+FOREGLOW_INLINE void decode_real(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                 std::int64_t per_row, std::span<double> out) {
     double* const to = out.data();
     for_each_cell(
         cells, stride, per_row, sizeof(Real), out.size(),
@@ -101,12 +100,12 @@ FOREGLOW_FITS_INLINE void decode_real(Sentinels sentinels, const std::byte* cell
                                    static_cast<double>(std::bit_cast<Real>(load_big_endian<Bits>(at))));
         });
 }
-FOREGLOW_FITS_WIDE void decode_float(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
-                                     std::int64_t per_row, std::span<double> out) {
+FOREGLOW_WIDE void decode_float(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                std::int64_t per_row, std::span<double> out) {
     decode_real<float, std::uint32_t>(sentinels, cells, stride, per_row, out);
 }
-FOREGLOW_FITS_WIDE void decode_double(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
-                                      std::int64_t per_row, std::span<double> out) {
+FOREGLOW_WIDE void decode_double(Sentinels sentinels, const std::byte* cells, std::int64_t stride,
+                                 std::int64_t per_row, std::span<double> out) {
     decode_real<double, std::uint64_t>(sentinels, cells, stride, per_row, out);
 }
 

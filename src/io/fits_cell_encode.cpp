@@ -7,22 +7,22 @@
 #include <limits>
 #include <type_traits>
 
+#include "base/vector_width.h"
 #include "io/fits_sentinel.h"
-#include "io/fits_vector_width.h"
 
 namespace foreglow {
 namespace {
 
-FOREGLOW_FITS_INLINE std::uint32_t big_endian(std::uint32_t bits) {
+FOREGLOW_INLINE std::uint32_t big_endian(std::uint32_t bits) {
     return __builtin_bswap32(bits);
 }
-FOREGLOW_FITS_INLINE std::uint64_t big_endian(std::uint64_t bits) {
+FOREGLOW_INLINE std::uint64_t big_endian(std::uint64_t bits) {
     return __builtin_bswap64(bits);
 }
 
 /// Turns values into big-endian cells of type Cell, NaN into BAD_DATA.
 template <class Cell, class Value>
-FOREGLOW_FITS_INLINE CellTally encode_as(std::span<const Value> values, std::byte* out) {
+FOREGLOW_INLINE CellTally encode_as(std::span<const Value> values, std::byte* out) {
     using Bits = std::conditional_t<sizeof(Cell) == 4, std::uint32_t, std::uint64_t>;
     constexpr auto bad = static_cast<Cell>(fits_bad_data);
     std::uint64_t words = 0;
@@ -42,16 +42,16 @@ FOREGLOW_FITS_INLINE CellTally encode_as(std::span<const Value> values, std::byt
     return {words, infinite != 0};
 }
 
-FOREGLOW_FITS_WIDE CellTally encode_double_as_double(std::span<const double> values, std::byte* out) {
+FOREGLOW_WIDE CellTally encode_double_as_double(std::span<const double> values, std::byte* out) {
     return encode_as<double>(values, out);
 }
-FOREGLOW_FITS_WIDE CellTally encode_double_as_float(std::span<const double> values, std::byte* out) {
+FOREGLOW_WIDE CellTally encode_double_as_float(std::span<const double> values, std::byte* out) {
     return encode_as<float>(values, out);
 }
-FOREGLOW_FITS_WIDE CellTally encode_float_as_double(std::span<const float> values, std::byte* out) {
+FOREGLOW_WIDE CellTally encode_float_as_double(std::span<const float> values, std::byte* out) {
     return encode_as<double>(values, out);
 }
-FOREGLOW_FITS_WIDE CellTally encode_float_as_float(std::span<const float> values, std::byte* out) {
+FOREGLOW_WIDE CellTally encode_float_as_float(std::span<const float> values, std::byte* out) {
     return encode_as<float>(values, out);
 }
 

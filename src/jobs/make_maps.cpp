@@ -15,6 +15,7 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
+constexpr std::size_t batch_size = 8;    // channels that one thread does for a piece
 constexpr std::size_t group_size = 128;  // files open at once stay well below the usual limit of 1024
 constexpr std::size_t most_previews = 3;
 constexpr double single_rounding = 0x1p-24;  // largest relative error of a float32
@@ -91,10 +92,30 @@ void finish_all(std::vector<OpenMap>& maps, MakeResult& result) {
         if (map.sampler) result.previews.push_back(map.sampler->take());
 }
 
+/// The columns of one piece.
+class PieceBuffer {
+  public:
+    PieceBuffer(std::size_t columns, std::size_t size) : values_(columns * size), count_(columns) {
+        for (std::size_t c = 0; c < columns; ++c)
+            columns_[c] = std::span(values_).subspan(c * size, size);
+    }
+    [[nodiscard]] std::span<const std::span<double>> columns() const { return {columns_.data(), count_}; }
+
+  private:
+    std::vector<double> values_;
+    std::array<std::span<double>, 3> columns_;
+    std::size_t count_;
+};
+
 class PixelMaps {
   public:
     PixelMaps(const Plan& plan, const SkyModel& sky, std::vector<std::size_t> channels)
-        : plan_(plan), sky_(sky), channels_(std::move(channels)), route_(make_route()) {}
+        : plan_(plan),
+          sky_(sky),
+          channels_(std::move(channels)),
+          precision_(plan.study.precision == MapPrecision::Float32 ? ExpPrecision::Single
+                                                                   : ExpPrecision::Double),
+          route_(make_route()) {}
 
     void write(OutputFolder& folder, Progress& progress, MakeResult& result) {
         for (std::size_t k = 0; k < channels_.size(); ++k) {
@@ -120,38 +141,38 @@ class PixelMaps {
         std::vector<BandSum> bands;
         for (const std::size_t c : channels_)
             bands.push_back(plan_.channels[c].band);
-        // Ten times below what was asked for, and never worse than what float32 keeps: one more term costs
-        // next to nothing.
-        const double tolerance = std::clamp(0.1 * plan_.study.accuracy, 1e-11, 5e-8);
+        // Ten times below what was asked for, and never worse than what the files keep: one more term costs
+        // little.
+        const double keep = precision_ == ExpPrecision::Single ? 1e-6 : 5e-8;
+        const double tolerance = std::clamp(0.1 * plan_.study.accuracy, 1e-11, keep);
         return {sky_, bands, plan_.study.polarized, tolerance};
     }
 
-    // Calls work(channel's place, piece, columns, statistics of the piece) for all channels of a group and
-    // all pieces, strip by strip.
+    // Calls work(channel's place, piece, columns, statistics) for all channels of a group and all pieces,
+    // strip by strip. A thread does one piece for several channels, so that the piece's sky stays in the
+    // cache.
     template <class Work, class AfterStrip>
     void for_each_piece(std::size_t first, std::size_t count, const Work& work,
                         const AfterStrip& after_strip) const {
-        const std::size_t stokes = plan_.study.polarized ? 3 : 1;
+        const std::size_t batches = (count + batch_size - 1) / batch_size;
         for (const RingStrip& strip : cut_into_strips(sky_.grid, strip_pixels)) {
             check_interrupt();
             const SkyStrip values = make_sky_strip(sky_, strip, plan_.study.polarized);
             const auto pieces = cut_into_pieces(sky_.grid, strip);
-            std::vector<StokesStatistics> statistics(count * pieces.size());
-            parallel_for_blocks(
-                static_cast<std::int64_t>(statistics.size()), 1, [&](std::int64_t task, std::int64_t) {
-                    const auto t = static_cast<std::size_t>(task);
-                    const std::size_t k = first + t / pieces.size();
-                    const MapPiece& piece = pieces[t % pieces.size()];
-                    std::vector<double> buffer(stokes * piece.size());
-                    std::array<std::span<double>, 3> columns;
-                    for (std::size_t s = 0; s < stokes; ++s)
-                        columns[s] = std::span(buffer).subspan(s * piece.size(), piece.size());
-                    const std::span<const std::span<double>> view(columns.data(), stokes);
-                    route_.make_pixels(values, k, piece.begin, piece.end, view);
-                    work(k - first, piece, view, statistics[t]);
-                });
+            std::vector<StokesStatistics> statistics(count * pieces.size());  // [pieces][count]
+            const auto tasks = static_cast<std::int64_t>(pieces.size() * batches);
+            parallel_for_blocks(tasks, 1, [&](std::int64_t task, std::int64_t) {
+                const std::size_t p = static_cast<std::size_t>(task) / batches;
+                const std::size_t begin = static_cast<std::size_t>(task) % batches * batch_size;
+                const PieceBuffer buffer(plan_.study.polarized ? 3 : 1, pieces[p].size());
+                for (std::size_t k = begin; k < std::min(count, begin + batch_size); ++k) {
+                    route_.make_pixels(values, first + k, pieces[p].begin, pieces[p].end, buffer.columns(),
+                                       precision_);
+                    work(k, pieces[p], buffer.columns(), statistics[p * count + k]);
+                }
+            });
             for (std::size_t t = 0; t < statistics.size(); ++t)
-                after_strip(t / pieces.size(), statistics[t]);
+                after_strip(t % count, statistics[t]);
         }
     }
 
@@ -184,6 +205,7 @@ class PixelMaps {
     const Plan& plan_;
     const SkyModel& sky_;
     std::vector<std::size_t> channels_;
+    ExpPrecision precision_;
     PixelRoute route_;
 };
 

@@ -6,7 +6,8 @@
 namespace foreglow {
 namespace {
 
-constexpr std::int64_t piece_pixels = 16384;  // three columns of it stay in the second-level cache
+constexpr std::int64_t piece_pixels =
+    8192;  // the sky of a piece and its columns stay in the second-level cache
 constexpr int preview_nside = 128;
 
 }  // namespace

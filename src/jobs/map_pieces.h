@@ -22,7 +22,7 @@ struct MapPiece {
     [[nodiscard]] std::size_t size() const { return end - begin; }
 };
 
-/// Cuts a strip into pieces of at most 16384 pixels, in RING order.
+/// Cuts a strip into pieces of at most 8192 pixels, in RING order.
 [[nodiscard]] std::vector<MapPiece> cut_into_pieces(const HealpixGrid& grid, const RingStrip& strip);
 
 /// Statistics of I, Q, U.

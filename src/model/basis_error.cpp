@@ -115,11 +115,11 @@ BasisErrors measure_basis_errors(const SkyModel& sky, const std::vector<Channel>
                 {1.0, sample.directions[p][0], sample.directions[p][1], sample.directions[p][2]});
         }
         if (polarized == nullptr) continue;
-        if (!is_defined(values.q[p] + values.u[p] + values.polarized_index[p] +
-                        values.polarized_curvature[p]))
+        if (!is_defined(values.q[p] + values.u[p] + values.index_of_polarization()[p] +
+                        values.curvature_of_polarization()[p]))
             continue;
-        polarized_spectra.index.push_back(values.polarized_index[p]);
-        polarized_spectra.curvature.push_back(values.polarized_curvature[p]);
+        polarized_spectra.index.push_back(values.index_of_polarization()[p]);
+        polarized_spectra.curvature.push_back(values.curvature_of_polarization()[p]);
         q.push_back(values.q[p]);
         u.push_back(values.u[p]);
     }

@@ -64,8 +64,8 @@ StokesComponent make_polarized_component(const SkyModel& sky, const BandLaw& law
     for_each_sky_strip(sky, true, [&](const RingStrip& strip, const SkyStrip& values) {
         const std::array<std::span<const double>, 2> amplitudes{values.q, values.u};
         const std::array<std::vector<double>*, 2> targets{&maps.q, &maps.u};
-        scale_into(strip, sky.grid, law, values.polarized_index, values.polarized_curvature, amplitudes,
-                   targets);
+        scale_into(strip, sky.grid, law, values.index_of_polarization(), values.curvature_of_polarization(),
+                   amplitudes, targets);
     });
     return maps;
 }

@@ -5,9 +5,13 @@
 #include <vector>
 
 #include "base/error.h"
+#include "base/parallel.h"
+#include "model/map_statistics.h"
 
 namespace foreglow {
 namespace {
+
+constexpr std::int64_t block = 65536;
 
 template <class... F>
 struct Overloaded : F... {
@@ -17,17 +21,28 @@ template <class... F>
 Overloaded(F...) -> Overloaded<F...>;
 
 std::optional<PixelField::Range> range_of(const SkyMap& map) {
-    std::optional<PixelField::Range> range;
-    for (const double value : map.values) {
-        if (!is_defined(value)) continue;
-        if (!range) range = PixelField::Range{value, value};
-        range->low = std::min(range->low, value);
-        range->high = std::max(range->high, value);
-    }
-    return range;
+    const auto count = static_cast<std::int64_t>(map.values.size());
+    std::vector<MapStatistics> parts(static_cast<std::size_t>((count + block - 1) / block));
+    parallel_for_blocks(count, block, [&](std::int64_t begin, std::int64_t end) {
+        parts[static_cast<std::size_t>(begin / block)].add(
+            std::span(map.values)
+                .subspan(static_cast<std::size_t>(begin), static_cast<std::size_t>(end - begin)));
+    });
+    MapStatistics all;
+    for (const MapStatistics& part : parts)
+        all.merge(part);
+    if (all.defined == 0) return std::nullopt;
+    return PixelField::Range{all.lowest, all.highest};
 }
 
 }  // namespace
+
+void copy_range(std::span<const double> map, const PixelRange& range, std::span<double> strip) {
+    parallel_for_blocks(range.count, block, [&](std::int64_t begin, std::int64_t end) {
+        std::copy_n(map.begin() + range.first_pixel + begin, end - begin,
+                    strip.begin() + range.offset + begin);
+    });
+}
 
 void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                        std::span<double> out) {
@@ -68,8 +83,7 @@ void PixelField::evaluate(const HealpixGrid& grid, const RingStrip& strip, std::
                           [&](const Map& source) {
                               FOREGLOW_EXPECTS(source.map->grid == grid);
                               for (const PixelRange& range : pixel_ranges(grid, strip))
-                                  std::copy_n(source.map->values.begin() + range.first_pixel, range.count,
-                                              out.begin() + range.offset);
+                                  copy_range(source.map->values, range, out);
                           },
                           [&](const Interpolated& source) {
                               interpolate_strip(*source.map, grid, source.frame, strip, out);

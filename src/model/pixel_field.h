@@ -61,6 +61,9 @@ class PixelField {
     Source source_;
 };
 
+/// Copies one piece of a strip out of a full map, with threads.
+void copy_range(std::span<const double> map, const PixelRange& range, std::span<double> strip);
+
 /// Interpolates a map at the pixels of a strip of another grid and frame (interpolate_pixels).
 void interpolate_strip(const SkyMap& map, const HealpixGrid& grid, Frame frame, const RingStrip& strip,
                        std::span<double> out);

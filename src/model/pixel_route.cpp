@@ -2,14 +2,17 @@
 #include "model/pixel_route.h"
 
 #include <algorithm>
+#include <array>
 
 #include "base/error.h"
+#include "base/vector_width.h"
 
 namespace foreglow {
 namespace {
 
 constexpr std::size_t block = 512;
 
+FOREGLOW_WIDE
 void multiply(std::span<const double> amplitude, std::span<const double> factor, std::span<double> out) {
     for (std::size_t i = 0; i < out.size(); ++i)
         out[i] = amplitude[i] * factor[i];
@@ -34,21 +37,21 @@ double PixelRoute::error_of(std::size_t channel) const {
 }
 
 void PixelRoute::make_pixels(const SkyStrip& strip, std::size_t channel, std::size_t begin, std::size_t end,
-                             std::span<const std::span<double>> out) const {
+                             std::span<const std::span<double>> out, ExpPrecision precision) const {
     FOREGLOW_EXPECTS(out.size() == 1 || (out.size() == 3 && !strip.q.empty()));
-    std::vector<double> factor(block);
+    std::array<double, block> factor;
     for (std::size_t first = begin; first < end; first += block) {
         const std::size_t n = std::min(block, end - first);
         const std::span<double> f(factor.data(), n);
         const auto part = [&](const std::vector<double>& values) {
             return std::span(values).subspan(first, n);
         };
-        intensity_laws_[channel].evaluate(part(strip.index), part(strip.curvature), f);
+        intensity_laws_[channel].evaluate(part(strip.index), part(strip.curvature), f, precision);
         multiply(part(strip.intensity), f, out[0].subspan(first - begin, n));
         if (out.size() == 1) continue;
         if (!polarized_laws_.empty())
-            polarized_laws_[channel].evaluate(part(strip.polarized_index), part(strip.polarized_curvature),
-                                              f);
+            polarized_laws_[channel].evaluate(part(strip.index_of_polarization()),
+                                              part(strip.curvature_of_polarization()), f, precision);
         multiply(part(strip.q), f, out[1].subspan(first - begin, n));
         multiply(part(strip.u), f, out[2].subspan(first - begin, n));
     }

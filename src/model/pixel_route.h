@@ -23,9 +23,11 @@ class PixelRoute {
     [[nodiscard]] double error_of(std::size_t channel) const;
 
     /// Writes pixels begin..end of a strip as the channel sees them, in the study's unit.
-    /// @param out  [1 or 3][end - begin]: I, or I, Q, U (COSMO)
+    /// @param out        [1 or 3][end - begin]: I, or I, Q, U (COSMO)
+    /// @param precision  of the exponential
     void make_pixels(const SkyStrip& strip, std::size_t channel, std::size_t begin, std::size_t end,
-                     std::span<const std::span<double>> out) const;
+                     std::span<const std::span<double>> out,
+                     ExpPrecision precision = ExpPrecision::Double) const;
 
   private:
     std::vector<BandLaw> intensity_laws_;

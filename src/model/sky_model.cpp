@@ -5,10 +5,13 @@
 #include <cmath>
 
 #include "base/error.h"
+#include "base/parallel.h"
 #include "physics/spectral_law.h"
 
 namespace foreglow {
 namespace {
+
+constexpr std::int64_t block = 16384;
 
 PixelField::Range require_range(const PixelField& field, const char* name) {
     const auto range = field.range();
@@ -21,8 +24,8 @@ void evaluate_stokes(const SkyModel& sky, const StokesField& field, const RingSt
     if (const auto* maps = std::get_if<std::shared_ptr<const StokesMaps>>(&field.source)) {
         FOREGLOW_EXPECTS((*maps)->grid == sky.grid);
         for (const PixelRange& range : pixel_ranges(sky.grid, strip)) {
-            std::copy_n((*maps)->q.begin() + range.first_pixel, range.count, q.begin() + range.offset);
-            std::copy_n((*maps)->u.begin() + range.first_pixel, range.count, u.begin() + range.offset);
+            copy_range((*maps)->q, range, q);
+            copy_range((*maps)->u, range, u);
         }
         return;
     }
@@ -82,15 +85,19 @@ SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_p
     sky.intensity.evaluate(sky.grid, strip, values.intensity);
     sky.index.evaluate(sky.grid, strip, values.index);
     sky.curvature.evaluate(sky.grid, strip, values.curvature);
-    for (std::size_t i = 0; i < n; ++i)
-        values.index[i] = index_at_reference(values.index[i], values.curvature[i], sky.index_log_ratio);
+    if (sky.index_log_ratio != 0)
+        parallel_for_blocks(static_cast<std::int64_t>(n), block, [&](std::int64_t begin, std::int64_t end) {
+            for (auto i = static_cast<std::size_t>(begin); i < static_cast<std::size_t>(end); ++i)
+                values.index[i] =
+                    index_at_reference(values.index[i], values.curvature[i], sky.index_log_ratio);
+        });
     if (!with_polarization) return values;
     FOREGLOW_EXPECTS(sky.polarization.has_value());
     values.q.resize(n);
     values.u.resize(n);
     evaluate_stokes(sky, sky.polarization->stokes, strip, values.q, values.u);
     if (sky.polarization->fraction) scale_to_fraction(sky, strip, values);
-    add_polarized_law(sky, strip, values);
+    if (!polarization_shares_law(sky)) add_polarized_law(sky, strip, values);
     return values;
 }
 

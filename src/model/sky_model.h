@@ -36,8 +36,15 @@ struct SkyStrip {
     std::vector<double> intensity;         ///< K_RJ at the reference frequency
     std::vector<double> index, curvature;  ///< at the reference frequency
     std::vector<double> q, u;              ///< K_RJ at the polarization's reference frequency, COSMO
-    std::vector<double> polarized_index,
-        polarized_curvature;  ///< of Q and U, at the polarization's reference frequency
+    /// Of Q and U, at the polarization's reference frequency; empty where they are the intensity's own.
+    std::vector<double> polarized_index, polarized_curvature;
+
+    [[nodiscard]] const std::vector<double>& index_of_polarization() const {
+        return polarized_index.empty() ? index : polarized_index;
+    }
+    [[nodiscard]] const std::vector<double>& curvature_of_polarization() const {
+        return polarized_curvature.empty() ? curvature : polarized_curvature;
+    }
 };
 
 /// A sky on one grid: what each pixel's spectrum is made of.

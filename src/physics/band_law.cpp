@@ -2,28 +2,20 @@
 #include "physics/band_law.h"
 
 #include <algorithm>
-#include <array>
 #include <cmath>
 
 #include "base/constants.h"
 #include "base/error.h"
 #include "base/text.h"
+#include "base/vector_width.h"
 #include "math/least_squares.h"
 #include "math/vector_exp.h"
 #include "physics/spectral_law.h"
 
-// Compiled for several vector widths and chosen at run time; contraction is off, so all widths round alike.
-#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__)
-#define FOREGLOW_WIDE __attribute__((target_clones("default", "avx2", "avx512f")))
-#else
-#define FOREGLOW_WIDE
-#endif
-
 namespace foreglow {
 namespace {
 
-constexpr int highest_degree = 12;
-constexpr std::size_t block = 512;  // a few arrays of it stay in the first-level cache
+using Kernel = BandLaw::Kernel;
 
 /// One parameter's range, as the interval [-1, 1]; a single value is the middle alone.
 struct Axis {
@@ -49,22 +41,68 @@ std::vector<double> even_points(const Axis& axis, int count) {
     return points;
 }
 
-FOREGLOW_WIDE
-void exponentiate(double* values, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i)
-        values[i] = vector_exp(values[i]);
+constexpr int any_degree = -1;
+
+// One pass over the pixels with everything in registers. Usual degrees are compile-time numbers, so that the
+// sums unroll.
+template <int fixed_degree, bool two_dimensional, ExpPrecision precision>
+FOREGLOW_INLINE void run(const Kernel& k, const double* index, const double* curvature, double* out,
+                         std::size_t n) {
+    const int degree = fixed_degree == any_degree ? k.degree : fixed_degree;
+    for (std::size_t p = 0; p < n; ++p) {
+        const double x = (index[p] - k.index_middle) * k.index_scale;
+        const double y = (curvature[p] - k.curvature_middle) * k.curvature_scale;
+        double sum = 0;
+        int end = two_dimensional ? (degree + 1) * (degree + 2) / 2 : degree + 1;
+#pragma GCC unroll 16
+        for (int j = two_dimensional ? degree : 0; j >= 0; --j) {
+            const int terms = degree - j + 1;
+            double row = k.c[static_cast<std::size_t>(end - 1)];
+#pragma GCC unroll 16
+            for (int i = terms - 2; i >= 0; --i)
+                row = row * x + k.c[static_cast<std::size_t>(end - terms + i)];
+            sum = sum * y + row;
+            end -= terms;
+        }
+        out[p] = vector_exp<precision>((index[p] + curvature[p] * k.log_ref) * k.log_ref + sum);
+    }
+}
+
+template <bool two_dimensional, ExpPrecision precision>
+FOREGLOW_INLINE void run_degree(const Kernel& k, const double* index, const double* curvature, double* out,
+                                std::size_t n) {
+    switch (k.degree) {
+        case 0:
+            return run<0, two_dimensional, precision>(k, index, curvature, out, n);
+        case 1:
+            return run<1, two_dimensional, precision>(k, index, curvature, out, n);
+        case 2:
+            return run<2, two_dimensional, precision>(k, index, curvature, out, n);
+        case 3:
+            return run<3, two_dimensional, precision>(k, index, curvature, out, n);
+        case 4:
+            return run<4, two_dimensional, precision>(k, index, curvature, out, n);
+        case 5:
+            return run<5, two_dimensional, precision>(k, index, curvature, out, n);
+        default:
+            return run<any_degree, two_dimensional, precision>(k, index, curvature, out, n);
+    }
 }
 
 FOREGLOW_WIDE
-void horner(double* sum, const double* x, double coefficient, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i)
-        sum[i] = sum[i] * x[i] + coefficient;
+void run_double(const Kernel& k, const double* index, const double* curvature, double* out, std::size_t n) {
+    if (k.varies_with_curvature)
+        run_degree<true, ExpPrecision::Double>(k, index, curvature, out, n);
+    else
+        run_degree<false, ExpPrecision::Double>(k, index, curvature, out, n);
 }
 
 FOREGLOW_WIDE
-void add_product(double* sum, const double* factor, const double* added, std::size_t n) {
-    for (std::size_t i = 0; i < n; ++i)
-        sum[i] = sum[i] * factor[i] + added[i];
+void run_single(const Kernel& k, const double* index, const double* curvature, double* out, std::size_t n) {
+    if (k.varies_with_curvature)
+        run_degree<true, ExpPrecision::Single>(k, index, curvature, out, n);
+    else
+        run_degree<false, ExpPrecision::Single>(k, index, curvature, out, n);
 }
 
 }  // namespace
@@ -86,20 +124,22 @@ BandLaw::BandLaw(const BandSum& band, Frequency reference, const ParameterRange&
         weight_sum += band.weights[i];
         log_sum += band.weights[i] * std::log(band.hz[i] / reference.hz());
     }
-    log_ref_ = log_sum / weight_sum;
+    kernel_.log_ref = log_sum / weight_sum;
     const Axis index(range.index_low, range.index_high);
     const Axis curvature(range.curvature_low, range.curvature_high);
-    index_middle_ = index.middle;
-    curvature_middle_ = curvature.middle;
-    index_scale_ = index.varies() ? 1.0 / index.half : 0.0;
-    curvature_scale_ = curvature.varies() ? 1.0 / curvature.half : 0.0;
-    for (degree_ = 0; degree_ <= highest_degree; ++degree_) {
+    kernel_.index_middle = index.middle;
+    kernel_.curvature_middle = curvature.middle;
+    kernel_.index_scale = index.varies() ? 1.0 / index.half : 0.0;
+    kernel_.curvature_scale = curvature.varies() ? 1.0 / curvature.half : 0.0;
+    kernel_.varies_with_curvature = curvature.varies();
+    for (kernel_.degree = 0; kernel_.degree <= Kernel::highest_degree; ++kernel_.degree) {
         fit(band, reference, range);
         worst_error_ = error_on_check_grid(band, reference, range);
         if (worst_error_ <= tolerance) return;
     }
+    kernel_.degree = Kernel::highest_degree;
     throw NumericError("the average over the band around " +
-                       to_text(Frequency::from_hz(reference.hz() * std::exp(log_ref_))) +
+                       to_text(Frequency::from_hz(reference.hz() * std::exp(kernel_.log_ref))) +
                        " reaches a relative error of " + format_number(worst_error_, 2) + ", not the " +
                        format_number(tolerance, 2) +
                        " asked for: narrow the band, or the range of the index map");
@@ -108,12 +148,14 @@ BandLaw::BandLaw(const BandSum& band, Frequency reference, const ParameterRange&
 void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange& range) {
     const Axis index(range.index_low, range.index_high);
     const Axis curvature(range.curvature_low, range.curvature_high);
-    std::vector<std::array<int, 2>> powers;
-    for (int j = 0; j <= (curvature.varies() ? degree_ : 0); ++j)
-        for (int i = 0; i <= (index.varies() ? degree_ - j : 0); ++i)
-            powers.push_back({i, j});
-    const auto x_fit = chebyshev_points(index, degree_ + 4);
-    const auto y_fit = chebyshev_points(curvature, degree_ + 4);
+    const int degree = kernel_.degree;
+    std::vector<std::array<int, 3>> powers;  // of x, of y, and the place among the coefficients
+    int place = 0;
+    for (int j = 0; j <= (curvature.varies() ? degree : 0); ++j)
+        for (int i = 0; i <= degree - j; ++i, ++place)
+            if (index.varies() || i == 0) powers.push_back({i, j, place});
+    const auto x_fit = chebyshev_points(index, degree + 4);
+    const auto y_fit = chebyshev_points(curvature, degree + 4);
     Matrix a(x_fit.size() * y_fit.size(), powers.size());
     std::vector<double> b(a.rows);
     std::size_t row = 0;
@@ -121,15 +163,15 @@ void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange
         for (const double x : x_fit) {
             const SpectralParameters p{index.at(x), curvature.at(y)};
             b[row] = std::log(exact_band_value(band, reference, p.index, p.curvature)) -
-                     log_brightness_ratio(p, log_ref_);
+                     log_brightness_ratio(p, kernel_.log_ref);
             for (std::size_t k = 0; k < powers.size(); ++k)
                 a(row, k) = std::pow(x, powers[k][0]) * std::pow(y, powers[k][1]);
             ++row;
         }
     const std::vector<double> solution = solve_least_squares(std::move(a), std::move(b));
-    rows_.assign(static_cast<std::size_t>(powers.back()[1]) + 1, {});
+    kernel_.c.fill(0.0);
     for (std::size_t k = 0; k < powers.size(); ++k)
-        rows_[static_cast<std::size_t>(powers[k][1])].push_back(solution[k]);
+        kernel_.c[static_cast<std::size_t>(powers[k][2])] = solution[k];
 }
 
 double BandLaw::error_on_check_grid(const BandSum& band, Frequency reference,
@@ -145,36 +187,18 @@ double BandLaw::error_on_check_grid(const BandSum& band, Frequency reference,
     return worst;
 }
 
-void BandLaw::evaluate_block(const double* index, const double* curvature, double* out, std::size_t n) const {
-    std::array<double, block> x, y, inner;  // NOLINT: filled below as far as used
-    for (std::size_t i = 0; i < n; ++i) {
-        x[i] = (index[i] - index_middle_) * index_scale_;
-        y[i] = (curvature[i] - curvature_middle_) * curvature_scale_;
-        out[i] = 0;
-    }
-    for (std::size_t j = rows_.size(); j-- > 0;) {
-        const std::vector<double>& row = rows_[j];
-        std::fill_n(inner.begin(), n, row.back());
-        for (std::size_t k = row.size() - 1; k-- > 0;)
-            horner(inner.data(), x.data(), row[k], n);
-        add_product(out, y.data(), inner.data(), n);
-    }
-    for (std::size_t i = 0; i < n; ++i)
-        out[i] += (index[i] + curvature[i] * log_ref_) * log_ref_;
-    exponentiate(out, n);
-}
-
 void BandLaw::evaluate(std::span<const double> index, std::span<const double> curvature,
-                       std::span<double> out) const {
+                       std::span<double> out, ExpPrecision precision) const {
     FOREGLOW_EXPECTS(index.size() == out.size() && curvature.size() == out.size());
-    for (std::size_t first = 0; first < out.size(); first += block)
-        evaluate_block(index.data() + first, curvature.data() + first, out.data() + first,
-                       std::min(block, out.size() - first));
+    if (precision == ExpPrecision::Single)
+        run_single(kernel_, index.data(), curvature.data(), out.data(), out.size());
+    else
+        run_double(kernel_, index.data(), curvature.data(), out.data(), out.size());
 }
 
 double BandLaw::value(double index, double curvature) const {
     double out = 0;
-    evaluate_block(&index, &curvature, &out, 1);
+    run_double(kernel_, &index, &curvature, &out, 1);
     return out;
 }
 

@@ -23,6 +23,16 @@ TEST(VectorExp, AgreesWithTheLibraryOverItsRange) {
     EXPECT_EQ(vector_exp(0.0), 1.0);
 }
 
+TEST(VectorExp, SingleIsGoodToWhatItPromises) {
+    double worst = 0;
+    for (int i = -69900; i <= 69900; ++i) {
+        const double x = 0.01 * i + 0.003;
+        worst = std::max(worst, std::abs(vector_exp<ExpPrecision::Single>(x) / std::exp(x) - 1));
+    }
+    EXPECT_LE(worst, 3e-10);  // (ln 2/2)^9/9! = 2.0e-10 and its tail
+    EXPECT_GT(worst, 1e-11);  // the short polynomial is really used
+}
+
 TEST(VectorExp, KeepsNaN) {
     EXPECT_TRUE(std::isnan(vector_exp(std::numeric_limits<double>::quiet_NaN())));
 }

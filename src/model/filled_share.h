@@ -10,6 +10,7 @@
 #include "sphere/beam.h"
 #include "sphere/frame.h"
 #include "sphere/grid.h"
+#include "sphere/harmonics.h"
 
 namespace foreglow {
 
@@ -17,8 +18,8 @@ namespace foreglow {
 /// no value there.
 ///
 /// The map of 0 and 1 is taken to a finer grid first (up to 4 times finer), so that its edges do not ring,
-/// and smoothed with a Gaussian as wide as the beam, at least one pixel. Accurate to about 2e-3, for a
-/// threshold of 1 %.
+/// and smoothed with a Gaussian as wide as the beam, at least one pixel. Accurate to about 2e-3 near the
+/// threshold of 1 %, to 1e-2 where most of the beam falls on filled pixels.
 class FilledShare {
   public:
     /// @param values     [npix]; NaN marks the filled pixels
@@ -29,7 +30,12 @@ class FilledShare {
     /// Returns the shares on the same grid, in another frame if wanted, [npix].
     [[nodiscard]] std::vector<double> under_beam(Angle fwhm, Frame frame) const;
 
+    /// Returns the shares on one strip, [pixel_count(grid, strip)].
+    [[nodiscard]] std::vector<double> on_strip(Angle fwhm, Frame frame, const RingStrip& strip) const;
+
   private:
+    [[nodiscard]] Alm smoothed(Angle fwhm, Frame frame) const;
+
     HealpixGrid grid_;
     Frame frame_;
     std::optional<Alm> alm_;

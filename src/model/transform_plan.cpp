@@ -71,8 +71,9 @@ BeamWindow channel_window(const Channel& channel, const HarmonicOptions& options
 }
 
 BeamWindow widest_window(std::span<const Channel> channels, const HarmonicOptions& options) {
-    BeamWindow widest = channel_window(channels.front(), options);
-    for (const Channel& channel : channels.subspan(1)) {
+    const auto rows = static_cast<std::size_t>(options.lmax) + 1;
+    BeamWindow widest{std::vector<double>(rows, 0.0), std::vector<double>(rows, 0.0)};
+    for (const Channel& channel : channels) {
         const BeamWindow window = channel_window(channel, options);
         for (std::size_t l = 0; l < widest.temperature.size(); ++l) {
             widest.temperature[l] = std::max(widest.temperature[l], std::abs(window.temperature[l]));

@@ -8,6 +8,7 @@
 
 #include "base/error.h"
 #include "base/parallel.h"
+#include "sphere/bilinear.h"
 #include "sphere/fill.h"
 #include "sphere/rotation.h"
 
@@ -15,31 +16,7 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t block = 4096;
-
-/// Calls work(index of the output pixel, stencil on the input) for a range of output pixels.
-template <typename Work>
-void for_each_stencil(const HealpixGrid& from_grid, Frame from, const HealpixGrid& to_grid, Frame to,
-                      std::int64_t first, std::int64_t count, const Work& work) {
-    const Matrix3 back = rotation_between(to, from);
-    parallel_for_blocks(count, block, [&](std::int64_t begin, std::int64_t end) {
-        std::vector<Vector3> directions(static_cast<std::size_t>(end - begin));
-        to_grid.directions(first + begin, directions);
-        for (std::size_t i = 0; i < directions.size(); ++i)
-            work(static_cast<std::size_t>(begin) + i, from_grid.interpolation(rotate(back, directions[i])));
-    });
-}
-
-double weighted_mean(std::span<const double> values, const HealpixGrid::Stencil& stencil) {
-    double sum = 0, weight = 0;
-    for (std::size_t k = 0; k < 4; ++k) {
-        const double value = values[static_cast<std::size_t>(stencil.pixels[k])];
-        // A weight of 0 must not bring a pixel in, nor an undefined one down.
-        if (!is_defined(value) || !(stencil.weights[k] > 0)) continue;
-        sum += stencil.weights[k] * value;
-        weight += stencil.weights[k];
-    }
-    return weight > 0 ? sum / weight : undefined_pixel;
-}
+constexpr std::int64_t long_block = 32768;  // whole rings but for the finest grids
 
 void undefine_near_filled(const SkyMap& filled, const HealpixGrid& to_grid, Frame to_frame,
                           std::span<double> out) {
@@ -88,10 +65,15 @@ void interpolate_pixels(const SkyMap& map, const HealpixGrid& to_grid, Frame to_
         std::copy_n(map.values.begin() + first, count, out.begin());
         return;
     }
-    for_each_stencil(map.grid, map.frame, to_grid, to_frame, first, count,
-                     [&](std::size_t i, const HealpixGrid::Stencil& stencil) {
-                         out[i] = weighted_mean(map.values, stencil);
-                     });
+    const BilinearSampler sampler(map.grid);
+    const Matrix3 back = rotation_between(to_frame, map.frame);
+    parallel_for_blocks(count, long_block, [&](std::int64_t begin, std::int64_t end) {
+        const auto part = out.subspan(static_cast<std::size_t>(begin), static_cast<std::size_t>(end - begin));
+        if (map.frame == to_frame)
+            sampler.sample(map.values, to_grid, first + begin, part);
+        else
+            sampler.sample(map.values, back, to_grid, first + begin, part);
+    });
 }
 
 SkyMap interpolate(const SkyMap& map, const HealpixGrid& to_grid, Frame to_frame) {

@@ -121,6 +121,23 @@ JsonValue texts(const List& list) {
     return array;
 }
 
+// What was said on the terminal, with the folders of the inputs left out.
+template <class List>
+JsonValue texts_without_folders(const List& list, const std::vector<fs::path>& inputs) {
+    JsonValue::Array array;
+    for (std::string one : list) {
+        for (const fs::path& input : inputs) {
+            const std::string path = input.string();
+            const std::string name = input.filename().string();
+            for (std::size_t at = one.find(path); at != std::string::npos && path != name;
+                 at = one.find(path, at + name.size()))
+                one.replace(at, path.size(), name);
+        }
+        array.emplace_back(std::move(one));
+    }
+    return array;
+}
+
 JsonValue describe_accuracy(const Plan& plan, const MakeResult& result) {
     double worst = 0;
     for (const ChannelOutcome& outcome : result.channels)
@@ -163,27 +180,28 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
     JsonValue::Array realizations;
     for (const int r : plan.realizations)
         realizations.emplace_back(r);
-    const JsonValue::Object manifest{{"program", "Foreglow"},
-                                     {"version", version()},
-                                     {"build", build_description()},
-                                     {"title", plan.study.title},
-                                     {"sky_notes", texts(result.labels)},
-                                     {"seed", plan.study.seed},
-                                     {"realizations", std::move(realizations)},
-                                     {"nside", plan.study.nside},
-                                     {"lmax", plan.study.lmax},
-                                     {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
-                                     {"conventions", describe_conventions(plan.study)},
-                                     {"accuracy", describe_accuracy(plan, result)},
-                                     {"channels", describe_channels(plan, result)},
-                                     {"warnings", texts(progress.warnings())},
-                                     {"notices", texts(progress.notices())},
-                                     {"inputs", describe_inputs(plan)},
-                                     {"outputs", describe_outputs(plan, result, with_sha256)},
-                                     {"threads", thread_count()},
-                                     {"timings", std::move(phases)},
-                                     {"study", without_absolute_paths(plan.study.source)},
-                                     {"model", without_absolute_paths(plan.model.source)}};
+    const JsonValue::Object manifest{
+        {"program", "Foreglow"},
+        {"version", version()},
+        {"build", build_description()},
+        {"title", plan.study.title},
+        {"sky_notes", texts(result.labels)},
+        {"seed", plan.study.seed},
+        {"realizations", std::move(realizations)},
+        {"nside", plan.study.nside},
+        {"lmax", plan.study.lmax},
+        {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
+        {"conventions", describe_conventions(plan.study)},
+        {"accuracy", describe_accuracy(plan, result)},
+        {"channels", describe_channels(plan, result)},
+        {"warnings", texts_without_folders(progress.warnings(), list_inputs(plan))},
+        {"notices", texts_without_folders(progress.notices(), list_inputs(plan))},
+        {"inputs", describe_inputs(plan)},
+        {"outputs", describe_outputs(plan, result, with_sha256)},
+        {"threads", thread_count()},
+        {"timings", std::move(phases)},
+        {"study", without_absolute_paths(plan.study.source)},
+        {"model", without_absolute_paths(plan.model.source)}};
     return write_json(manifest);
 }
 

@@ -1,8 +1,11 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
-// Does only what nobody can do without: so many transforms, so much reading and writing; prints the seconds
-// of each as JSON. Usage: bare_work NAME=NUMBER... [read=FILE...] with nside, lmax, threads, analyses,
-// analyses2, syntheses, syntheses2, files, bytes (of each file), sync (0 or 1), and folder=DIR for the files,
-// which are deleted at the end.
+// Does only what nobody can do without: so many transforms, so much reading and writing; prints
+// [seconds, CPU seconds].
+//
+// Usage: bare_work NAME=NUMBER... [read=FILE...] with nside, lmax, threads, analyses, analyses2, syntheses,
+// syntheses2, files, bytes (of each file), sync (0 or 1), and folder=DIR for the files, deleted at the end.
+#include <sys/resource.h>
+
 #include <chrono>
 #include <cstdlib>
 #include <functional>
@@ -18,10 +21,26 @@ namespace {
 
 using namespace foreglow::benchmarks;
 
-double seconds_of(const std::function<void()>& work) {
-    const auto start = std::chrono::steady_clock::now();
+struct Seconds {
+    double wall = 0, cpu = 0;
+};
+
+Seconds now() {
+    rusage usage{};
+    getrusage(RUSAGE_SELF, &usage);
+    const auto seconds = [](const timeval& time) {
+        return static_cast<double>(time.tv_sec) + 1e-6 * static_cast<double>(time.tv_usec);
+    };
+    const auto wall = std::chrono::steady_clock::now().time_since_epoch();
+    return {std::chrono::duration<double>(wall).count(), seconds(usage.ru_utime) + seconds(usage.ru_stime)};
+}
+
+void add_time_of(const std::function<void()>& work, Seconds& sum) {
+    const Seconds start = now();
     work();
-    return std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
+    const Seconds end = now();
+    sum.wall += end.wall - start.wall;
+    sum.cpu += end.cpu - start.cpu;
 }
 
 struct Request {
@@ -52,10 +71,10 @@ Request read_request(int argc, char** argv) {
     return request;
 }
 
-double time_transforms(const Request& request) {
-    if (request["nside"] == 0) return 0;
+void time_transforms(const Request& request, Seconds& sum) {
+    if (request["nside"] == 0) return;
     BareTransforms transforms(static_cast<int>(request["nside"]), static_cast<int>(request["lmax"]));
-    return seconds_of([&] {
+    const auto work = [&] {
         for (long i = 0; i < request["analyses"]; ++i)
             transforms.analyse();
         for (long i = 0; i < request["analyses2"]; ++i)
@@ -64,26 +83,26 @@ double time_transforms(const Request& request) {
             transforms.synthesize();
         for (long i = 0; i < request["syntheses2"]; ++i)
             transforms.synthesize_spin2();
-    });
+    };
+    add_time_of(work, sum);
 }
 
-double time_writing(const Request& request) {
+void time_writing(const Request& request, Seconds& sum) {
     const auto name = [&](std::int64_t i) { return request.folder + "/raw" + std::to_string(i); };
-    const double seconds = seconds_of([&] {
-        foreglow::parallel_for_blocks(request["files"], 1, [&](std::int64_t begin, std::int64_t) {
-            write_raw_file(name(begin), request["bytes"], request["sync"] != 0);
-        });
-    });
+    const auto work = [&](std::int64_t begin, std::int64_t) {
+        write_raw_file(name(begin), request["bytes"], request["sync"] != 0);
+    };
+    add_time_of([&] { foreglow::parallel_for_blocks(request["files"], 1, work); }, sum);
     for (long i = 0; i < request["files"]; ++i)
         std::filesystem::remove(name(i));
-    return seconds;
 }
 
-double time_reading(const Request& request) {
-    return seconds_of([&] {
+void time_reading(const Request& request, Seconds& sum) {
+    const auto work = [&] {
         for (const auto& path : request.inputs)
             if (read_raw_file(path).empty()) throw std::runtime_error("empty file " + path);
-    });
+    };
+    add_time_of(work, sum);
 }
 
 }  // namespace
@@ -92,10 +111,11 @@ int main(int argc, char** argv) {
     try {
         const Request request = read_request(argc, argv);
         foreglow::set_thread_count(static_cast<int>(request["threads"]));
-        const double reading = time_reading(request), transforms = time_transforms(request),
-                     writing = time_writing(request);
-        std::cout << "{\"reading\": " << reading << ", \"transforms\": " << transforms
-                  << ", \"writing\": " << writing << "}\n";
+        Seconds sum;
+        time_reading(request, sum);
+        time_transforms(request, sum);
+        time_writing(request, sum);
+        std::cout << "[" << sum.wall << ", " << sum.cpu << "]\n";
     } catch (const std::exception& error) {
         std::cerr << "bare_work: " << error.what() << '\n';
         return EXIT_FAILURE;

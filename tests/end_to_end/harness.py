@@ -9,6 +9,8 @@ import tempfile
 import unittest
 from pathlib import Path
 
+os.environ.setdefault("OMP_NUM_THREADS", "1")  # of healpy: tests run side by side; must be set before it is imported
+
 import healpy
 import numpy
 from astropy.io import fits
@@ -36,8 +38,7 @@ class Case(unittest.TestCase):
     def foreglow(self, *arguments, status=0, environment=None):
         """Runs the command in the scratch folder and returns what it printed, once its exit status is as expected."""
         done = subprocess.run([sys.modules["harness"].FOREGLOW, *map(str, arguments)], cwd=self.folder, text=True,
-                              capture_output=True, stdin=subprocess.DEVNULL,
-                              env={**os.environ, **(environment or {})})
+                              capture_output=True, stdin=subprocess.DEVNULL, env=command_environment(environment))
         self.assertEqual(done.returncode, status, f"{arguments}\n{done.stdout}\n{done.stderr}")
         return done
 
@@ -70,6 +71,13 @@ class Case(unittest.TestCase):
         path = self.folder / name
         table.writeto(path)
         return path
+
+
+def command_environment(more=None):
+    """Returns the environment of the command: its own choice of threads, which do not spin while others need the processors."""
+    environment = {**os.environ, "OMP_WAIT_POLICY": "passive", **(more or {})}
+    del environment["OMP_NUM_THREADS"]
+    return environment
 
 
 def read_maps(path):

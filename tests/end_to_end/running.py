@@ -184,7 +184,8 @@ class Running(harness.Case):
                                    for n in range(40))
                 self.write("long.toml", 'model = "model.toml"\nnside = 512\nstokes = "IQU"\n' + channels)
                 process = subprocess.Popen([sys.modules["harness"].FOREGLOW, "make", "long.toml", "--out", out],
-                                           cwd=self.folder, stderr=subprocess.PIPE, stdout=subprocess.DEVNULL, text=True)
+                                           cwd=self.folder, stderr=subprocess.PIPE, stdout=subprocess.DEVNULL, text=True,
+                                           env=harness.command_environment())
                 deadline = time.monotonic() + 120
                 while time.monotonic() < deadline and process.poll() is None and not any(out.rglob("maps/*.fits*")):
                     time.sleep(0.02)
@@ -201,7 +202,7 @@ class Running(harness.Case):
 
     def test_a_closed_pipe_is_no_failure(self):
         process = subprocess.Popen([sys.modules["harness"].FOREGLOW, "models"], cwd=self.folder, stdout=subprocess.PIPE,
-                                   stderr=subprocess.PIPE)
+                                   stderr=subprocess.PIPE, env=harness.command_environment())
         process.stdout.close()
         stderr = process.stderr.read()
         self.assertEqual(process.wait(), 0, stderr)

@@ -3,6 +3,8 @@
 
 #include <algorithm>
 
+#include "base/constants.h"
+
 namespace foreglow {
 namespace {
 
@@ -30,10 +32,21 @@ PreviewSampler::PreviewSampler(const HealpixGrid& grid, Frame frame, const std::
     SkyMap empty{small, frame, unit,
                  std::vector<double>(static_cast<std::size_t>(small.npix()), undefined_pixel)};
     preview_.columns.assign(columns, empty);
-    for (std::int64_t target = 0; target < small.npix(); ++target)
-        places_.push_back({small == grid ? target : grid.pixel_at(small.direction(target)), target});
-    std::sort(places_.begin(), places_.end(),
-              [](const Place& a, const Place& b) { return a.pixel < b.pixel; });
+    places_.reserve(static_cast<std::size_t>(small.npix()));
+    const int finer = grid.nside() / small.nside();
+    for (int r = 0; r < small.ring_count(); ++r) {
+        // A centre of the small grid is a corner of the fine one: take the pixel north of it. Rings and
+        // columns ascend together, which leaves the places in order.
+        const HealpixGrid::Ring from = small.ring(r);
+        const HealpixGrid::Ring to = grid.ring(finer == 1 ? r : finer * (r + 1) - 2);
+        const double per_radian = to.pixels / (2 * constants::pi);
+        for (int c = 0; c < from.pixels; ++c) {
+            const double phi = from.phi0 + 2 * constants::pi * c / from.pixels;
+            const auto column = static_cast<std::int64_t>((phi - to.phi0) * per_radian + 0.5);
+            places_.push_back(
+                {to.first_pixel + std::min<std::int64_t>(column, to.pixels - 1), from.first_pixel + c});
+        }
+    }
 }
 
 void PreviewSampler::sample(std::int64_t first_pixel, std::span<const std::span<double>> columns) {

@@ -54,21 +54,36 @@ FilledShare::FilledShare(const HealpixGrid& grid, Frame frame, std::span<const d
         nside *= 2;
     const HealpixGrid fine(nside);
     std::vector<double> mask(static_cast<std::size_t>(fine.npix()));
-    parallel_for_blocks(fine.npix(), 16384, [&](std::int64_t begin, std::int64_t end) {
-        for (std::int64_t p = begin; p < end; ++p) {
-            const std::int64_t parent = fine == grid ? p : grid.pixel_at(fine.direction(p));
-            mask[static_cast<std::size_t>(p)] =
-                is_defined(values[static_cast<std::size_t>(parent)]) ? 0.0 : 1.0;
+    // In nested numbers the children of pixel n are family n, family n + 1, ...
+    const std::int64_t family = fine.npix() / grid.npix(), parents = 4096 / family;
+    parallel_for_blocks(grid.npix(), parents, [&](std::int64_t begin, std::int64_t end) {
+        std::vector<std::int64_t> parent(static_cast<std::size_t>(end - begin));
+        std::vector<std::int64_t> children(parent.size() * static_cast<std::size_t>(family));
+        grid.ring_numbers(begin, parent);
+        fine.ring_numbers(begin * family, children);
+        for (std::size_t n = 0; n < children.size(); ++n) {
+            const auto p = static_cast<std::size_t>(parent[n / static_cast<std::size_t>(family)]);
+            mask[static_cast<std::size_t>(children[n])] = is_defined(values[p]) ? 0.0 : 1.0;
         }
     });
     alm_ = analyse(fine, mask, std::max(2, std::min(wanted, 2 * nside)));
 }
 
+Alm FilledShare::smoothed(Angle fwhm, Frame frame) const {
+    Alm alm = *alm_;
+    multiply_by_l(alm, make_gaussian_beam(fwhm, alm.lmax()).temperature);
+    if (frame != frame_) rotate_alm(alm, frame_, frame);
+    return alm;
+}
+
 std::vector<double> FilledShare::under_beam(Angle fwhm, Frame frame) const {
-    Alm smoothed = *alm_;
-    multiply_by_l(smoothed, make_gaussian_beam(fwhm, smoothed.lmax()).temperature);
-    if (frame != frame_) rotate_alm(smoothed, frame_, frame);
-    return synthesize(smoothed, grid_);
+    return synthesize(smoothed(fwhm, frame), grid_);
+}
+
+std::vector<double> FilledShare::on_strip(Angle fwhm, Frame frame, const RingStrip& strip) const {
+    std::vector<double> shares(static_cast<std::size_t>(pixel_count(grid_, strip)));
+    synthesize_strip(smoothed(fwhm, frame), grid_, strip, shares);
+    return shares;
 }
 
 }  // namespace foreglow

@@ -48,7 +48,7 @@ class Short(harness.Case):
         self.foreglow("make", study, "--out", "out", "--threads", "2")
         for name, expected in study_oracle.make_study(study).items():
             maps, _ = harness.read_maps(self.folder / f"out/maps/{name}.fits")
-            self.assertLess(harness.map_error(maps, expected), 5e-4)  # the promise for rotated maps
+            self.assertLess(harness.map_error(maps, expected), 1e-5)  # the default accuracy
 
     def test_bundled_model(self):
         self.foreglow("make", "--model", "disc-and-loops", "--frequency", "70 GHz", "--nside", "16", "--out", "out")

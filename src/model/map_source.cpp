@@ -41,6 +41,22 @@ bool is_temperature(const BrightnessUnit& unit) {
            unit.kind == BrightnessUnit::Kind::Thermodynamic;
 }
 
+// What a word behind a bare kelvin says of its kind, as in 'mK,thermodynamic' or 'K (Rayleigh-Jeans)'.
+std::optional<BrightnessUnit::Kind> kind_of_bare_kelvin(const std::string& tunit) {
+    const std::string lower = to_lower(tunit);
+    const auto says = [&lower](const char* word) { return lower.find(word) != std::string::npos; };
+    if (says("cmb") || says("thermo")) return BrightnessUnit::Kind::Thermodynamic;
+    if (says("rj") || says("rayleigh") || says("antenna")) return BrightnessUnit::Kind::RayleighJeans;
+    return std::nullopt;
+}
+
+bool contradicts_bare_kelvin(const std::string& tunit, const BrightnessUnit& unit) {
+    const auto scale = scale_of_bare_kelvin(tunit);
+    if (!scale) return false;
+    return !is_temperature(unit) || *scale != unit.scale ||
+           kind_of_bare_kelvin(tunit).value_or(unit.kind) != unit.kind;
+}
+
 void scale_to_rayleigh_jeans(std::vector<double>& values, const BrightnessUnit& unit, Frequency frequency,
                              const HealpixGrid& grid) {
     const double factor = rayleigh_jeans_per_unit(unit, frequency, grid.pixel_area());
@@ -76,9 +92,8 @@ BrightnessUnit resolve_unit(const MapSource& source, const std::string& tunit) {
         throw InputError(start_of(source) + " " + what + ": add `unit = \"K_RJ\"` (or another of " +
                          list_of_brightness_units() + ") to [" + source.section + "]");
     }
-    const auto bare = in_header ? std::nullopt : scale_of_bare_kelvin(tunit);
-    const bool contradicts = (in_header && *in_header != *source.unit) ||
-                             (bare && (!is_temperature(*source.unit) || *bare != source.unit->scale));
+    const bool contradicts =
+        in_header ? *in_header != *source.unit : contradicts_bare_kelvin(tunit, *source.unit);
     if (contradicts)
         throw InputError(start_of(source) + " has TUNIT '" + tunit + "' but [" + source.section +
                          "] says \"" + to_text(*source.unit) + "\": correct one of them");

@@ -20,8 +20,8 @@ namespace foreglow {
 
 /// Returns the unit of a brightness column, from TUNIT or from the model.
 ///
-/// A TUNIT such as 'K' or 'mK' fits a model's unit of the same scale; any other text than a known unit counts
-/// as unknown.
+/// A TUNIT such as 'K' or 'mK' fits a model's unit of the same scale, and of the same kind where a word
+/// behind it says one ('mK,thermodynamic'); any other text than a known unit counts as unknown.
 /// @throws InputError where both are silent, or one contradicts the other
 [[nodiscard]] BrightnessUnit resolve_unit(const MapSource& source, const std::string& tunit);
 

@@ -104,7 +104,8 @@ std::shared_ptr<const SkyMap> make_intensity(const SketchSpec& sketch, const Hea
     auto map = empty_map(grid);
     std::vector<double> texture(map->values.size(), 0.0);
     if (sketch.texture) texture = unit_field(sketch, grid, TextureField, 11.0 / 6);
-    const double rms = sketch.texture_rms;
+    const double rms =
+        sketch.texture ? sketch.texture_rms : 0.0;  // without a texture its mean needs no correction
     parallel_for_blocks(grid.npix(), 4096, [&](std::int64_t begin, std::int64_t end) {
         for (std::int64_t p = begin; p < end; ++p) {
             const auto i = static_cast<std::size_t>(p);

@@ -53,12 +53,14 @@ auto measure(const Analyse& analyse, double tolerance, std::span<const double> w
     }
     state.measured = true;
     state.converged = result.report.reached && state.worst_cl_ratio <= largest_cl_ratio;
-    // A first correction that is itself negligible says that the weighted analysis alone was good enough.
-    const bool first_was_enough =
-        result.report.iterations == 1 && 2 * result.report.relative_correction <= tolerance;
-    state.iterations = first_was_enough ? 0 : result.report.iterations;
-    state.relative_error =
-        first_was_enough ? 2 * result.report.relative_correction : result.report.relative_error;
+    // The last correction says what the one before it had left: where that is good enough already, the others
+    // stop there.
+    const ConvergenceReport& report = result.report;
+    const double contraction = report.iterations > 1 ? report.contraction : 0.5;
+    const double without_last = contraction < 1 ? report.relative_correction / (1 - contraction) : 1.0;
+    const bool last_was_needless = report.iterations >= 1 && without_last <= tolerance;
+    state.iterations = last_was_needless ? report.iterations - 1 : report.iterations;
+    state.relative_error = last_was_needless ? without_last : report.relative_error;
     return std::move(result.alm);
 }
 

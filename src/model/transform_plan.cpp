@@ -3,6 +3,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 
 #include "base/error.h"
 #include "sphere/converged_analysis.h"
@@ -21,9 +22,18 @@ BeamWindow unit_window(int lmax) {
     return make_gaussian_beam(Angle(), lmax);
 }
 
-double worst_cl_ratio(const ConvergenceReport& report, std::span<const double> window) {
+// What the last correction left, and what the one before it did, in units of the last correction.
+struct Remaining {
+    double after_last = 1, before_last = 2;
+};
+Remaining remaining_after(const ConvergenceReport& report) {
     const double ratio = report.contraction > 0 ? report.contraction : 0.5;
-    const double remaining = ratio < 1 ? ratio / (1 - ratio) : 1.0;
+    if (ratio >= 1) return {1.0, std::numeric_limits<double>::infinity()};
+    return {ratio / (1 - ratio), 1 / (1 - ratio)};
+}
+
+// The largest C_l of `remaining` corrections over that of the map, where it counts.
+double worst_cl_ratio(const ConvergenceReport& report, double remaining, std::span<const double> window) {
     const auto power = [&](std::size_t l) {
         return (2 * static_cast<double>(l) + 1) * report.map_cl[l] * window[l] * window[l];
     };
@@ -44,23 +54,29 @@ template <class Analyse>
 auto measure(const Analyse& analyse, double tolerance, std::span<const double> window,
              TransformState& state) {
     auto result = analyse(tolerance, most_refinements);
-    state.worst_cl_ratio = worst_cl_ratio(result.report, window);
+    const auto cl_ratio = [&] {
+        return worst_cl_ratio(result.report, remaining_after(result.report).after_last, window);
+    };
+    state.worst_cl_ratio = cl_ratio();
     for (int round = 0; round < 3 && result.report.reached && state.worst_cl_ratio > largest_cl_ratio;
          ++round) {
         tolerance *= 0.1;
         result = analyse(tolerance, most_refinements);
-        state.worst_cl_ratio = worst_cl_ratio(result.report, window);
+        state.worst_cl_ratio = cl_ratio();
     }
     state.measured = true;
     state.converged = result.report.reached && state.worst_cl_ratio <= largest_cl_ratio;
     // The last correction says what the one before it had left: where that is good enough already, the others
     // stop there.
     const ConvergenceReport& report = result.report;
-    const double contraction = report.iterations > 1 ? report.contraction : 0.5;
-    const double without_last = contraction < 1 ? report.relative_correction / (1 - contraction) : 1.0;
-    const bool last_was_needless = report.iterations >= 1 && without_last <= tolerance;
+    const double before_last = remaining_after(report).before_last;
+    const double without_last = before_last * report.relative_correction;
+    const double cl_without_last = report.iterations >= 1 ? worst_cl_ratio(report, before_last, window) : 0.0;
+    const bool last_was_needless =
+        report.iterations >= 1 && without_last <= tolerance && cl_without_last <= largest_cl_ratio;
     state.iterations = last_was_needless ? report.iterations - 1 : report.iterations;
     state.relative_error = last_was_needless ? without_last : report.relative_error;
+    if (last_was_needless) state.worst_cl_ratio = cl_without_last;
     return std::move(result.alm);
 }
 

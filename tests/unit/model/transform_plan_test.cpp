@@ -90,7 +90,7 @@ TEST(TransformPlan, ErrorStaysBelowWhatItSaysForFirstAndLaterComponents) {
             sample(grid, [&](const Vector3& n) { return kind.sky(n) * std::exp(0.3 * n[1] * n[2]); });
         const Alm exact_a = analyse_converged(grid, first, lmax, hard).alm;
         const Alm exact_b = analyse_converged(grid, later, lmax, hard).alm;
-        for (const double tolerance : {1e-3, 1e-5, 1e-7}) {
+        for (const double tolerance : {1e-1, 1e-2, 1e-3, 1e-5, 1e-7}) {
             SCOPED_TRACE(tolerance);
             const BeamWindow window = make_gaussian_beam(Angle::from_degrees(kind.fwhm_deg), lmax);
             const TransformPlan plan(grid, lmax, tolerance, window.temperature, window.polarization);
@@ -115,6 +115,9 @@ TEST(TransformPlan, ErrorStaysBelowWhatItSaysForFirstAndLaterComponents) {
                 if (std::pow(window.temperature[l], 2) < 1e-3 || power < 1e-8 * total) continue;
                 EXPECT_LE(cl[l], 2e-4 * map_cl[l])
                     << "l = " << l;  // 1e-4 estimated; a factor for the estimate and the other map
+                // The report must not promise what was not measured for the later components; 4 for the
+                // estimate.
+                EXPECT_LE(cl[l], 4 * state.worst_cl_ratio * map_cl[l] + 1e-26 * total) << "l = " << l;
             }
         }
     }

@@ -12,7 +12,7 @@
 namespace foreglow {
 namespace {
 
-constexpr int picture_width = 800;
+constexpr int picture_width = 640;
 
 std::string unit_sentence(const BrightnessUnit& unit) {
     switch (unit.kind) {
@@ -54,6 +54,7 @@ void add_facts(const Plan& plan, const SkyModel& sky, ReportContent& page) {
 }
 
 void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& page) {
+    AllSkyPainter painter;
     for (const Preview& preview : result.previews) {
         const auto draw = [&](const SkyMap& map, const std::string& quantity, ScaleKind scale) {
             if (std::none_of(map.values.begin(), map.values.end(), [](double v) { return is_defined(v); }))
@@ -62,10 +63,11 @@ void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& pag
             options.title = preview.channel + ": " + quantity;
             options.quantity = quantity;
             options.width = picture_width;
+            options.few_colours = true;
             options.scale.kind = scale;
-            const Picture picture = draw_all_sky(map, options);
+            Picture picture = painter.draw(map, options);
             ReportFigure figure;
-            figure.png = picture.png;
+            figure.png = std::move(picture.png);
             figure.width = picture.width;
             figure.height = picture.height;
             figure.caption = quantity + " of channel " + preview.channel + ", " + to_text(plan.study.unit) +
@@ -78,8 +80,10 @@ void add_pictures(const Plan& plan, const MakeResult& result, ReportContent& pag
         draw(i, "I", positive ? ScaleKind::Log : ScaleKind::Signed);
         if (preview.columns.size() < 3) continue;
         SkyMap p = i;
-        for (std::size_t n = 0; n < p.values.size(); ++n)
-            p.values[n] = std::hypot(preview.columns[1].values[n], preview.columns[2].values[n]);
+        for (std::size_t n = 0; n < p.values.size(); ++n) {
+            const double q = preview.columns[1].values[n], u = preview.columns[2].values[n];
+            p.values[n] = std::sqrt(q * q + u * u);
+        }
         draw(p, "P", ScaleKind::Log);
         if (&preview == &result.previews.front()) {
             draw(preview.columns[1], "Q", ScaleKind::Signed);

@@ -4,6 +4,7 @@
 
 #include "base/interrupt.h"
 #include "base/parallel.h"
+#include "jobs/channel_stream.h"
 #include "jobs/make_maps.h"
 #include "jobs/map_cards.h"
 #include "jobs/map_pieces.h"
@@ -162,14 +163,19 @@ void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFol
     options.accuracy = plan.study.accuracy;
     options.frame = plan.study.frame;
     const HarmonicRoute route(sky, std::move(channels), options, progress);
-    for (std::size_t c = 0; c < route.channel_count(); ++c) {
-        check_interrupt();
-        MapFile file = open_channel_sky(plan, sky, folder, c, route.error_of(c), result);
-        ChannelMaps maps = route.make_channel(c);
-        const std::array<std::vector<double>*, 3> columns{&maps.i, &maps.q, &maps.u};
-        write_pieces(sky.grid, {0, sky.grid.ring_count(), false}, file,
-                     {columns.data(), plan.study.polarized ? 3U : 1U});
-        file.finish();
+    const std::size_t group = std::min<std::size_t>(128, route.group_size());
+    for (std::size_t first = 0; first < route.channel_count(); first += group) {
+        const std::size_t count = std::min(group, route.channel_count() - first);
+        std::vector<MapFile> files;
+        for (std::size_t c = first; c < first + count; ++c)
+            files.push_back(open_channel_sky(plan, sky, folder, c, route.error_of(c), result));
+        stream_channels(
+            sky.grid, route, plan.study.polarized ? 3 : 1, first, count,
+            [&](std::size_t k, const MapPiece& piece, std::span<const std::span<double>> columns,
+                StokesStatistics&) { files[k].write(piece.first_pixel, columns); },
+            [](std::size_t, const StokesStatistics&) {});
+        for (MapFile& file : files)
+            file.finish();
     }
 }
 

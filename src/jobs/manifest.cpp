@@ -148,6 +148,11 @@ JsonValue describe_accuracy(const Plan& plan, const MakeResult& result) {
                               static_cast<std::int64_t>(result.harmonic.intensity_components));
         accuracy.emplace_back("polarized_components",
                               static_cast<std::int64_t>(result.harmonic.polarized_components));
+        accuracy.emplace_back("intensity_skeletons",
+                              static_cast<std::int64_t>(result.harmonic.intensity_skeletons));
+        accuracy.emplace_back("polarized_skeletons",
+                              static_cast<std::int64_t>(result.harmonic.polarized_skeletons));
+        accuracy.emplace_back("rank_error", result.harmonic.rank_error);
         accuracy.emplace_back("transform_error", result.harmonic.transform_error);
         accuracy.emplace_back("transform_refinements", result.harmonic.iterations);
         accuracy.emplace_back("worst_cl_ratio", result.harmonic.worst_cl_ratio);

@@ -8,6 +8,28 @@
 
 namespace foreglow {
 namespace fs = std::filesystem;
+namespace {
+
+// A run leaves files; a folder of the same name, even an empty one, is someone else's.
+void remove_file(const fs::path& file) {
+    std::error_code code;
+    if (!fs::is_directory(fs::symlink_status(file, code))) fs::remove(file, code);
+}
+
+// Tells whether a name that a manifest lists lies within the folder, symbolic links followed.
+bool lies_within(const fs::path& folder, const std::string& name) {
+    const fs::path relative = fs::path(name).lexically_normal();
+    if (relative.is_absolute() || relative.empty() || *relative.begin() == "..") return false;
+    std::error_code code;
+    const fs::path real_folder = fs::weakly_canonical(folder, code);
+    const fs::path real_parent = fs::weakly_canonical((folder / relative).parent_path(), code);
+    const auto [end, rest] =
+        std::mismatch(real_folder.begin(), real_folder.end(), real_parent.begin(), real_parent.end());
+    static_cast<void>(rest);
+    return !code && end == real_folder.end();
+}
+
+}  // namespace
 
 void check_output_folder(const fs::path& folder, bool replace) {
     std::error_code code;
@@ -30,7 +52,7 @@ OutputFolder::~OutputFolder() {
     if (kept_) return;
     std::error_code code;
     for (const fs::path& file : written_)
-        fs::remove(file, code);
+        remove_file(file);
     for (auto made = made_folders_.rbegin(); made != made_folders_.rend(); ++made)
         if (fs::is_empty(*made, code)) fs::remove(*made, code);
 }
@@ -56,11 +78,8 @@ void OutputFolder::remove_earlier_run() {
     const std::vector<std::string> names = list_manifest_outputs(manifest);
     std::error_code code;
     fs::remove(manifest, code);
-    for (const std::string& name : names) {
-        const fs::path relative = fs::path(name).lexically_normal();
-        if (relative.is_absolute() || relative.empty() || *relative.begin() == "..") continue;
-        fs::remove(folder_ / relative, code);
-    }
+    for (const std::string& name : names)
+        if (lies_within(folder_, name)) remove_file(folder_ / name);
     for (const char* sub : {"truth/channels", "truth", "maps", "patches"})
         if (fs::is_directory(folder_ / sub, code) && fs::is_empty(folder_ / sub, code))
             fs::remove(folder_ / sub, code);

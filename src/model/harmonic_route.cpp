@@ -2,11 +2,14 @@
 #include "model/harmonic_route.h"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
+#include <map>
 
 #include "base/error.h"
 #include "base/interrupt.h"
 #include "base/parallel.h"
+#include "base/vector_width.h"
 #include "model/basis_error.h"
 #include "model/component_maps.h"
 #include "model/transform_plan.h"
@@ -28,26 +31,36 @@ std::vector<BandSum> bands_of(const std::vector<Channel>& channels) {
     return bands;
 }
 
-template <class Coefficients>
-Coefficients combine(const std::vector<Coefficients>& terms, const Matrix& weights, std::size_t channel);
-
-template <>
-Alm combine(const std::vector<Alm>& terms, const Matrix& weights, std::size_t channel) {
-    Alm sum(terms.front().lmax());
-    for (std::size_t k = 0; k < terms.size(); ++k)
-        if (weights(channel, k) != 0) add_scaled(sum, weights(channel, k), terms[k]);
+// sum over k of weights(channel, k) terms[k](l, m), read in one pass.
+Alm combine(std::span<const Alm* const> terms, const Matrix& weights, std::size_t channel) {
+    constexpr std::int64_t block = 8192;
+    Alm sum(terms.front()->lmax());
+    const auto out = sum.values();
+    parallel_for_blocks(
+        static_cast<std::int64_t>(out.size()), block, [&](std::int64_t begin, std::int64_t end) {
+            for (std::size_t k = 0; k < terms.size(); ++k) {
+                const double weight = weights(channel, k);
+                if (weight == 0) continue;
+                const auto term = terms[k]->values();
+                for (auto i = static_cast<std::size_t>(begin); i < static_cast<std::size_t>(end); ++i)
+                    out[i] += weight * term[i];
+            }
+        });
     return sum;
 }
 
-template <>
-AlmEB combine(const std::vector<AlmEB>& terms, const Matrix& weights, std::size_t channel) {
-    AlmEB sum{Alm(terms.front().e.lmax()), Alm(terms.front().e.lmax())};
-    for (std::size_t k = 0; k < terms.size(); ++k) {
-        if (weights(channel, k) == 0) continue;
-        add_scaled(sum.e, weights(channel, k), terms[k].e);
-        add_scaled(sum.b, weights(channel, k), terms[k].b);
-    }
-    return sum;
+std::vector<const Alm*> pointers_to(const std::vector<Alm>& alms) {
+    std::vector<const Alm*> pointers;
+    for (const Alm& alm : alms)
+        pointers.push_back(&alm);
+    return pointers;
+}
+
+std::vector<const Alm*> pointers_to(const std::vector<AlmEB>& alms, Alm AlmEB::*part) {
+    std::vector<const Alm*> pointers;
+    for (const AlmEB& alm : alms)
+        pointers.push_back(&(alm.*part));
+    return pointers;
 }
 
 int last_l(std::span<const double> window) {
@@ -57,9 +70,66 @@ int last_l(std::span<const double> window) {
     return static_cast<int>(l) - 1;
 }
 
-void undefine_where(std::span<const double> share, std::vector<double>& values) {
-    for (std::size_t i = 0; i < values.size(); ++i)
-        if (share[i] > largest_filled_share) values[i] = undefined_pixel;
+// out = sum over r of coefficients[r] maps[r]; four maps at a time keep the sums in registers.
+FOREGLOW_WIDE
+void combine_pixels(const double* const* maps, const double* coefficients, std::size_t count, double* out,
+                    std::size_t n) {
+    std::fill_n(out, n, 0.0);
+    std::size_t r = 0;
+    for (; r + 4 <= count; r += 4) {
+        const double *a = maps[r], *b = maps[r + 1], *c = maps[r + 2], *d = maps[r + 3];
+        const double ca = coefficients[r], cb = coefficients[r + 1], cc = coefficients[r + 2],
+                     cd = coefficients[r + 3];
+        for (std::size_t i = 0; i < n; ++i)
+            out[i] += (ca * a[i] + cb * b[i]) + (cc * c[i] + cd * d[i]);
+    }
+    for (; r < count; ++r) {
+        const double* a = maps[r];
+        const double ca = coefficients[r];
+        for (std::size_t i = 0; i < n; ++i)
+            out[i] += ca * a[i];
+    }
+}
+
+constexpr std::size_t pixel_block = 1024;  // a block of every skeleton stays in the second-level cache
+constexpr double strip_bytes = 0.5e9;
+constexpr std::size_t plain_group = 16;  // channels whose maps are held at once where none can be combined
+
+// The skeletons that a channel is made of, and their coefficients.
+struct Terms {
+    std::vector<const double*> maps;
+    std::vector<double> coefficients;
+};
+
+Terms terms_of(const JointRank& rank, const std::vector<std::vector<double>>& maps, std::size_t channel,
+               std::size_t first_channel) {
+    Terms terms;
+    if (rank.is_plain) {
+        terms.maps.push_back(maps[channel - first_channel].data());
+        terms.coefficients.push_back(1.0);
+        return terms;
+    }
+    for (std::size_t r = 0; r < rank.skeletons.size(); ++r) {
+        if (rank.coefficients(channel, r) == 0) continue;
+        terms.maps.push_back(maps[r].data());
+        terms.coefficients.push_back(rank.coefficients(channel, r));
+    }
+    return terms;
+}
+
+void combine_range(const Terms& terms, std::size_t begin, std::span<double> out) {
+    std::vector<const double*> maps(terms.maps.size());
+    for (std::size_t first = 0; first < out.size(); first += pixel_block) {
+        const std::size_t n = std::min(pixel_block, out.size() - first);
+        for (std::size_t r = 0; r < maps.size(); ++r)
+            maps[r] = terms.maps[r] + begin + first;
+        combine_pixels(maps.data(), terms.coefficients.data(), maps.size(), out.data() + first, n);
+    }
+}
+
+void undefine_marked(const std::vector<std::uint8_t>& marks, std::size_t begin, std::span<double> out) {
+    for (std::size_t i = 0; i < out.size(); ++i)
+        if (marks[begin + i] != 0) out[i] = undefined_pixel;
 }
 
 }  // namespace
@@ -68,17 +138,25 @@ HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels,
                              const HarmonicOptions& options, Progress& progress)
     : grid_(sky.grid), sky_frame_(sky.frame), channels_(std::move(channels)), options_(options) {
     FOREGLOW_EXPECTS(!channels_.empty());
-    const double tolerance =
-        options.accuracy / 3;  // basis and transforms share the accuracy, with something in hand
+    for (const Channel& channel : channels_)
+        windows_.push_back(channel_window(channel, options));
+    // Basis, transforms and skeletons share the accuracy: 0.3^2 + 0.5^2 + 0.7^2 < 0.92^2. The last costs most
+    // to lower.
     progress.begin("choosing component maps");
-    make_bases(sky, tolerance);
+    make_bases(sky, 0.3 * options.accuracy);
     progress.end();
     transform_components(sky, progress);
     turn_components(progress);
+    progress.begin("finding skeleton channels");
+    find_skeletons(0.7 * options.accuracy);
+    progress.end();
     const BasisErrors basis_errors = measure_basis_errors(sky, channels_, intensity_basis_,
                                                           options.polarized ? &polarized_basis_ : nullptr);
-    for (std::size_t c = 0; c < channels_.size(); ++c)
-        errors_.push_back(std::hypot(basis_errors.relative[c], report_.transform_error));
+    for (std::size_t c = 0; c < channels_.size(); ++c) {
+        const double rank =
+            std::max(intensity_rank_.errors[c], options.polarized ? polarized_rank_.errors[c] : 0.0);
+        errors_.push_back(std::hypot(basis_errors.relative[c], report_.transform_error, rank));
+    }
 }
 
 void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
@@ -95,7 +173,7 @@ void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
 
 void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress) {
     const auto widest = widest_window(channels_, options_);
-    const TransformPlan plan(grid_, options_.lmax, options_.accuracy / 3, widest.temperature,
+    const TransformPlan plan(grid_, options_.lmax, 0.5 * options_.accuracy, widest.temperature,
                              widest.polarization);
     const ParameterRange range = parameter_range(sky);
     const auto total = static_cast<std::int64_t>(report_.intensity_components + report_.polarized_components);
@@ -159,38 +237,151 @@ void HarmonicReport::add(const TransformState& state) {
     converged = converged && state.converged;
 }
 
-ChannelMaps HarmonicRoute::make_channel(std::size_t channel) const {
-    const BeamWindow window = channel_window(channels_[channel], options_);
-    ChannelMaps maps;
-    Alm t = combine(intensity_alms_, intensity_basis_.weights, channel);
-    multiply_by_l(t, window.temperature);
-    maps.i = synthesize(t, grid_, last_l(window.temperature));
-    if (options_.polarized) {
-        AlmEB eb = combine(polarized_alms_, polarized_basis_.weights, channel);
-        multiply_by_l(eb.e, window.polarization);
-        multiply_by_l(eb.b, window.polarization);
-        StokesValues values = synthesize_spin2(eb, grid_, last_l(window.polarization));
-        maps.q = std::move(values.q);
-        maps.u = std::move(values.u);
+void HarmonicRoute::find_skeletons(double tolerance) {
+    std::vector<std::vector<double>> temperature, polarization;
+    for (const BeamWindow& window : windows_) {
+        temperature.push_back(window.temperature);
+        polarization.push_back(window.polarization);
     }
-    undefine(window, maps);
+    intensity_rank_ =
+        make_joint_rank(component_spectra(intensity_alms_), intensity_basis_.weights, temperature, tolerance);
+    report_.intensity_skeletons = intensity_rank_.skeletons.size();
+    report_.rank_error = *std::max_element(intensity_rank_.errors.begin(), intensity_rank_.errors.end());
+    if (!intensity_rank_.is_plain) {
+        std::vector<Alm> skeletons;
+        for (const std::size_t channel : intensity_rank_.skeletons)
+            skeletons.push_back(intensity_alm(channel));
+        intensity_alms_ = std::move(skeletons);
+    }
+    if (!options_.polarized) return;
+    polarized_rank_ = make_joint_rank(component_spectra(polarized_alms_), polarized_basis_.weights,
+                                      polarization, tolerance);
+    report_.polarized_skeletons = polarized_rank_.skeletons.size();
+    report_.rank_error = std::max(
+        report_.rank_error, *std::max_element(polarized_rank_.errors.begin(), polarized_rank_.errors.end()));
+    if (polarized_rank_.is_plain) return;
+    std::vector<AlmEB> skeletons;
+    for (const std::size_t channel : polarized_rank_.skeletons)
+        skeletons.push_back(polarized_alm(channel));
+    polarized_alms_ = std::move(skeletons);
+}
+
+Alm HarmonicRoute::intensity_alm(std::size_t channel) const {
+    Alm alm = combine(pointers_to(intensity_alms_), intensity_basis_.weights, channel);
+    multiply_by_l(alm, windows_[channel].temperature);
+    return alm;
+}
+
+AlmEB HarmonicRoute::polarized_alm(std::size_t channel) const {
+    AlmEB alm{combine(pointers_to(polarized_alms_, &AlmEB::e), polarized_basis_.weights, channel),
+              combine(pointers_to(polarized_alms_, &AlmEB::b), polarized_basis_.weights, channel)};
+    multiply_by_l(alm.e, windows_[channel].polarization);
+    multiply_by_l(alm.b, windows_[channel].polarization);
+    return alm;
+}
+
+std::size_t HarmonicRoute::group_size() const {
+    const bool plain = intensity_rank_.is_plain || (options_.polarized && polarized_rank_.is_plain);
+    return plain ? plain_group : channels_.size();
+}
+
+std::int64_t HarmonicRoute::strip_pixels() const {
+    const auto held = [&](const JointRank& rank) {
+        return rank.is_plain ? std::min(plain_group, channels_.size()) : rank.skeletons.size();
+    };
+    const std::size_t maps = held(intensity_rank_) + (options_.polarized ? 2 * held(polarized_rank_) : 0);
+    return std::max<std::int64_t>(1 << 18,
+                                  static_cast<std::int64_t>(strip_bytes / (8.0 * static_cast<double>(maps))));
+}
+
+SkeletonStrip HarmonicRoute::make_strip(const RingStrip& strip, std::size_t first, std::size_t count) const {
+    const auto n = static_cast<std::size_t>(pixel_count(grid_, strip));
+    SkeletonStrip out;
+    out.first_channel = first;
+    const auto serve = [&](const JointRank& rank) {
+        std::vector<std::size_t> channels = rank.skeletons;
+        if (rank.is_plain)
+            channels.assign(rank.skeletons.begin() + static_cast<std::ptrdiff_t>(first),
+                            rank.skeletons.begin() + static_cast<std::ptrdiff_t>(first + count));
+        return channels;
+    };
+    const auto intensity = serve(intensity_rank_);
+    for (std::size_t r = 0; r < intensity.size(); ++r) {
+        const int last = last_l(windows_[intensity[r]].temperature);
+        out.i.emplace_back(n);
+        if (intensity_rank_.is_plain)
+            synthesize_strip(intensity_alm(intensity[r]), grid_, strip, out.i.back(), last);
+        else
+            synthesize_strip(intensity_alms_[r], grid_, strip, out.i.back(), last);
+    }
+    if (options_.polarized) {
+        const auto polarized = serve(polarized_rank_);
+        for (std::size_t r = 0; r < polarized.size(); ++r) {
+            const int last = last_l(windows_[polarized[r]].polarization);
+            out.q.emplace_back(n);
+            out.u.emplace_back(n);
+            if (polarized_rank_.is_plain)
+                synthesize_strip_spin2(polarized_alm(polarized[r]), grid_, strip, out.q.back(), out.u.back(),
+                                       last);
+            else
+                synthesize_strip_spin2(polarized_alms_[r], grid_, strip, out.q.back(), out.u.back(), last);
+        }
+    }
+    mark_undefined(strip, first, count, out);
+    return out;
+}
+
+void HarmonicRoute::make_pixels(const SkeletonStrip& strip, std::size_t channel, std::size_t begin,
+                                std::size_t end, std::span<const std::span<double>> out) const {
+    FOREGLOW_EXPECTS(out[0].size() == end - begin && out.size() == (options_.polarized ? 3U : 1U));
+    combine_range(terms_of(intensity_rank_, strip.i, channel, strip.first_channel), begin, out[0]);
+    const std::size_t place = channel - strip.first_channel;
+    if (!strip.undefined_i.empty()) undefine_marked(strip.undefined_i[place], begin, out[0]);
+    if (out.size() == 1) return;
+    combine_range(terms_of(polarized_rank_, strip.q, channel, strip.first_channel), begin, out[1]);
+    combine_range(terms_of(polarized_rank_, strip.u, channel, strip.first_channel), begin, out[2]);
+    if (strip.undefined_p.empty()) return;
+    undefine_marked(strip.undefined_p[place], begin, out[1]);
+    undefine_marked(strip.undefined_p[place], begin, out[2]);
+}
+
+ChannelMaps HarmonicRoute::make_channel(std::size_t channel) const {
+    const RingStrip whole{0, grid_.ring_count(), false};
+    const auto n = static_cast<std::size_t>(grid_.npix());
+    const SkeletonStrip strip = make_strip(whole, channel, 1);
+    ChannelMaps maps;
+    maps.i.resize(n);
+    if (options_.polarized) {
+        maps.q.resize(n);
+        maps.u.resize(n);
+    }
+    const std::array<std::span<double>, 3> columns{maps.i, maps.q, maps.u};
+    make_pixels(strip, channel, 0, n, {columns.data(), options_.polarized ? 3U : 1U});
     return maps;
 }
 
 Angle HarmonicRoute::narrowest_beam() const {
     Angle narrowest = Angle::from_degrees(180);
-    for (const Channel& channel : channels_)
-        narrowest = std::min(narrowest, equivalent_fwhm(channel_window(channel, options_), grid_));
+    for (const BeamWindow& window : windows_)
+        narrowest = std::min(narrowest, equivalent_fwhm(window, grid_));
     return narrowest;
 }
 
-void HarmonicRoute::undefine(const BeamWindow& window, ChannelMaps& maps) const {
-    const Angle fwhm = equivalent_fwhm(window, grid_);
-    if (filled_intensity_->any()) undefine_where(filled_intensity_->under_beam(fwhm, options_.frame), maps.i);
-    if (!filled_polarization_ || !filled_polarization_->any()) return;
-    const auto share = filled_polarization_->under_beam(fwhm, options_.frame);
-    undefine_where(share, maps.q);
-    undefine_where(share, maps.u);
+void HarmonicRoute::mark_undefined(const RingStrip& strip, std::size_t first, std::size_t count,
+                                   SkeletonStrip& out) const {
+    const auto mark = [&](const FilledShare& share, std::vector<std::vector<std::uint8_t>>& marks) {
+        std::map<double, std::vector<std::uint8_t>> of_width;  // channels often share a beam
+        for (std::size_t c = first; c < first + count; ++c) {
+            const Angle fwhm = equivalent_fwhm(windows_[c], grid_);
+            auto& found = of_width[fwhm.radians()];
+            if (found.empty())
+                for (const double s : share.on_strip(fwhm, options_.frame, strip))
+                    found.push_back(s > largest_filled_share ? 1 : 0);
+            marks.push_back(found);
+        }
+    };
+    if (filled_intensity_->any()) mark(*filled_intensity_, out.undefined_i);
+    if (filled_polarization_ && filled_polarization_->any()) mark(*filled_polarization_, out.undefined_p);
 }
 
 }  // namespace foreglow

@@ -28,10 +28,17 @@ std::shared_ptr<const SkyMap> share_filled(const HealpixGrid& grid, Frame frame,
     return std::make_shared<const SkyMap>(SkyMap{grid, frame, "", std::move(filled)});
 }
 
+// A finer template has structure above lmax: analysed only up to lmax it would be pressed into the larger
+// scales.
+int analysis_lmax(const HealpixGrid& from, const HealpixGrid& to, int lmax) {
+    return from.nside() > to.nside() ? 2 * lmax : lmax;
+}
+
 PixelField bring_intensity(SkyMap map, const HealpixGrid& grid, int lmax, Progress& progress) {
     if (map.grid == grid) return PixelField::of_map(std::make_shared<const SkyMap>(std::move(map)));
     progress.notice(regrid_notice("intensity template", map.grid, grid, trusted_lmax(map.grid, lmax)));
-    AnalysedMap result = analyse_filled(map, lmax, template_tolerance);
+    AnalysedMap result = analyse_filled(map, analysis_lmax(map.grid, grid, lmax), template_tolerance);
+    result.alm = with_lmax(result.alm, trusted_lmax(map.grid, lmax));
     return PixelField::harmonic(std::move(result.alm), map.frame,
                                 share_filled(map.grid, map.frame, std::move(result.filled)));
 }
@@ -43,7 +50,9 @@ StokesField bring_stokes(StokesMaps maps, const HealpixGrid& grid, Frame frame, 
     progress.notice(
         regrid_notice("polarization template", maps.grid, grid, trusted_lmax(maps.grid, lmax)) +
         (maps.frame == frame ? "" : " and turned from " + to_text(maps.frame) + " to " + to_text(frame)));
-    AnalysedStokes result = analyse_filled(maps, lmax, template_tolerance);
+    AnalysedStokes result = analyse_filled(maps, analysis_lmax(maps.grid, grid, lmax), template_tolerance);
+    result.alm = {with_lmax(result.alm.e, trusted_lmax(maps.grid, lmax)),
+                  with_lmax(result.alm.b, trusted_lmax(maps.grid, lmax))};
     if (maps.frame != frame) rotate_alm(result.alm, maps.frame, frame);
     return {std::move(result.alm), share_filled(maps.grid, maps.frame, std::move(result.filled))};
 }

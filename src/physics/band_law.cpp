@@ -6,7 +6,6 @@
 
 #include "base/constants.h"
 #include "base/error.h"
-#include "base/text.h"
 #include "base/vector_width.h"
 #include "math/least_squares.h"
 #include "math/vector_exp.h"
@@ -137,12 +136,10 @@ BandLaw::BandLaw(const BandSum& band, Frequency reference, const ParameterRange&
         worst_error_ = error_on_check_grid(band, reference, range);
         if (worst_error_ <= tolerance) return;
     }
-    kernel_.degree = Kernel::highest_degree;
-    throw NumericError("the average over the band around " +
-                       to_text(Frequency::from_hz(reference.hz() * std::exp(kernel_.log_ref))) +
-                       " reaches a relative error of " + format_number(worst_error_, 2) + ", not the " +
-                       format_number(tolerance, 2) +
-                       " asked for: narrow the band, or the range of the index map");
+    worst_error_ = 0;
+    for (const double hz : band.hz)
+        log_ratios_.push_back(std::log(hz / reference.hz()));
+    band_weights_ = band.weights;
 }
 
 void BandLaw::fit(const BandSum& band, Frequency reference, const ParameterRange& range) {
@@ -190,6 +187,14 @@ double BandLaw::error_on_check_grid(const BandSum& band, Frequency reference,
 void BandLaw::evaluate(std::span<const double> index, std::span<const double> curvature,
                        std::span<double> out, ExpPrecision precision) const {
     FOREGLOW_EXPECTS(index.size() == out.size() && curvature.size() == out.size());
+    if (!log_ratios_.empty()) {
+        std::fill(out.begin(), out.end(), 0.0);
+        for (std::size_t k = 0; k < log_ratios_.size(); ++k)
+            for (std::size_t p = 0; p < out.size(); ++p)
+                out[p] += band_weights_[k] *
+                          vector_exp((index[p] + curvature[p] * log_ratios_[k]) * log_ratios_[k]);
+        return;
+    }
     if (precision == ExpPrecision::Single)
         run_single(kernel_, index.data(), curvature.data(), out.data(), out.size());
     else
@@ -198,7 +203,7 @@ void BandLaw::evaluate(std::span<const double> index, std::span<const double> cu
 
 double BandLaw::value(double index, double curvature) const {
     double out = 0;
-    run_double(kernel_, &index, &curvature, &out, 1);
+    evaluate({&index, 1}, {&curvature, 1}, {&out, 1});
     return out;
 }
 

@@ -30,9 +30,9 @@ struct ParameterRange {
 class BandLaw {
   public:
     /// Fits the correction by least squares on Chebyshev points and raises d until a grid between them agrees
-    /// with the exact sum.
+    /// with the exact sum; where degree 12 does not reach the tolerance (a band of several octaves), the
+    /// exact sum itself is used, slowly.
     /// @param tolerance  largest relative error allowed over the range, 1e-12 or more
-    /// @throws NumericError when degree 12 does not reach the tolerance
     BandLaw(const BandSum& band, Frequency reference, const ParameterRange& range, double tolerance);
 
     /// Returns the largest relative error found over the range.
@@ -64,6 +64,7 @@ class BandLaw {
     [[nodiscard]] double error_on_check_grid(const BandSum& band, Frequency reference,
                                              const ParameterRange& range) const;
     Kernel kernel_;
+    std::vector<double> log_ratios_, band_weights_;  // of the exact sum, where it is used
     double worst_error_ = 0;
 };
 

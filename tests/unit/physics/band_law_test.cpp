@@ -35,6 +35,16 @@ TEST(BandLaw, AgreesWithTheExactSumBetweenItsPoints) {
         }
 }
 
+TEST(BandLaw, UsesTheExactSumWhereNoPolynomialWillDo) {
+    const Frequency nu0 = Frequency::from_ghz(0.408);
+    const BandSum sum = band(1, 1000);
+    const BandLaw law(sum, nu0, wide, 1e-12);
+    EXPECT_EQ(law.worst_error(), 0.0);
+    for (const double beta : {-3.4, -2.7, -2.4})
+        EXPECT_NEAR(law.value(beta, -0.1) / exact_band_value(sum, nu0, beta, -0.1), 1,
+                    1e-14);  // two exponentials, 4e-16 each
+}
+
 TEST(BandLaw, OneFrequencyIsTheLawItself) {
     const Frequency nu0 = Frequency::from_ghz(23);
     const BandLaw law(band(70, 70), nu0, wide, 1e-12);

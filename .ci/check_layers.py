@@ -25,6 +25,7 @@ LIBRARIES = [
     ("xxHash", re.compile(r"#\s*include\s*[<\"]xxh"), {"io"}),
     ("Cairo", re.compile(r"#\s*include\s*[<\"]cairo"), {"picture"}),
     ("FreeType", re.compile(r"#\s*include\s*[<\"](ft2build\.h|freetype)|#\s*include\s*FT_"), {"picture"}),
+    ("zlib", re.compile(r"#\s*include\s*[<\"]zlib"), {"picture"}),
     ("CLI11", re.compile(r"#\s*include\s*[<\"]CLI/"), {"app"}),
 ]
 # These headers are slow to read, so each is read once in the whole build.

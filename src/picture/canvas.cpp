@@ -6,8 +6,12 @@
 #include <cstdint>
 #include <cstring>
 #include <numbers>
+#include <utility>
+#include <vector>
 
 #include "base/error.h"
+#include "picture/colour_table.h"
+#include "picture/png.h"
 #include "picture/typeface.h"
 
 namespace foreglow {
@@ -55,13 +59,20 @@ void apply(cairo_t* context, const Stroke& stroke) {
 }  // namespace
 
 struct Canvas::Implementation {
-    Typeface typeface;
+    std::shared_ptr<const Typeface> typeface;
     cairo_surface_t* surface = nullptr;
     cairo_t* context = nullptr;
 
-    Implementation(int width, int height)
-        : surface(cairo_image_surface_create(CAIRO_FORMAT_RGB24, width, height)),
-          context(cairo_create(surface)) {}
+    Implementation(cairo_format_t format, int width, int height, std::shared_ptr<const Typeface> letters)
+        : typeface(letters ? std::move(letters) : std::make_shared<const Typeface>()),
+          surface(cairo_image_surface_create(format, width, height)),
+          context(cairo_create(surface)) {
+        if (cairo_status(context) == CAIRO_STATUS_SUCCESS) return;
+        cairo_destroy(context);
+        cairo_surface_destroy(surface);
+        throw InputError("a picture of " + std::to_string(width) + " x " + std::to_string(height) +
+                         " pixels cannot be made here: ask for a smaller width");
+    }
     ~Implementation() {
         cairo_destroy(context);
         cairo_surface_destroy(surface);
@@ -75,15 +86,20 @@ struct Canvas::Implementation {
     }
 };
 
-Canvas::Canvas(int width, int height, Rgb background)
-    : implementation_(std::make_unique<Implementation>(width, height)) {
+Canvas::Canvas(std::unique_ptr<Implementation> implementation) : implementation_(std::move(implementation)) {}
+
+Canvas::Canvas(int width, int height, Rgb background, std::shared_ptr<const Typeface> letters)
+    : Canvas(std::make_unique<Implementation>(CAIRO_FORMAT_RGB24, width, height, std::move(letters))) {
     FOREGLOW_EXPECTS(width > 0 && height > 0);
-    if (cairo_status(implementation_->context) != CAIRO_STATUS_SUCCESS)
-        throw InputError("a picture of " + std::to_string(width) + " x " + std::to_string(height) +
-                         " pixels cannot be made here: ask for a smaller width");
     set_colour(implementation_->context, background);
     cairo_paint(implementation_->context);
 }
+
+Canvas Canvas::make_layer(int width, int height, std::shared_ptr<const Typeface> letters) {
+    FOREGLOW_EXPECTS(width > 0 && height > 0);
+    return Canvas(std::make_unique<Implementation>(CAIRO_FORMAT_ARGB32, width, height, std::move(letters)));
+}
+
 Canvas::~Canvas() = default;
 Canvas::Canvas(Canvas&&) noexcept = default;
 Canvas& Canvas::operator=(Canvas&&) noexcept = default;
@@ -102,6 +118,13 @@ Rgb Canvas::pixel(int x, int y) const {
     std::memcpy(&word, implementation_->row(y) + 4 * static_cast<std::ptrdiff_t>(x), 4);
     return {static_cast<std::uint8_t>(word >> 16U), static_cast<std::uint8_t>(word >> 8U),
             static_cast<std::uint8_t>(word)};
+}
+
+void Canvas::lay_over(const Canvas& layer) {
+    cairo_t* const context = implementation_->context;
+    cairo_set_source_surface(context, layer.implementation_->surface, 0, 0);
+    cairo_rectangle(context, 0, 0, layer.width(), layer.height());
+    cairo_fill(context);
 }
 
 void Canvas::paste(int x, int y, int width, int height, std::span<const Rgb> colours) {
@@ -166,7 +189,7 @@ void Canvas::release() {
 }
 
 double Canvas::text_width(std::string_view text, double size) const {
-    return implementation_->typeface.width(text, size);
+    return implementation_->typeface->width(text, size);
 }
 
 void Canvas::text(double x, double y, std::string_view text, const Lettering& lettering) {
@@ -185,7 +208,7 @@ void Canvas::text(double x, double y, std::string_view text, const Lettering& le
                            [context](double ax, double ay, double bx, double by, double px, double py) {
                                cairo_curve_to(context, ax, ay, bx, by, px, py);
                            }};
-    implementation_->typeface.trace(text, lettering.size, sink);
+    implementation_->typeface->trace(text, lettering.size, sink);
     if (lettering.halo > 0) {
         set_colour(context, lettering.halo_colour);
         cairo_set_line_width(context, 2 * lettering.halo);
@@ -202,6 +225,30 @@ std::string Canvas::png() const {
     if (cairo_surface_write_to_png_stream(implementation_->surface, append, &bytes) != CAIRO_STATUS_SUCCESS)
         throw FileError("the picture could not be turned into a PNG file: memory may have run out");
     return bytes;
+}
+
+std::string Canvas::png(ColourTable& table) const {
+    cairo_surface_flush(implementation_->surface);
+    const auto across = static_cast<std::size_t>(width()), rows = static_cast<std::size_t>(height());
+    std::vector<std::uint8_t> indices(across * rows);
+    std::uint8_t* to = indices.data();
+    std::uint32_t last = 0;
+    std::uint8_t index = table.nearest({0, 0, 0});
+    for (int y = 0; y < height(); ++y) {
+        const unsigned char* from = implementation_->row(y);
+        for (std::size_t x = 0; x < across; ++x, from += 4) {
+            std::uint32_t word = 0;
+            std::memcpy(&word, from, 4);
+            word &= 0xFFFFFFU;
+            if (word != last)
+                index =
+                    table.nearest({static_cast<std::uint8_t>(word >> 16U),
+                                   static_cast<std::uint8_t>(word >> 8U), static_cast<std::uint8_t>(word)});
+            last = word;
+            *to++ = index;
+        }
+    }
+    return write_indexed_png(width(), height(), indices, table.colours());
 }
 
 }  // namespace foreglow

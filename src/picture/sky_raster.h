@@ -16,6 +16,13 @@ struct SkyRaster {
     std::vector<float> undefined_shares;  ///< share of each picture pixel that is undefined sky, 0 to 1
 };
 
+/// Returns a raster without sky: values NaN and shares 0.
+[[nodiscard]] SkyRaster make_empty_raster(int width, int height);
+
+/// Tells whether a map is so fine that a picture averages over it (make_all_sky_raster); coarse maps are
+/// sampled.
+[[nodiscard]] bool is_finer_than_picture(const HealpixGrid& grid, int width, int height);
+
 /// Projects a whole map on an ellipse (Mollweide) that touches all four sides; longitude grows to the left
 /// from the centre.
 ///

@@ -8,7 +8,6 @@
 #include <cmath>
 #include <cstdint>
 #include <fstream>
-#include <iterator>
 #include <string>
 #include <vector>
 
@@ -20,13 +19,15 @@ namespace {
 constexpr const char* font_path = "/usr/share/fonts/truetype/dejavu/DejaVuSans.ttf";
 
 std::vector<FT_Byte> read_font() {
-    std::ifstream file(font_path, std::ios::binary);
-    std::vector<char> bytes((std::istreambuf_iterator<char>(file)), std::istreambuf_iterator<char>());
+    std::ifstream file(font_path, std::ios::binary | std::ios::ate);
+    std::vector<FT_Byte> bytes(file ? static_cast<std::size_t>(file.tellg()) : 0);
+    file.seekg(0);
+    file.read(reinterpret_cast<char*>(bytes.data()), static_cast<std::streamsize>(bytes.size()));
     if (!file || bytes.empty())
         throw FileError(std::string("the font ") + font_path +
                         ", which pictures are lettered with, cannot be read: install the package "
                         "fonts-dejavu-core");
-    return {bytes.begin(), bytes.end()};
+    return bytes;
 }
 
 /// Takes the next character off UTF-8 text; a broken sequence gives U+FFFD for its first byte.

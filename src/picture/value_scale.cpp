@@ -11,7 +11,8 @@
 namespace foreglow {
 namespace {
 
-constexpr std::size_t largest_sample = 2'000'000;
+// Of these, 164 lie beyond a percentile of 0.5, which is therefore known to 8 % of itself.
+constexpr std::size_t largest_sample = 32'768;
 
 double percentile(std::vector<double>& sample, double percent) {
     const auto last = static_cast<double>(sample.size() - 1);
@@ -149,6 +150,25 @@ double ValueScale::bent(double value) const {
 
 double ValueScale::position(double value) const {
     return (bent(value) - bent_low_) / bent_span_;
+}
+
+void ValueScale::positions(std::span<const double> values, std::span<double> out) const {
+    FOREGLOW_EXPECTS(out.size() == values.size());
+    for (std::size_t i = 0; i < values.size(); ++i) {
+        const double value = values[i];
+        double on_scale = value;
+        if (std::isnan(value)) {
+            // Most of what lies outside the sky: no logarithm for it.
+        } else if (kind_ == ScaleKind::Log) {
+            on_scale = value > 0 ? std::log10(value) : -std::numeric_limits<double>::infinity();
+        } else if (kind_ == ScaleKind::Signed) {
+            // The inverse hyperbolic sine by one logarithm: a rounding of 1 near 0, which the exact one would
+            // spare, is invisible.
+            const double size = std::abs(value) / knee_;
+            on_scale = std::copysign(std::log(size + std::sqrt(size * size + 1)), value);
+        }
+        out[i] = (on_scale - bent_low_) / bent_span_;
+    }
 }
 
 ScaleChoice choose_scale(std::span<const double> values, const ScaleRequest& request) {

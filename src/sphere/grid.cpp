@@ -7,12 +7,42 @@
 
 #include "base/constants.h"
 #include "base/error.h"
+#include "base/vector_width.h"
 
 namespace foreglow {
 namespace {
 
 T_Healpix_Base<int64> make_base(int nside, Healpix_Ordering_Scheme scheme) {
     return {nside, scheme, SET_NSIDE};
+}
+
+/// The closed forms of Gorski et al. 2005, section 5.2: jp and jm number the lines of pixel edges that ascend
+/// and descend eastwards.
+FOREGLOW_WIDE void find_in_belt(int nside, double cos_theta, const double* turns, std::size_t count,
+                                std::int32_t* out) {
+    const double slope = 0.75 * nside * cos_theta;
+    const std::int32_t around = 4 * nside, first = 2 * nside * (nside - 1);
+    for (std::size_t k = 0; k < count; ++k) {
+        const double across = nside * (0.5 + 4.0 * turns[k]);
+        const auto jp = static_cast<std::int32_t>(across - slope),
+                   jm = static_cast<std::int32_t>(across + slope);
+        const std::int32_t ring = nside + 1 + jp - jm;  // 1 to 2 nside + 1 within the belt
+        const std::int32_t column = (jp + jm - nside + 2 - (ring & 1) + 2 * around) >> 1;
+        out[k] = first + (ring - 1) * around + (column & (around - 1));
+    }
+}
+
+FOREGLOW_WIDE void find_in_cap(int nside, bool south, double from_pole, const double* turns,
+                               std::size_t count, std::int32_t* out) {
+    const std::int32_t npix = 12 * nside * nside;
+    for (std::size_t k = 0; k < count; ++k) {
+        const double quarters = turns[k] < 1 ? 4.0 * turns[k] : 0.0;
+        const double within = quarters - static_cast<std::int32_t>(quarters);
+        const auto jp = static_cast<std::int32_t>(within * from_pole);
+        const auto jm = static_cast<std::int32_t>((1.0 - within) * from_pole);
+        const std::int32_t ring = jp + jm + 1, column = static_cast<std::int32_t>(quarters * ring);
+        out[k] = south ? npix - 2 * ring * (ring + 1) + column : 2 * ring * (ring - 1) + column;
+    }
 }
 
 bool is_pixel(const HealpixGrid& grid, std::int64_t pixel) {
@@ -101,6 +131,17 @@ void HealpixGrid::directions(std::int64_t first, std::span<Vector3> out) const {
         v = {row.sin_theta * std::cos(phi), row.sin_theta * std::sin(phi), row.cos_theta};
         ++column;
     }
+}
+
+void HealpixGrid::pixels_on_parallel(double cos_theta, double sin_theta, std::span<const double> turns,
+                                     std::span<std::int32_t> out) const {
+    FOREGLOW_EXPECTS(out.size() == turns.size());
+    const double height = std::abs(cos_theta);
+    if (height <= 2.0 / 3.0)
+        find_in_belt(nside_, cos_theta, turns.data(), turns.size(), out.data());
+    else  // sin^2 / (1 + |z|) is 1 - |z| without the loss of digits near a pole
+        find_in_cap(nside_, cos_theta < 0, nside_ * sin_theta * std::sqrt(3.0 / (1.0 + height)), turns.data(),
+                    turns.size(), out.data());
 }
 
 void HealpixGrid::nested_numbers(std::int64_t first, std::span<std::int64_t> out) const {

@@ -52,6 +52,10 @@ class HealpixGrid {
 
     /// Writes the unit vectors of the centres of pixels first, first + 1, ...; faster than one by one.
     void directions(std::int64_t first, std::span<Vector3> out) const;
+    /// Writes the pixels that hold places of one colatitude; no trigonometric function is called.
+    /// @param turns  azimuths / 2 pi, in [0, 1]
+    void pixels_on_parallel(double cos_theta, double sin_theta, std::span<const double> turns,
+                            std::span<std::int32_t> out) const;
     /// Writes the nested numbers of RING pixels first, first + 1, ...
     void nested_numbers(std::int64_t first, std::span<std::int64_t> out) const;
     /// Writes the RING numbers of nested pixels first, first + 1, ...

@@ -121,6 +121,50 @@ TEST(AllSkyPicture, GivesTheSameBytesForAnyNumberOfThreads) {
     EXPECT_EQ(one, four);
 }
 
+TEST(AllSkyPainter, DrawsEachPictureAsAFreshOneDoes) {
+    AllSkyPainter painter;
+    PictureOptions options;
+    options.few_colours = true;
+    const int before = thread_count();
+    for (const int width : {640, 500})
+        for (const int nside : {32, 16, 256})
+            for (const ScaleKind kind : {ScaleKind::Log, ScaleKind::Signed}) {
+                options.width = width;
+                options.scale.kind = kind;
+                options.title = nside == 16 ? "" : "Title";
+                set_thread_count(1);
+                const std::string fresh = AllSkyPainter().draw(make_sky(nside), options).png;
+                set_thread_count(3);
+                EXPECT_EQ(painter.draw(make_sky(nside), options).png, fresh) << width << ' ' << nside;
+                EXPECT_EQ(painter.draw(make_sky(nside), options).png, fresh) << width << ' ' << nside;
+            }
+    set_thread_count(before);
+}
+
+TEST(AllSkyPainter, LooksLikeTheSinglePicture) {
+    PictureOptions options;
+    options.title = "Title";
+    options.width = 640;
+    const auto single = testing::read_png(draw_all_sky(make_sky(), options).png);
+    const auto far = [&](const testing::PngPixels& other) {
+        int most = 0;
+        for (std::size_t i = 0; i < single.pixels.size(); ++i) {
+            const Rgb a = single.pixels[i], b = other.pixels.at(i);
+            most = std::max(
+                {most, std::abs(a.red - b.red), std::abs(a.green - b.green), std::abs(a.blue - b.blue)});
+        }
+        return most;
+    };
+    // Axes drawn on a layer first are rounded once more for each of up to four strokes.
+    EXPECT_LE(far(testing::read_png(AllSkyPainter().draw(make_sky(), options).png)), 4);
+    // Blends of letters with the sky have the coarsest colours in the table: a quarter of the way from paper
+    // to ink.
+    options.few_colours = true;
+    const std::string few = AllSkyPainter().draw(make_sky(), options).png;
+    EXPECT_LE(far(testing::read_png(few)), 64);
+    EXPECT_LT(few.size(), 150000u);
+}
+
 TEST(AllSkyPicture, CutsTitlesThatAreTooLong) {
     PictureOptions options;
     options.width = 400;

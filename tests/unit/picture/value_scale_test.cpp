@@ -31,6 +31,26 @@ TEST(ValueScale, PutsEndsAndMiddleWhereTheLawSays) {
     EXPECT_THROW(ValueScale(ScaleKind::Log, 0, 1), ContractError);
 }
 
+TEST(ValueScale, GivesManyPositionsAsOne) {
+    const double infinity = std::numeric_limits<double>::infinity();
+    const std::vector<double> values{-1e30, -3, -1e-9, 0, 1e-12, 0.4, 1, 7, 1e5, 1e30, infinity, nan};
+    std::vector<double> found(values.size());
+    for (const ScaleKind kind : {ScaleKind::Linear, ScaleKind::Log, ScaleKind::Signed}) {
+        const ValueScale scale(kind, kind == ScaleKind::Log ? 0.1 : -1e4, 1e4, 2.0);
+        scale.positions(values, found);
+        for (std::size_t i = 0; i < values.size(); ++i) {
+            const double one = scale.position(values[i]);
+            if (std::isnan(values[i]))
+                EXPECT_TRUE(std::isnan(found[i]));
+            else if (std::isfinite(one))
+                EXPECT_NEAR(found[i], one,
+                            1e-14 * std::max(1.0, std::abs(one)));  // logarithms near 1: 1e-16 each
+            else
+                EXPECT_EQ(found[i], one);
+        }
+    }
+}
+
 TEST(ChooseScale, TakesPercentilesOfTheValues) {
     const auto choice = choose_scale(ramp(-500, -400), {});
     EXPECT_EQ(choice.scale.kind(), ScaleKind::Linear);

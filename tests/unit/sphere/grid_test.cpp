@@ -97,5 +97,32 @@ TEST(HealpixGrid, RefusesWhatIsNoGridOrPixel) {
     EXPECT_THROW((void)HealpixGrid(4).ring(15), ContractError);
 }
 
+// Oracle: vec2pix of HEALPix C++, place by place.
+TEST(HealpixGrid, FindsThePixelsOfAParallelAsPixelAtDoes) {
+    for (const int nside : {1, 2, 16, 512}) {
+        const HealpixGrid grid(nside);
+        std::vector<double> turns;
+        for (int k = 0; k < 1000; ++k)
+            turns.push_back((k + 0.371) / 1000);
+        std::vector<std::int32_t> found(turns.size());
+        for (int j = 0; j < 301; ++j) {
+            const double z = 1.0 - (j + 0.123) / 150.3;
+            const double s = std::sqrt((1 - z) * (1 + z));
+            grid.pixels_on_parallel(z, s, turns, found);
+            for (std::size_t k = 0; k < turns.size(); ++k) {
+                const double phi = 2 * constants::pi * turns[k];
+                ASSERT_EQ(found[k], grid.pixel_at({s * std::cos(phi), s * std::sin(phi), z}))
+                    << nside << ' ' << z;
+            }
+        }
+        const std::vector<double> ends{0.0, 1.0};
+        std::vector<std::int32_t> same(2);
+        for (const double z : {0.9, 0.01, -0.9}) {
+            grid.pixels_on_parallel(z, std::sqrt(1 - z * z), ends, same);
+            EXPECT_EQ(same[0], same[1]);
+        }
+    }
+}
+
 }  // namespace
 }  // namespace foreglow

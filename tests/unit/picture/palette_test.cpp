@@ -5,6 +5,7 @@
 
 #include <cmath>
 #include <cstdlib>
+#include <limits>
 
 #include "base/error.h"
 
@@ -70,7 +71,7 @@ TEST(Palette, FlatColoursAreFoundInNoPalette) {
 TEST(Palette, TakesTheEndsBeyondTheRange) {
     const Palette palette(PaletteKind::Grey);
     EXPECT_EQ(palette.at(-3), palette.at(0));
-    EXPECT_EQ(palette.at(INFINITY), palette.at(1));
+    EXPECT_EQ(palette.at(std::numeric_limits<double>::infinity()), palette.at(1));
 }
 
 TEST(Palette, RefusesAnUnknownName) {

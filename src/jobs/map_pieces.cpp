@@ -3,14 +3,27 @@
 
 #include <algorithm>
 
-#include "base/constants.h"
-
 namespace foreglow {
 namespace {
 
 constexpr std::int64_t piece_pixels =
     8192;  // the sky of a piece and its columns stay in the second-level cache
 constexpr int preview_nside = 128;
+
+/// Returns the place along its ring of the pixel that touches the centre of a coarser grid's pixel from the
+/// north, a child of it: in each quarter of a cap, pixel k of ring i is number k of i in steps of the edge
+/// lines (Gorski et al. 2005, section 5.1), and in the belt both centres have one azimuth.
+std::int64_t column_of_child(const HealpixGrid& coarse, int ring, int column, int finer) {
+    const int n = coarse.nside(), from_north = ring + 1, from_south = 4 * n - from_north;
+    const std::int64_t f = finer;
+    if (from_north <= n)
+        return column / from_north * (f * from_north - 1) + column % from_north * f + f / 2 - 1;
+    if (from_south < n) return column / from_south * (f * from_south + 1) + column % from_south * f + f / 2;
+    const HealpixGrid::Ring from = coarse.ring(ring);
+    // Centres of ring f r - 1 are shifted by half a pixel where (f r - 1) - f n is even: never, as f is.
+    const double shift = from.phi0 > 0 ? 0.5 : 0.0;
+    return static_cast<std::int64_t>(static_cast<double>(f) * (column + shift));
+}
 
 }  // namespace
 
@@ -35,17 +48,12 @@ PreviewSampler::PreviewSampler(const HealpixGrid& grid, Frame frame, const std::
     places_.reserve(static_cast<std::size_t>(small.npix()));
     const int finer = grid.nside() / small.nside();
     for (int r = 0; r < small.ring_count(); ++r) {
-        // A centre of the small grid is a corner of the fine one: take the pixel north of it. Rings and
-        // columns ascend together, which leaves the places in order.
+        // Rings and columns ascend together, which leaves the places in order.
         const HealpixGrid::Ring from = small.ring(r);
         const HealpixGrid::Ring to = grid.ring(finer == 1 ? r : finer * (r + 1) - 2);
-        const double per_radian = to.pixels / (2 * constants::pi);
-        for (int c = 0; c < from.pixels; ++c) {
-            const double phi = from.phi0 + 2 * constants::pi * c / from.pixels;
-            const auto column = static_cast<std::int64_t>((phi - to.phi0) * per_radian + 0.5);
-            places_.push_back(
-                {to.first_pixel + std::min<std::int64_t>(column, to.pixels - 1), from.first_pixel + c});
-        }
+        for (int c = 0; c < from.pixels; ++c)
+            places_.push_back({to.first_pixel + (finer == 1 ? c : column_of_child(small, r, c, finer)),
+                               from.first_pixel + c});
     }
 }
 

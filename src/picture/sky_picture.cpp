@@ -139,15 +139,19 @@ Layout make_layout(const PictureOptions& options, const Box& map, const Surround
     return layout;
 }
 
-/// The common end of both kinds of picture: title, caption, colour bar, bytes.
+void draw_caption(Canvas& canvas, const Layout& layout, const std::string& caption) {
+    const double f = layout.font;
+    draw_fitted(canvas, canvas.width() / 2.0, layout.caption_baseline, caption,
+                {.size = 0.85 * f, .colour = faint_ink}, canvas.width() - 2 * f);
+}
+
+/// The common end of both kinds of picture: title, colour bar, bytes.
 Picture finish(Canvas& canvas, Layout layout, const SkyMap& map, const PictureOptions& options,
-               const std::string& caption, ScaleChoice choice, Colours& colours) {
+               ScaleChoice choice, Colours& colours) {
     const double f = layout.font, middle = canvas.width() / 2.0, room = canvas.width() - 2 * f;
     if (!options.title.empty())
         draw_fitted(canvas, middle, layout.title_baseline, options.title, {.size = 1.3 * f, .colour = ink},
                     room);
-    draw_fitted(canvas, middle, layout.caption_baseline, caption, {.size = 0.85 * f, .colour = faint_ink},
-                room);
     layout.bar.label = bar_label(map, options, choice.scale);
     draw_colour_bar(canvas, layout.bar, choice, colours.palette);
     return {options.few_colours ? canvas.png(colours.table()) : canvas.png(), canvas.width(), canvas.height(),
@@ -159,11 +163,12 @@ PaletteKind palette_for(const PictureOptions& options, const ValueScale& scale) 
     return options.palette.value_or(is_signed ? PaletteKind::Diverging : PaletteKind::Sequential);
 }
 
-void draw_ellipse_axes(Canvas& canvas, const Layout& layout) {
+void draw_ellipse_axes(Canvas& canvas, const Layout& layout, const std::string& caption) {
     const Box& map = layout.map;
     canvas.fill_around_ellipse({map.x - 1, map.y - 1, map.width + 2, map.height + 2}, map, paper);
     draw_ellipse_graticule(canvas, map, layout.font);
     canvas.stroke_ellipse(map, {ink, hairline(layout.font)});
+    draw_caption(canvas, layout, caption);
 }
 
 }  // namespace
@@ -173,19 +178,22 @@ struct AllSkyPainter::Implementation {
     std::map<PaletteKind, Colours> colours;
     bool draws_many = true;
     std::optional<SkyLattice> lattice;
-    std::optional<Canvas> axes;  ///< what surrounds and crosses the map, for axes_layout
+    std::optional<Canvas> axes;  ///< what surrounds and crosses the map, for the following
     Layout axes_layout;
+    std::string axes_caption;
 
-    void draw_axes(Canvas& canvas, const Layout& layout) {
-        if (!draws_many) return draw_ellipse_axes(canvas, layout);
+    void draw_axes(Canvas& canvas, const Layout& layout, const std::string& caption) {
+        if (!draws_many) return draw_ellipse_axes(canvas, layout, caption);
         const Box &a = axes_layout.map, &b = layout.map;
         const bool fits = axes && axes->width() == canvas.width() && axes_layout.font == layout.font &&
-                          a.x == b.x && a.y == b.y && a.width == b.width && a.height == b.height;
+                          a.x == b.x && a.y == b.y && a.width == b.width && a.height == b.height &&
+                          axes_caption == caption;
         if (!fits) {
-            const int height = std::min(canvas.height(), static_cast<int>(b.y + b.height) + 2);
+            const int height = std::min(canvas.height(), static_cast<int>(layout.bar.bar.y));
             axes.emplace(Canvas::make_layer(canvas.width(), height, letters));
             axes_layout = layout;
-            draw_ellipse_axes(*axes, layout);
+            axes_caption = caption;
+            draw_ellipse_axes(*axes, layout, caption);
         }
         canvas.lay_over(*axes);
     }
@@ -218,12 +226,12 @@ Picture AllSkyPainter::draw(const SkyMap& map, const PictureOptions& options) {
     const SkyRaster raster = implementation_->make_raster(map, map_width, map_height);
     canvas.paste(static_cast<int>(left), static_cast<int>(layout.map.y), map_width, map_height,
                  make_colours(raster, choice.scale, colours.palette));
-    implementation_->draw_axes(canvas, layout);
     const CoordinateNames names = coordinate_names(map.frame);
     const std::string caption = names.longitude + " (grows to the left, 0\u00b0 in the middle) and " +
                                 to_lower(names.latitude) + ", Mollweide projection, nside " +
                                 std::to_string(map.grid.nside());
-    return finish(canvas, layout, map, options, caption, std::move(choice), colours);
+    implementation_->draw_axes(canvas, layout, caption);
+    return finish(canvas, layout, map, options, std::move(choice), colours);
 }
 
 Picture draw_all_sky(const SkyMap& map, const PictureOptions& options) {
@@ -273,7 +281,8 @@ Picture draw_close_up(const SkyMap& map, const CloseUpField& field, const Pictur
         format_number(size, 6) +
         "\u00b0 across, gnomonic projection, north up, longitude grows to the left, nside " +
         std::to_string(map.grid.nside());
-    return finish(canvas, layout, map, options, caption, std::move(choice), colours);
+    draw_caption(canvas, layout, caption);
+    return finish(canvas, layout, map, options, std::move(choice), colours);
 }
 
 }  // namespace foreglow

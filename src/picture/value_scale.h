@@ -26,7 +26,8 @@ class ValueScale {
     /// Returns the position of a value, below 0 or above 1 outside the range; -infinity for values <= 0 on a
     /// log scale.
     [[nodiscard]] double position(double value) const;
-    /// Writes the positions of many values, to 1e-14; NaN where a value is undefined.
+    /// Writes the positions of many values, with logarithms good to 1e-9, which no colour shows; NaN where a
+    /// value is undefined.
     void positions(std::span<const double> values, std::span<double> out) const;
     [[nodiscard]] ScaleKind kind() const { return kind_; }
     [[nodiscard]] double low() const { return low_; }

@@ -31,7 +31,7 @@ std::shared_ptr<const SkyMap> share_filled(const HealpixGrid& grid, Frame frame,
 // A finer template has structure above lmax: analysed only up to lmax it would be pressed into the larger
 // scales.
 int analysis_lmax(const HealpixGrid& from, const HealpixGrid& to, int lmax) {
-    return from.nside() > to.nside() ? 2 * lmax : lmax;
+    return from.nside() > to.nside() ? 5 * lmax / 2 : lmax;
 }
 
 PixelField bring_intensity(SkyMap map, const HealpixGrid& grid, int lmax, Progress& progress) {

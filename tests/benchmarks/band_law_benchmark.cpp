@@ -53,9 +53,9 @@ void triad(benchmark::State& state) {
     state.SetItemsProcessed(state.iterations() * state.range(0));
 }
 
-BENCHMARK(band_law)->Name("law/memory/foreglow")->Arg(1 << 24)->UseRealTime();
-BENCHMARK(triad)->Name("law/memory/bare")->Arg(1 << 24)->UseRealTime();
-BENCHMARK(band_law)->Name("law/tile/foreglow")->Arg(1 << 10)->UseRealTime();
-BENCHMARK(triad)->Name("law/tile/bare")->Arg(1 << 10)->UseRealTime();
+BENCHMARK(band_law)->Name("law/memory/foreglow")->Arg(1 << 24)->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(triad)->Name("law/memory/bare")->Arg(1 << 24)->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(band_law)->Name("law/tile/foreglow")->Arg(1 << 10)->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(triad)->Name("law/tile/bare")->Arg(1 << 10)->MeasureProcessCPUTime()->UseRealTime();
 
 }  // namespace

@@ -168,14 +168,23 @@ void read_raw_into_old_memory(benchmark::State& state) {
     state.SetBytesProcessed(state.iterations() * static_cast<std::int64_t>(fs::file_size(path)));
 }
 
-BENCHMARK(write_foreglow<Place::Disk>)->Name("writer/disk/foreglow")->UseRealTime();
-BENCHMARK(write_raw<Place::Disk>)->Name("writer/disk/bare")->UseRealTime();
-BENCHMARK(write_foreglow<Place::Memory>)->Name("writer/memory/foreglow")->UseRealTime();
-BENCHMARK(write_raw<Place::Memory>)->Name("writer/memory/bare")->UseRealTime();
-BENCHMARK(write_cfitsio_columns)->Name("writer/memory/cfitsio columns")->UseRealTime();
-BENCHMARK(write_healpix)->Name("writer/memory/healpix")->UseRealTime();
-BENCHMARK(read_foreglow)->Name("reader/cached/foreglow")->UseRealTime();
-BENCHMARK(read_raw)->Name("reader/cached/bare")->UseRealTime();
-BENCHMARK(read_raw_into_old_memory)->Name("reader/cached/bare, old memory")->UseRealTime();
+BENCHMARK(write_foreglow<Place::Disk>)->Name("writer/disk/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(write_raw<Place::Disk>)->Name("writer/disk/bare")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(write_foreglow<Place::Memory>)
+    ->Name("writer/memory/foreglow")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
+BENCHMARK(write_raw<Place::Memory>)->Name("writer/memory/bare")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(write_cfitsio_columns)
+    ->Name("writer/memory/cfitsio columns")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
+BENCHMARK(write_healpix)->Name("writer/memory/healpix")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(read_foreglow)->Name("reader/cached/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(read_raw)->Name("reader/cached/bare")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(read_raw_into_old_memory)
+    ->Name("reader/cached/bare, old memory")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
 
 }  // namespace

@@ -8,6 +8,7 @@ Usage: run_all.py BUILD [--quick] [--only NAME]...
 import argparse
 import json
 import os
+import signal
 import sys
 from pathlib import Path
 
@@ -26,6 +27,7 @@ def main():
     parser.add_argument("--only", action="append", choices=groups, metavar="NAME", help="only this group, repeatable: "
                         + ", ".join(groups))
     options = parser.parse_args()
+    signal.signal(signal.SIGTERM, lambda *_: sys.exit(143))  # so that the folders in memory are deleted
     wanted = [g for g in groups if (g in options.only if options.only else not (options.quick and g in LONG))]
     place = Workplace(options.build.resolve(), options.quick)
     load, lines, failures = [os.getloadavg()[0]], [], []

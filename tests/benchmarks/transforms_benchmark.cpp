@@ -57,13 +57,25 @@ void bare(benchmark::State& state) {
         (transforms.*call)();
 }
 
-BENCHMARK(analysis)->Name("analysis/spin 0/foreglow")->UseRealTime();
-BENCHMARK(bare<&benchmarks::BareTransforms::analyse>)->Name("analysis/spin 0/bare")->UseRealTime();
-BENCHMARK(analysis_spin2)->Name("analysis/spin 2/foreglow")->UseRealTime();
-BENCHMARK(bare<&benchmarks::BareTransforms::analyse_spin2>)->Name("analysis/spin 2/bare")->UseRealTime();
-BENCHMARK(synthesis)->Name("synthesis/spin 0/foreglow")->UseRealTime();
-BENCHMARK(bare<&benchmarks::BareTransforms::synthesize>)->Name("synthesis/spin 0/bare")->UseRealTime();
-BENCHMARK(synthesis_spin2)->Name("synthesis/spin 2/foreglow")->UseRealTime();
-BENCHMARK(bare<&benchmarks::BareTransforms::synthesize_spin2>)->Name("synthesis/spin 2/bare")->UseRealTime();
+BENCHMARK(analysis)->Name("analysis/spin 0/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(bare<&benchmarks::BareTransforms::analyse>)
+    ->Name("analysis/spin 0/bare")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
+BENCHMARK(analysis_spin2)->Name("analysis/spin 2/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(bare<&benchmarks::BareTransforms::analyse_spin2>)
+    ->Name("analysis/spin 2/bare")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
+BENCHMARK(synthesis)->Name("synthesis/spin 0/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(bare<&benchmarks::BareTransforms::synthesize>)
+    ->Name("synthesis/spin 0/bare")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
+BENCHMARK(synthesis_spin2)->Name("synthesis/spin 2/foreglow")->MeasureProcessCPUTime()->UseRealTime();
+BENCHMARK(bare<&benchmarks::BareTransforms::synthesize_spin2>)
+    ->Name("synthesis/spin 2/bare")
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
 
 }  // namespace

@@ -145,7 +145,7 @@ TEST(Draw, RefusesWrongRequestsAndLeavesNothingBehind) {
     EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.size = Angle::from_degrees(3); }), "needs its centre"));
     EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.scale = "cubic"; }), "linear, log or signed"));
     EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.low = 3, o.high = 2; }), "empty"));
-    EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.low = NAN; }), "finite"));
+    EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.low = std::nan(""); }), "finite"));
     EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.width = 10; }), "300 to 8000"));
     EXPECT_TRUE(mentions(with([](DrawOptions& o) { o.column = "V_STOKES"; }), "V_STOKES"));
     EXPECT_TRUE(mentions(with([&](DrawOptions& o) { o.map = folder / "absent.fits"; }), "absent.fits"));

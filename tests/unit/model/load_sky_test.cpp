@@ -221,7 +221,7 @@ TEST_F(LoadSky, AFinerIndexMapIsCoarsenedByItsBrightnessWeightedMean) {
 TEST_F(LoadSky, UndefinedPixelsOfEachInputStayUndefined) {
     write_usual(8);
     const auto holed = [](std::vector<double> values) {
-        values[100] = NAN;
+        values[100] = std::nan("");
         return values;
     };
     const HealpixGrid grid(8);
@@ -248,7 +248,7 @@ TEST_F(LoadSky, UndefinedPixelsOfEachInputStayUndefined) {
 
 TEST_F(LoadSky, AMapOfNothingIsAnError) {
     write_usual(4);
-    write("t.fits", 4, {std::vector<double>(192, NAN)}, "K_RJ");
+    write("t.fits", 4, {std::vector<double>(192, std::nan(""))}, "K_RJ");
     EXPECT_THROW((void)load(t_ + flat_, 8), DataError);
 }
 

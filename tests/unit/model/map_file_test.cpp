@@ -3,6 +3,7 @@
 
 #include <gtest/gtest.h>
 
+#include <cmath>
 #include <numeric>
 
 #include "base/error.h"
@@ -91,7 +92,7 @@ TEST_F(MapFiles, ACoverageLimitsThePixelsInEitherOrder) {
     std::vector<double> wanted(192, 0.0);
     for (const std::size_t p : {3U, 50U, 51U, 190U})
         wanted[p] = 1;
-    wanted[7] = NAN;
+    wanted[7] = std::nan("");
     for (const Ordering ordering : {Ordering::Ring, Ordering::Nested}) {
         StudySpec spec = with_coverage(fits_map(4, {wanted}));
         spec.ordering = ordering;

@@ -174,7 +174,7 @@ TEST_F(MapSources, BrightnessBecomesRayleighJeansAtTheFrequency) {
 
 TEST_F(MapSources, StokesBecomeCosmoAndAreUndefinedTogether) {
     auto values = std::vector<std::vector<double>>{{0, 1, -1.6375e30, 3, 4, 5, 6, 7, 8, 9, 10, 11},
-                                                   {5, 6, 7, NAN, 9, 9, 9, 9, 9, 9, 9, 9}};
+                                                   {5, 6, 7, std::nan(""), 9, 9, 9, 9, 9, 9, 9, 9}};
     MapSource map = source("polarization");
     map.columns = {1, 2};
     for (const bool iau : {false, true}) {
@@ -195,7 +195,7 @@ TEST_F(MapSources, StokesBecomeCosmoAndAreUndefinedTogether) {
 TEST_F(MapSources, AnglesBecomeUnitVectors) {
     MapSource map = source("polarization");
     for (const bool iau : {false, true}) {
-        fits_map(1, {{0, 15, 45, 90, 135, 180, -30, NAN, 0, 0, 0, 0}})
+        fits_map(1, {{0, 15, 45, 90, 135, 180, -30, std::nan(""), 0, 0, 0, 0}})
             .card("POLCCONV", iau ? "'IAU     '" : "'COSMO   '")
             .write(folder_ / "survey.fits");
         const StokesMaps maps = read_angle_map(map, progress_);

@@ -14,6 +14,9 @@ namespace foreglow::api {
 namespace {
 
 PlanRequest request_of(const std::filesystem::path& study, const RunOptions& options) {
+    if (options.threads && *options.threads < 1)
+        throw InputError("RunOptions::threads is " + std::to_string(*options.threads) +
+                         ": give 1 or more, or leave it empty for all processors");
     set_thread_count(options.threads.value_or(available_processors()));
     StudyRequest request;
     request.study = study;

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include "api/foreglow_c.h"
 
+#include <algorithm>
 #include <cstring>
 
 #include "api/foreglow.h"
@@ -35,6 +36,9 @@ int foreglow_make(const char* study, const char* out, int replace, char* message
         return error.exit_status();
     } catch (const std::exception& error) {
         put_message(error.what(), message, message_size);
+        return 1;
+    } catch (...) {  // no exception may pass through C
+        put_message("an unknown fault stopped the work", message, message_size);
         return 1;
     }
 }

@@ -81,9 +81,15 @@ std::string write_json(const JsonValue& value) {
 
 JsonValue read_json(const std::filesystem::path& path) {
     std::ifstream file(path);
-    if (!file) throw FileError("cannot read " + path.string());
-    const Json json = Json::parse(file, nullptr, false);
-    if (json.is_discarded()) throw DataError(path.string() + " is no JSON file");
+    if (!file || std::filesystem::is_directory(path)) throw FileError("cannot read " + path.string());
+    constexpr int deepest = 64;  // our own files need 4; more would only fill the stack
+    bool too_deep = false;
+    const auto stop_when_deep = [&too_deep](int depth, Json::parse_event_t, const Json&) {
+        too_deep = too_deep || depth > deepest;
+        return !too_deep;
+    };
+    const Json json = Json::parse(file, stop_when_deep, false);
+    if (too_deep || json.is_discarded()) throw DataError(path.string() + " is no JSON file");
     return from_library(json);
 }
 

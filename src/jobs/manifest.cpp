@@ -23,32 +23,8 @@ void add_value(const ValueOrMap& value, std::vector<fs::path>& inputs) {
     if (const auto* source = std::get_if<MapSource>(&value)) inputs.push_back(source->path);
 }
 
-std::vector<fs::path> list_inputs(const Plan& plan) {
-    std::vector<fs::path> inputs;
-    if (!plan.study.file.empty()) inputs.push_back(plan.study.file);
-    const ModelSpec& model = plan.model;
-    if (!model.file.empty()) inputs.push_back(model.file);
-    if (model.intensity) inputs.push_back(model.intensity->map.path);
-    add_value(model.index.value, inputs);
-    add_value(model.curvature, inputs);
-    if (model.polarization && plan.study.polarized) {
-        add_source(model.polarization->map, inputs);
-        add_source(model.polarization->angle_map, inputs);
-        if (model.polarization->fraction) add_value(*model.polarization->fraction, inputs);
-        if (model.polarization->index) add_value(*model.polarization->index, inputs);
-    }
-    for (const ChannelSpec& channel : plan.study.channels) {
-        if (channel.response) inputs.push_back(*channel.response);
-        if (channel.beam_window) inputs.push_back(*channel.beam_window);
-    }
-    if (plan.study.coverage) inputs.push_back(*plan.study.coverage);
-    std::sort(inputs.begin(), inputs.end());
-    inputs.erase(std::unique(inputs.begin(), inputs.end()), inputs.end());
-    return inputs;
-}
-
 JsonValue describe_inputs(const Plan& plan) {
-    const auto inputs = list_inputs(plan);
+    const auto inputs = list_plan_inputs(plan);
     std::vector<std::string> sums(inputs.size());
     parallel_for_blocks(static_cast<std::int64_t>(inputs.size()), 1, [&](std::int64_t i, std::int64_t) {
         const auto n = static_cast<std::size_t>(i);
@@ -177,6 +153,30 @@ JsonValue describe_conventions(const StudySpec& study) {
 
 }  // namespace
 
+std::vector<fs::path> list_plan_inputs(const Plan& plan) {
+    std::vector<fs::path> inputs;
+    if (!plan.study.file.empty()) inputs.push_back(plan.study.file);
+    const ModelSpec& model = plan.model;
+    if (!model.file.empty()) inputs.push_back(model.file);
+    if (model.intensity) inputs.push_back(model.intensity->map.path);
+    add_value(model.index.value, inputs);
+    add_value(model.curvature, inputs);
+    if (model.polarization && plan.study.polarized) {
+        add_source(model.polarization->map, inputs);
+        add_source(model.polarization->angle_map, inputs);
+        if (model.polarization->fraction) add_value(*model.polarization->fraction, inputs);
+        if (model.polarization->index) add_value(*model.polarization->index, inputs);
+    }
+    for (const ChannelSpec& channel : plan.study.channels) {
+        if (channel.response) inputs.push_back(*channel.response);
+        if (channel.beam_window) inputs.push_back(*channel.beam_window);
+    }
+    if (plan.study.coverage) inputs.push_back(*plan.study.coverage);
+    std::sort(inputs.begin(), inputs.end());
+    inputs.erase(std::unique(inputs.begin(), inputs.end()), inputs.end());
+    return inputs;
+}
+
 std::string make_manifest(const Plan& plan, const MakeResult& result, const Progress& progress,
                           bool with_sha256) {
     JsonValue::Array phases;
@@ -199,8 +199,8 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
         {"conventions", describe_conventions(plan.study)},
         {"accuracy", describe_accuracy(plan, result)},
         {"channels", describe_channels(plan, result)},
-        {"warnings", texts_without_folders(progress.warnings(), list_inputs(plan))},
-        {"notices", texts_without_folders(progress.notices(), list_inputs(plan))},
+        {"warnings", texts_without_folders(progress.warnings(), list_plan_inputs(plan))},
+        {"notices", texts_without_folders(progress.notices(), list_plan_inputs(plan))},
         {"inputs", describe_inputs(plan)},
         {"outputs", describe_outputs(plan, result, with_sha256)},
         {"threads", thread_count()},

@@ -19,6 +19,9 @@ namespace foreglow {
 [[nodiscard]] std::string make_manifest(const Plan& plan, const MakeResult& result, const Progress& progress,
                                         bool with_sha256);
 
+/// Returns every file that a run reads: study, model, maps, tables, coverage; sorted, each once.
+[[nodiscard]] std::vector<std::filesystem::path> list_plan_inputs(const Plan& plan);
+
 /// Returns the files that a manifest lists as outputs; none where it cannot be read.
 [[nodiscard]] std::vector<std::string> list_manifest_outputs(const std::filesystem::path& manifest);
 

@@ -8,6 +8,7 @@
 
 #include "base/error.h"
 #include "base/text.h"
+#include "jobs/manifest.h"
 #include "jobs/output_folder.h"
 #include "jobs/resources.h"
 #include "model/model_file.h"
@@ -92,6 +93,19 @@ void check_room(const Plan& plan) {
                          " are free there: use another folder, fewer channels, or `precision = \"float32\"`");
 }
 
+// --replace takes an earlier run's files away, so that none of them can be read for the new one.
+void check_inputs_stay(const Plan& plan) {
+    const auto outputs = list_manifest_outputs(plan.out / "run.json");
+    for (const std::filesystem::path& input : list_plan_inputs(plan))
+        for (const std::string& output : outputs) {
+            std::error_code code;
+            if (std::filesystem::equivalent(input, plan.out / output, code))
+                throw InputError(
+                    "--replace would remove " + input.string() +
+                    ", which this study reads: give another folder with --out, or copy that file");
+        }
+}
+
 void add_warnings(Plan& plan) {
     plan.warnings = plan.study.warnings;
     plan.warnings.insert(plan.warnings.end(), plan.model.warnings.begin(), plan.model.warnings.end());
@@ -142,6 +156,7 @@ Plan make_plan(PlanRequest request) {
     const std::string stem = plan.study.file.empty() ? "foreglow" : plan.study.file.stem().string();
     plan.out = request.out.value_or(stem + "-out");
     check_output_folder(plan.out, request.replace);
+    if (request.replace) check_inputs_stay(plan);
     list_files(plan);
     add_warnings(plan);
     estimate_costs(plan);

@@ -86,9 +86,9 @@ TomlValue to_value(const toml::node& node, const std::string& file_name) {
 
 TomlValue parse_toml(std::string_view text, const std::string& file_name) {
     if (text.starts_with("SIMPLE  ="))
-        throw InputError(
-            to_one_line(file_name + ":1:1: this is a FITS file, not a study or model: name it as `map` in a "
-                                    "model file (`foreglow start --model-for` prints one)"));
+        throw InputError(to_one_line(file_name +
+                                     ":1:1: this is a FITS file, not a study or model: name it as `map` in a "
+                                     "model file (`foreglow start --model-for` prints one)"));
     try {
         return to_value(toml::parse(text), file_name);
     } catch (const toml::parse_error& error) {

@@ -168,9 +168,10 @@ TEST(PixelRoute, TakesTheExactSumWhereABandIsTooWideForAPolynomial) {
     const SkyStrip strip = make_sky_strip(sky, whole_sky(sky.grid), false);
     const auto map = make_maps(route, strip, 0, 0, 12, false)[0];
     for (std::size_t p = 0; p < 12; ++p) {
-        const double exact =
-            strip.intensity[p] * exact_band_value(bands[0], sky.reference, strip.index[p], strip.curvature[p]);
-        EXPECT_NEAR(map[p] / exact, 1, 1e-13);  // exponents of up to 70 carry a few 1e-16 each, of 1e-14 in all
+        const double exact = strip.intensity[p] *
+                             exact_band_value(bands[0], sky.reference, strip.index[p], strip.curvature[p]);
+        EXPECT_NEAR(map[p] / exact, 1,
+                    1e-13);  // exponents of up to 70 carry a few 1e-16 each, of 1e-14 in all
     }
 }
 

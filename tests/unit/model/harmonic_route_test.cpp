@@ -168,6 +168,72 @@ INSTANTIATE_TEST_SUITE_P(HarmonicRoute, HarmonicRouteCases,
                                            Case{24, 16, false, 1e-6, Frame::Ecliptic, false},
                                            Case{24, 16, false, 1e-7, Frame::Galactic, false}));
 
+// Forty channels whose beams shrink as the wavelength does.
+std::vector<Channel> diffraction_channels(int nside) {
+    std::vector<ChannelSpec> specs;
+    for (int i = 0; i < 40; ++i) {
+        const double mhz = 100 * std::pow(2.0, i / 39.0);
+        specs.push_back(channel_spec(std::to_string(i), 1e-3 * mhz, 1e-3, 12 * 100 / mhz));
+    }
+    return make_channels(study_spec(nside, specs, true));
+}
+
+TEST(HarmonicRoute, FewSkeletonsServeManyBeamsAsWellAsTheySay) {
+    const SkyModel sky = make_test_sky(16, true);
+    const auto channels = diffraction_channels(16);
+    for (const double accuracy : {1e-3, 1e-5, 1e-7}) {
+        SCOPED_TRACE(accuracy);
+        const HarmonicOptions options = options_for(16, true, accuracy);
+        const HarmonicRoute route = make_route(sky, channels, options);
+        EXPECT_LT(route.report().intensity_skeletons, 30U);
+        EXPECT_LT(route.report().polarized_skeletons, 30U);
+        for (const std::size_t c : {0U, 7U, 20U, 33U, 39U}) {
+            SCOPED_TRACE(c);
+            const double error =
+                true_error(route.make_channel(c), make_oracle(sky, channels[c], options), sky.grid);
+            EXPECT_LE(route.error_of(c), accuracy);
+            EXPECT_LE(error, 1.5 * route.error_of(c) + 1e-12);  // rounding of the transforms
+            EXPECT_GE(error, route.error_of(c) / 100);
+        }
+    }
+}
+
+TEST(HarmonicRoute, StripsAndGroupsOfAnySizeGiveTheWholeMaps) {
+    SkyModel sky = make_test_sky(16, true);
+    auto map = testing::make_map(sky.grid, testing::test_brightness);
+    for (std::size_t p = 1000; p < 1200; ++p)
+        map->values[p] = undefined_pixel;
+    sky.intensity = PixelField::of_map(map);
+    const auto channels = diffraction_channels(16);
+    const HarmonicRoute route = make_route(sky, channels, options_for(16, true, 1e-5, Frame::Icrs));
+    const ChannelMaps whole = route.make_channel(21);
+    for (const std::int64_t pixels : {100, 1000})
+        for (const auto& [first, count] : {std::pair<std::size_t, std::size_t>{0, 40}, {21, 1}, {20, 5}}) {
+            std::array<std::vector<double>, 3> maps;
+            for (auto& one : maps)
+                one.assign(3072, -1e300);
+            for (const RingStrip& strip : cut_into_strips(sky.grid, pixels)) {
+                const SkeletonStrip skeletons = route.make_strip(strip, first, count);
+                for (const PixelRange& range : pixel_ranges(sky.grid, strip)) {
+                    std::array<std::span<double>, 3> out;
+                    for (std::size_t s = 0; s < 3; ++s)
+                        out[s] = std::span(maps[s]).subspan(static_cast<std::size_t>(range.first_pixel),
+                                                            static_cast<std::size_t>(range.count));
+                    route.make_pixels(skeletons, 21, static_cast<std::size_t>(range.offset),
+                                      static_cast<std::size_t>(range.offset + range.count), out);
+                }
+            }
+            EXPECT_GT(testing::undefined_count(whole.i), 200);
+            EXPECT_EQ(testing::undefined_count(maps[0]), testing::undefined_count(whole.i));
+            EXPECT_EQ(testing::undefined_count(maps[1]), 0);
+            EXPECT_LT(relative_rms(maps[0], whole.i), 1e-12);  // rounding, and weights of either sign
+            EXPECT_LT(relative_rms(maps[1], whole.q), 1e-12);
+            EXPECT_LT(relative_rms(maps[2], whole.u), 1e-12);
+        }
+    EXPECT_GE(route.group_size(), 1U);
+    EXPECT_GE(route.strip_pixels(), 1);
+}
+
 TEST(HarmonicRoute, UndefinedPixelsStayUndefinedAndTheRestIsRight) {
     SkyModel sky = make_test_sky(32, true);
     auto map = testing::make_map(sky.grid, testing::test_brightness);

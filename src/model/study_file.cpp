@@ -114,7 +114,8 @@ void read_plain_keys(StudySpec& study, TomlReader& top, const std::filesystem::p
     study.pixel_window = top.boolean("pixel_window").value_or(false);
     if (const auto accuracy = top.number("accuracy", "accuracy = 1e-5")) {
         if (!(*accuracy > 1e-9 && *accuracy < 0.1))
-            top.fail("accuracy", "must lie above 1e-9 and below 0.1, but is " + format_exact(*accuracy));
+            top.fail("accuracy",
+                     "must lie between 1e-9 and 0.1 (both left out), but is " + format_exact(*accuracy));
         study.accuracy = *accuracy;
     }
     study.seed =

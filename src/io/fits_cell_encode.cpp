@@ -30,7 +30,7 @@ FOREGLOW_INLINE CellTally encode_as(std::span<const Value> values, std::byte* ou
     for (std::size_t i = 0; i < values.size(); ++i) {
         const auto cell = static_cast<Cell>(values[i]);
         infinite |= static_cast<unsigned>(std::fabs(cell) > std::numeric_limits<Cell>::max());
-        const auto bits = std::bit_cast<Bits>(cell != cell ? bad : cell);
+        const auto bits = std::bit_cast<Bits>(std::isnan(cell) ? bad : cell);
         if constexpr (sizeof(Cell) == 8) {
             words += (bits >> 32) + (bits & 0xffffffff);
         } else {

@@ -32,7 +32,10 @@ std::vector<double> make_values(std::size_t npix, double value) {
     const auto begin = (reinterpret_cast<std::uintptr_t>(values.data()) + page - 1) / page * page;
     const auto end = reinterpret_cast<std::uintptr_t>(values.data() + npix) / page * page;
     // Advice only: nothing depends on its being taken.
-    if (end > begin) ::madvise(reinterpret_cast<void*>(begin), end - begin, MADV_HUGEPAGE);
+    if (end > begin) {
+        // NOLINTNEXTLINE(performance-no-int-to-ptr): an address is rounded to a page
+        ::madvise(reinterpret_cast<void*>(begin), end - begin, MADV_HUGEPAGE);
+    }
     values.resize(npix, value);
     return values;
 }

@@ -206,6 +206,7 @@ void write_pixel_maps(const Plan& plan, const SkyModel& sky, const std::vector<s
 void write_harmonic_maps(const Plan& plan, const SkyModel& sky, const std::vector<std::size_t>& channels,
                          OutputFolder& folder, Progress& progress, MakeResult& result) {
     std::vector<Channel> chosen;
+    chosen.reserve(channels.size());
     for (const std::size_t c : channels)
         chosen.push_back(plan.channels[c]);
     HarmonicOptions options;

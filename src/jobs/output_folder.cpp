@@ -58,7 +58,7 @@ OutputFolder::~OutputFolder() {
 }
 
 fs::path OutputFolder::prepare(const std::string& name) {
-    const fs::path file = folder_ / name;
+    fs::path file = folder_ / name;
     std::vector<fs::path> missing;
     std::error_code code;
     for (fs::path parent = file.parent_path(); !parent.empty() && !fs::exists(parent, code);

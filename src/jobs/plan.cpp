@@ -108,6 +108,10 @@ void check_inputs_stay(const Plan& plan) {
 
 void add_warnings(Plan& plan) {
     plan.warnings = plan.study.warnings;
+    if (plan.coverage && !plan.coverage->says_its_frame)
+        plan.warnings.push_back("the coverage " + plan.study.coverage->filename().string() +
+                                " does not say its frame (COORDSYS); it is taken to be " +
+                                to_text(plan.study.frame));
     plan.warnings.insert(plan.warnings.end(), plan.model.warnings.begin(), plan.model.warnings.end());
     const auto& beam = plan.model.sketch
                            ? std::optional<Angle>(Angle::from_degrees(1.0))

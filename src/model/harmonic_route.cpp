@@ -8,8 +8,6 @@
 
 #include "base/error.h"
 #include "base/interrupt.h"
-#include "base/parallel.h"
-#include "base/vector_width.h"
 #include "model/basis_error.h"
 #include "model/component_maps.h"
 #include "model/transform_plan.h"
@@ -26,31 +24,15 @@ constexpr double law_tolerance = 1e-9;      // of component maps: far below any 
 
 std::vector<BandSum> bands_of(const std::vector<Channel>& channels) {
     std::vector<BandSum> bands;
+    bands.reserve(channels.size());
     for (const Channel& channel : channels)
         bands.push_back(channel.band);
     return bands;
 }
 
-// sum over k of weights(channel, k) terms[k](l, m), read in one pass.
-Alm combine(std::span<const Alm* const> terms, const Matrix& weights, std::size_t channel) {
-    constexpr std::int64_t block = 8192;
-    Alm sum(terms.front()->lmax());
-    const auto out = sum.values();
-    parallel_for_blocks(
-        static_cast<std::int64_t>(out.size()), block, [&](std::int64_t begin, std::int64_t end) {
-            for (std::size_t k = 0; k < terms.size(); ++k) {
-                const double weight = weights(channel, k);
-                if (weight == 0) continue;
-                const auto term = terms[k]->values();
-                for (auto i = static_cast<std::size_t>(begin); i < static_cast<std::size_t>(end); ++i)
-                    out[i] += weight * term[i];
-            }
-        });
-    return sum;
-}
-
 std::vector<const Alm*> pointers_to(const std::vector<Alm>& alms) {
     std::vector<const Alm*> pointers;
+    pointers.reserve(alms.size());
     for (const Alm& alm : alms)
         pointers.push_back(&alm);
     return pointers;
@@ -58,6 +40,7 @@ std::vector<const Alm*> pointers_to(const std::vector<Alm>& alms) {
 
 std::vector<const Alm*> pointers_to(const std::vector<AlmEB>& alms, Alm AlmEB::*part) {
     std::vector<const Alm*> pointers;
+    pointers.reserve(alms.size());
     for (const AlmEB& alm : alms)
         pointers.push_back(&(alm.*part));
     return pointers;
@@ -70,67 +53,10 @@ int last_l(std::span<const double> window) {
     return static_cast<int>(l) - 1;
 }
 
-// out = sum over r of coefficients[r] maps[r]; four maps at a time keep the sums in registers.
-FOREGLOW_WIDE
-void combine_pixels(const double* const* maps, const double* coefficients, std::size_t count, double* out,
-                    std::size_t n) {
-    std::fill_n(out, n, 0.0);
-    std::size_t r = 0;
-    for (; r + 4 <= count; r += 4) {
-        const double *a = maps[r], *b = maps[r + 1], *c = maps[r + 2], *d = maps[r + 3];
-        const double ca = coefficients[r], cb = coefficients[r + 1], cc = coefficients[r + 2],
-                     cd = coefficients[r + 3];
-        for (std::size_t i = 0; i < n; ++i)
-            out[i] += (ca * a[i] + cb * b[i]) + (cc * c[i] + cd * d[i]);
-    }
-    for (; r < count; ++r) {
-        const double* a = maps[r];
-        const double ca = coefficients[r];
-        for (std::size_t i = 0; i < n; ++i)
-            out[i] += ca * a[i];
-    }
-}
-
-constexpr std::size_t pixel_block = 1024;  // a block of every skeleton stays in the second-level cache
 constexpr double strip_bytes = 0.5e9;
 constexpr std::size_t plain_group = 16;  // channels whose maps are held at once where none can be combined
 
 // The skeletons that a channel is made of, and their coefficients.
-struct Terms {
-    std::vector<const double*> maps;
-    std::vector<double> coefficients;
-};
-
-Terms terms_of(const JointRank& rank, const std::vector<std::vector<double>>& maps, std::size_t channel,
-               std::size_t first_channel) {
-    Terms terms;
-    if (rank.is_plain) {
-        terms.maps.push_back(maps[channel - first_channel].data());
-        terms.coefficients.push_back(1.0);
-        return terms;
-    }
-    for (std::size_t r = 0; r < rank.skeletons.size(); ++r) {
-        if (rank.coefficients(channel, r) == 0) continue;
-        terms.maps.push_back(maps[r].data());
-        terms.coefficients.push_back(rank.coefficients(channel, r));
-    }
-    return terms;
-}
-
-void combine_range(const Terms& terms, std::size_t begin, std::span<double> out) {
-    std::vector<const double*> maps(terms.maps.size());
-    for (std::size_t first = 0; first < out.size(); first += pixel_block) {
-        const std::size_t n = std::min(pixel_block, out.size() - first);
-        for (std::size_t r = 0; r < maps.size(); ++r)
-            maps[r] = terms.maps[r] + begin + first;
-        combine_pixels(maps.data(), terms.coefficients.data(), maps.size(), out.data() + first, n);
-    }
-}
-
-void undefine_marked(const std::vector<std::uint8_t>& marks, std::size_t begin, std::span<double> out) {
-    for (std::size_t i = 0; i < out.size(); ++i)
-        if (marks[begin + i] != 0) out[i] = undefined_pixel;
-}
 
 }  // namespace
 
@@ -138,6 +64,7 @@ HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels,
                              const HarmonicOptions& options, Progress& progress)
     : grid_(sky.grid), sky_frame_(sky.frame), channels_(std::move(channels)), options_(options) {
     FOREGLOW_EXPECTS(!channels_.empty());
+    windows_.reserve(channels_.size());
     for (const Channel& channel : channels_)
         windows_.push_back(channel_window(channel, options));
     // Basis, transforms and skeletons share the accuracy: 0.3^2 + 0.5^2 + 0.7^2 < 0.92^2. The last costs most
@@ -267,14 +194,14 @@ void HarmonicRoute::find_skeletons(double tolerance) {
 }
 
 Alm HarmonicRoute::intensity_alm(std::size_t channel) const {
-    Alm alm = combine(pointers_to(intensity_alms_), intensity_basis_.weights, channel);
+    Alm alm = combine_alms(pointers_to(intensity_alms_), intensity_basis_.weights, channel);
     multiply_by_l(alm, windows_[channel].temperature);
     return alm;
 }
 
 AlmEB HarmonicRoute::polarized_alm(std::size_t channel) const {
-    AlmEB alm{combine(pointers_to(polarized_alms_, &AlmEB::e), polarized_basis_.weights, channel),
-              combine(pointers_to(polarized_alms_, &AlmEB::b), polarized_basis_.weights, channel)};
+    AlmEB alm{combine_alms(pointers_to(polarized_alms_, &AlmEB::e), polarized_basis_.weights, channel),
+              combine_alms(pointers_to(polarized_alms_, &AlmEB::b), polarized_basis_.weights, channel)};
     multiply_by_l(alm.e, windows_[channel].polarization);
     multiply_by_l(alm.b, windows_[channel].polarization);
     return alm;
@@ -334,12 +261,12 @@ SkeletonStrip HarmonicRoute::make_strip(const RingStrip& strip, std::size_t firs
 void HarmonicRoute::make_pixels(const SkeletonStrip& strip, std::size_t channel, std::size_t begin,
                                 std::size_t end, std::span<const std::span<double>> out) const {
     FOREGLOW_EXPECTS(out[0].size() == end - begin && out.size() == (options_.polarized ? 3U : 1U));
-    combine_range(terms_of(intensity_rank_, strip.i, channel, strip.first_channel), begin, out[0]);
+    combine_skeletons(intensity_rank_, strip.i, channel, strip.first_channel, begin, out[0]);
     const std::size_t place = channel - strip.first_channel;
     if (!strip.undefined_i.empty()) undefine_marked(strip.undefined_i[place], begin, out[0]);
     if (out.size() == 1) return;
-    combine_range(terms_of(polarized_rank_, strip.q, channel, strip.first_channel), begin, out[1]);
-    combine_range(terms_of(polarized_rank_, strip.u, channel, strip.first_channel), begin, out[2]);
+    combine_skeletons(polarized_rank_, strip.q, channel, strip.first_channel, begin, out[1]);
+    combine_skeletons(polarized_rank_, strip.u, channel, strip.first_channel, begin, out[2]);
     if (strip.undefined_p.empty()) return;
     undefine_marked(strip.undefined_p[place], begin, out[1]);
     undefine_marked(strip.undefined_p[place], begin, out[2]);

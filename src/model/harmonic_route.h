@@ -10,6 +10,7 @@
 #include "model/channel.h"
 #include "model/filled_share.h"
 #include "model/joint_rank.h"
+#include "model/skeleton_maps.h"
 #include "model/sky_model.h"
 #include "model/spectral_basis.h"
 #include "model/transform_plan.h"
@@ -36,14 +37,6 @@ struct HarmonicReport {
 /// The full-sky maps of one channel, RING order, COSMO; q and u empty without polarization.
 struct ChannelMaps {
     std::vector<double> i, q, u;
-};
-
-/// The maps of the skeleton channels on one strip, and which of its pixels are undefined.
-struct SkeletonStrip {
-    std::size_t first_channel = 0;             ///< of the group that this strip serves
-    std::vector<std::vector<double>> i, q, u;  ///< [skeletons][pixels]
-    std::vector<std::vector<std::uint8_t>> undefined_i,
-        undefined_p;  ///< [channels of the group][pixels]; empty where none is
 };
 
 /// Makes channels with beams (or a pixel window, or in another frame): K component maps are transformed once,

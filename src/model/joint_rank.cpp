@@ -270,6 +270,7 @@ JointRank fit(const Matrix& sketch, std::vector<std::size_t> skeletons, const Fa
 
 std::vector<Matrix> component_spectra(const std::vector<Alm>& components) {
     std::vector<const Alm*> set;
+    set.reserve(components.size());
     for (const Alm& alm : components)
         set.push_back(&alm);
     return spectra_of({set});
@@ -277,6 +278,8 @@ std::vector<Matrix> component_spectra(const std::vector<Alm>& components) {
 
 std::vector<Matrix> component_spectra(const std::vector<AlmEB>& components) {
     std::vector<const Alm*> e, b;
+    e.reserve(components.size());
+    b.reserve(components.size());
     for (const AlmEB& alm : components) {
         e.push_back(&alm.e);
         b.push_back(&alm.b);

@@ -23,7 +23,10 @@ Coverage read_study_coverage(const StudySpec& study) {
         throw InputError(start + " is in " + to_text(*map.frame) + " but the study in " +
                          to_text(study.frame) + ": give a coverage in the study's frame");
     if (map.pixels.empty()) throw InputError(start + " wants no pixel: give one that is nonzero somewhere");
-    Coverage coverage{map.pixels, map.pixels};
+    Coverage coverage;
+    coverage.ring_pixels = map.pixels;
+    coverage.file_pixels = map.pixels;
+    coverage.says_its_frame = map.frame.has_value();
     if (study.ordering == Ordering::Nested) {
         const HealpixGrid grid(study.nside);
         for (std::int64_t& pixel : coverage.file_pixels)

@@ -15,6 +15,7 @@ namespace foreglow {
 /// The pixels of a study's `coverage`, for partial-sky files.
 struct Coverage {
     std::vector<std::int64_t> ring_pixels;  ///< ascending
+    bool says_its_frame = true;             ///< else it is taken to be in the study's
     std::vector<std::int64_t> file_pixels;  ///< in the study's ordering, ascending
 };
 

@@ -27,6 +27,7 @@ struct Axis {
 std::vector<double> chebyshev_points(const Axis& axis, int count) {
     if (!axis.varies()) return {0.0};
     std::vector<double> points;
+    points.reserve(static_cast<std::size_t>(count));
     for (int i = 0; i < count; ++i)
         points.push_back(-std::cos(constants::pi * (i + 0.5) / count));
     return points;
@@ -35,6 +36,7 @@ std::vector<double> chebyshev_points(const Axis& axis, int count) {
 std::vector<double> even_points(const Axis& axis, int count) {
     if (!axis.varies()) return {0.0};
     std::vector<double> points;
+    points.reserve(static_cast<std::size_t>(count));
     for (int i = 0; i < count; ++i)
         points.push_back(-1.0 + 2.0 * i / (count - 1));
     return points;
@@ -56,10 +58,11 @@ FOREGLOW_INLINE void run(const Kernel& k, const double* index, const double* cur
 #pragma GCC unroll 16
         for (int j = two_dimensional ? degree : 0; j >= 0; --j) {
             const int terms = degree - j + 1;
-            double row = k.c[static_cast<std::size_t>(end - 1)];
+            const auto first = static_cast<std::size_t>(end) - static_cast<std::size_t>(terms);
+            double row = k.c[first + static_cast<std::size_t>(terms) - 1];
 #pragma GCC unroll 16
             for (int i = terms - 2; i >= 0; --i)
-                row = row * x + k.c[static_cast<std::size_t>(end - terms + i)];
+                row = row * x + k.c[first + static_cast<std::size_t>(i)];
             sum = sum * y + row;
             end -= terms;
         }
@@ -137,6 +140,7 @@ BandLaw::BandLaw(const BandSum& band, Frequency reference, const ParameterRange&
         if (worst_error_ <= tolerance) return;
     }
     worst_error_ = 0;
+    log_ratios_.reserve(band.hz.size());
     for (const double hz : band.hz)
         log_ratios_.push_back(std::log(hz / reference.hz()));
     band_weights_ = band.weights;

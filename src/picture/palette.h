@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <cmath>
 #include <string>
 #include <vector>
 
@@ -31,7 +32,7 @@ class Palette {
     /// @param position  0 to 1; anything beyond takes the end's colour
     [[nodiscard]] Rgb at(double position) const {
         const double clamped = position < 0 ? 0.0 : position < 1 ? position : 1.0;
-        return colours_[static_cast<std::size_t>(clamped * (steps - 1) + 0.5)];
+        return colours_[static_cast<std::size_t>(std::lround(clamped * (steps - 1)))];
     }
 
   private:

@@ -125,7 +125,7 @@ std::string format_label(double value, int digits) {
     const auto e = text.find('e');
     if (e == std::string::npos) return with_true_minus(text);
     const std::string mantissa = format_number(std::strtod(text.substr(0, e).c_str(), nullptr), digits);
-    const std::string power = "10" + superscript(std::atoi(text.c_str() + e + 1));
+    std::string power = "10" + superscript(std::atoi(text.c_str() + e + 1));
     if (mantissa == "1") return power;
     std::string out = with_true_minus(mantissa == "-1" ? "-" : mantissa + "\u00d7");
     out += power;

@@ -22,11 +22,11 @@ std::size_t alm_size(int lmax) {
 Alm::Alm(int lmax) : lmax_(lmax), values_(alm_size(lmax)) {}
 
 std::span<const Alm::Value> Alm::column(int m) const {
-    return values().subspan(index(m, m), static_cast<std::size_t>(lmax_ - m + 1));
+    return values().subspan(index(m, m), static_cast<std::size_t>(lmax_) + 1 - static_cast<std::size_t>(m));
 }
 
 std::span<Alm::Value> Alm::column(int m) {
-    return values().subspan(index(m, m), static_cast<std::size_t>(lmax_ - m + 1));
+    return values().subspan(index(m, m), static_cast<std::size_t>(lmax_) + 1 - static_cast<std::size_t>(m));
 }
 
 Alm with_lmax(const Alm& alm, int lmax) {

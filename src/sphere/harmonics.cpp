@@ -139,7 +139,7 @@ std::vector<RingStrip> cut_into_strips(const HealpixGrid& grid, std::int64_t pix
     RingStrip strip{0, 0, true};
     std::int64_t held = 0;
     for (int r = 0; r < rings; ++r) {
-        const std::int64_t more = (r == rings - 1 ? 1 : 2) * grid.ring(r).pixels;
+        const std::int64_t more = std::int64_t{r == rings - 1 ? 1 : 2} * grid.ring(r).pixels;
         if (strip.count > 0 && held + more > pixels) {
             out.push_back(strip);
             strip = {r, 0, true};

@@ -3,11 +3,26 @@
 
 #include <Random123/philox.h>
 
-#include <cmath>
-
-#include "base/constants.h"
+#include "base/error.h"
+#include "base/normal_kernel.h"
 
 namespace foreglow {
+namespace {
+
+FOREGLOW_WIDE
+void fill_normal_pairs(std::uint32_t key0, std::uint32_t key1, std::uint32_t first_a, std::uint64_t b,
+                       std::uint64_t field, std::uint64_t realization, double* first, double* second,
+                       std::size_t count) {
+    for (std::size_t i = 0; i < count; ++i) {
+        const std::uint64_t a = (first_a + i) & 0xffffffffU;
+        const auto words = kernel::philox_4x32_10({a, b, field, realization}, key0, key1);
+        const auto pair = kernel::box_muller(words);
+        first[i] = pair.first;
+        second[i] = pair.second;
+    }
+}
+
+}  // namespace
 
 std::array<std::uint32_t, 4> random_words(const RandomKey& key, std::uint32_t a, std::uint32_t b) {
     const r123::Philox4x32::ctr_type counter = {{a, b, key.field, key.realization}};
@@ -19,14 +34,15 @@ std::array<std::uint32_t, 4> random_words(const RandomKey& key, std::uint32_t a,
 
 std::array<double, 2> normal_pair(const RandomKey& key, std::uint32_t a, std::uint32_t b) {
     const auto words = random_words(key, a, b);
-    const auto join = [](std::uint32_t high, std::uint32_t low) {
-        return (static_cast<std::uint64_t>(high) << 32U) | low;
-    };
-    constexpr double step = 0x1p-64;
-    const double radial = (static_cast<double>(join(words[0], words[1])) + 0.5) * step;
-    const double turn = static_cast<double>(join(words[2], words[3])) * step;
-    const double radius = std::sqrt(-2.0 * std::log(radial));
-    return {radius * std::cos(2.0 * constants::pi * turn), radius * std::sin(2.0 * constants::pi * turn)};
+    const auto pair = kernel::box_muller({words[0], words[1], words[2], words[3]});
+    return {pair.first, pair.second};
+}
+
+void normal_pairs(const RandomKey& key, std::uint32_t first_a, std::uint32_t b, std::span<double> first,
+                  std::span<double> second) {
+    FOREGLOW_EXPECTS(first.size() == second.size());
+    fill_normal_pairs(static_cast<std::uint32_t>(key.seed), static_cast<std::uint32_t>(key.seed >> 32U),
+                      first_a, b, key.field, key.realization, first.data(), second.data(), first.size());
 }
 
 }  // namespace foreglow

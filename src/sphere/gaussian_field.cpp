@@ -20,14 +20,22 @@ Alm make_gaussian_alm(std::span<const double> cl, int lmax, const RandomKey& key
     }
     const int last = std::min(lmax, static_cast<int>(cl.size()) - 1);
     parallel_for_blocks(last + 1, 8, [&](std::int64_t begin, std::int64_t end) {
-        for (int m = static_cast<int>(begin); m < static_cast<int>(end); ++m)
-            for (int l = m; l <= last; ++l) {
-                const auto pair =
-                    normal_pair(key, static_cast<std::uint32_t>(l), static_cast<std::uint32_t>(m));
-                const double s = sigma[static_cast<std::size_t>(l)];
-                out(l, m) = m == 0 ? Alm::Value(s * pair[0], 0.0)
-                                   : Alm::Value(s * std::sqrt(0.5) * pair[0], s * std::sqrt(0.5) * pair[1]);
-            }
+        std::vector<double> re(static_cast<std::size_t>(last) + 1), im(re.size());
+        for (int m = static_cast<int>(begin); m < static_cast<int>(end); ++m) {
+            const std::size_t n = static_cast<std::size_t>(last) + 1 - static_cast<std::size_t>(m);
+            normal_pairs(key, static_cast<std::uint32_t>(m), static_cast<std::uint32_t>(m),
+                         std::span(re).first(n), std::span(im).first(n));
+            const auto column = out.column(m);
+            const std::span<const double> s = std::span(sigma).subspan(static_cast<std::size_t>(m), n);
+            if (m == 0)
+                for (std::size_t i = 0; i < n; ++i)
+                    column[i] = {s[i] * re[i], 0.0};
+            else
+                for (std::size_t i = 0; i < n; ++i) {
+                    const double share = s[i] * std::sqrt(0.5);
+                    column[i] = {share * re[i], share * im[i]};
+                }
+        }
     });
     return out;
 }

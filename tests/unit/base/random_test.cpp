@@ -3,8 +3,13 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
 #include <cmath>
 #include <set>
+#include <span>
+#include <vector>
+
+#include "base/normal_kernel.h"
 
 namespace foreglow {
 namespace {
@@ -49,6 +54,78 @@ TEST(NormalPair, IsBoxMullerOfTheWords) {
     EXPECT_NEAR(pair[0], radius * std::cos(2 * 3.14159265358979323846 * turn),
                 1e-14);  // rounding of values below 1
     EXPECT_NEAR(pair[1], radius * std::sin(2 * 3.14159265358979323846 * turn), 1e-14);
+}
+
+// The arithmetic compiled for one vector width each, as the library compiles it for several.
+#if defined(__x86_64__)
+#define FOREGLOW_FILL_FOR(name, isa)                                                                       \
+    __attribute__((target(isa))) void name(const RandomKey& key, std::uint32_t b, std::span<double> first, \
+                                           std::span<double> second) {                                     \
+        for (std::size_t i = 0; i < first.size(); ++i) {                                                   \
+            const auto words = kernel::philox_4x32_10({i, b, key.field, key.realization},                  \
+                                                      static_cast<std::uint32_t>(key.seed),                \
+                                                      static_cast<std::uint32_t>(key.seed >> 32U));        \
+            const auto pair = kernel::box_muller(words);                                                   \
+            first[i] = pair.first;                                                                         \
+            second[i] = pair.second;                                                                       \
+        }                                                                                                  \
+    }
+FOREGLOW_FILL_FOR(fill_avx2, "avx2")
+FOREGLOW_FILL_FOR(fill_avx512, "avx512f")
+#undef FOREGLOW_FILL_FOR
+#endif
+
+TEST(NormalPairs, AreTheSameBitsAtEveryVectorWidth) {
+    const RandomKey key{0x9876543210abcdefULL, 17, 4};
+    constexpr std::size_t n = 4099;  // no multiple of any width
+    std::vector<double> first(n), second(n);
+    normal_pairs(key, 0, 77, first, second);
+    for (std::uint32_t i = 0; i < n; ++i)
+        ASSERT_EQ(normal_pair(key, i, 77), (std::array{first[i], second[i]})) << i;
+#if defined(__x86_64__)
+    std::vector<double> a(n), b(n);
+    if (__builtin_cpu_supports("avx2")) {
+        fill_avx2(key, 77, a, b);
+        EXPECT_EQ(a, first);
+        EXPECT_EQ(b, second);
+    }
+    if (__builtin_cpu_supports("avx512f")) {
+        fill_avx512(key, 77, a, b);
+        EXPECT_EQ(a, first);
+        EXPECT_EQ(b, second);
+    }
+#endif
+}
+
+// From outside: log, sin and cos of the C library in long double.
+TEST(NormalKernel, HasALogarithmAndACircleExactToRounding) {
+    double worst_log = 0, worst_circle = 0;
+    for (std::uint32_t i = 0; i < 20000; ++i) {
+        const auto words = random_words({5, 0, 1}, i, 0);
+        const double x = std::ldexp(words[0] + 1.0, -32 - static_cast<int>(words[1] % 33));
+        const long double exact = std::log(static_cast<long double>(x));
+        worst_log = std::max(worst_log, static_cast<double>(std::abs((kernel::natural_log(x) - exact) /
+                                                                     (exact == 0 ? 1 : exact))));
+        const double t = std::ldexp(words[2], -32);
+        const long double angle = 2 * 3.14159265358979323846264338327950288L * t;
+        const auto circle = kernel::sin_cos_of_turn(t);
+        worst_circle = std::max({worst_circle, static_cast<double>(std::abs(circle.sin - std::sin(angle))),
+                                 static_cast<double>(std::abs(circle.cos - std::cos(angle)))});
+    }
+    EXPECT_LT(worst_log, 2.3e-16);     // one unit in the last place
+    EXPECT_LT(worst_circle, 2.3e-16);  // likewise, of values up to 1
+    EXPECT_EQ(kernel::natural_log(1.0), 0.0);
+    EXPECT_EQ(kernel::sin_cos_of_turn(0.25).cos, 0.0);
+    EXPECT_EQ(kernel::sin_cos_of_turn(0.5).cos, -1.0);
+    EXPECT_EQ(kernel::sin_cos_of_turn(0.75).sin, -1.0);
+}
+
+// The smallest radial word gives sqrt(-2 ln 2^-65), the largest 0: 9.4 sigma are within reach.
+TEST(NormalKernel, ReachesTheTails) {
+    EXPECT_NEAR(kernel::box_muller({0, 0, 0, 0}).first, std::sqrt(2 * 65 * std::log(2.0)), 1e-14);
+    const std::uint64_t all = 0xffffffff;
+    EXPECT_EQ(kernel::box_muller({all, all, 0, 0}).first, 0.0);
+    EXPECT_TRUE(std::isfinite(kernel::box_muller({all, all, all, all}).second));
 }
 
 TEST(NormalPair, HasTheMomentsAndTailsOfANormalDistribution) {

@@ -12,3 +12,10 @@
 
 // Lets a loop body take the width of the function that it stands in.
 #define FOREGLOW_INLINE __attribute__((always_inline)) inline
+
+// Says that no turn of the loop that follows reads what another one writes.
+#if defined(__GNUC__) && !defined(__clang__)
+#define FOREGLOW_INDEPENDENT _Pragma("GCC ivdep")
+#else
+#define FOREGLOW_INDEPENDENT
+#endif

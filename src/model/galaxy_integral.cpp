@@ -9,21 +9,13 @@
 #include "base/vector_width.h"
 #include "math/vector_exp.h"
 #include "math/vector_sin_cos.h"
+#include "physics/synchrotron_kernel.h"
 
 namespace foreglow {
 namespace {
 
 constexpr double kpc = 3.0856775814913673e19;  // m, IAU 2015 B2
 constexpr std::size_t heights = GalaxyTable::height_points;
-
-// sqrt(3) e^3 1e-10 T/(16 pi^2 eps0 m c), the emissivity per uG and unit of Phi (CODATA 2018) [W/Hz/sr].
-double emissivity_constant() {
-    constexpr double e = 1.602176634e-19;
-    constexpr double m = 9.1093837015e-31;
-    constexpr double eps0 = 8.8541878128e-12;
-    return std::sqrt(3.0) * e * e * e * 1e-10 /
-           (16 * constants::pi * constants::pi * eps0 * m * constants::speed_of_light);
-}
 
 struct NodeRows {
     std::size_t count;  // a multiple of GalaxyNodes::lanes
@@ -162,7 +154,8 @@ GalaxyIntegral::GalaxyIntegral(const GalaxySpec& galaxy, const GalaxyTable& tabl
         const double hz = nodes_.frequencies()[std::min(k, nodes_.count() - 1)].hz();
         const double lambda = constants::speed_of_light / hz;
         lambda2_.push_back(lambda * lambda);
-        kelvin_.push_back(emissivity_constant() * kpc * lambda * lambda / (2 * constants::boltzmann));
+        kelvin_.push_back(power_per_hz_and_microgauss() / (4 * constants::pi) * kpc * lambda * lambda /
+                          (2 * constants::boltzmann));
     }
 }
 

@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/constants.h"
+#include "physics/synchrotron_kernel.h"
 
 namespace foreglow {
 namespace {
@@ -70,7 +71,9 @@ LoopLight loop_light(const GalaxyLoop& loop, const GalaxyRay& ray) {
 LoopSpectra::LoopSpectra(const GalaxySpec& galaxy, const GalaxyTable& table,
                          std::span<const Frequency> frequencies) {
     for (const GalaxyLoop& loop : galaxy.shells) {
-        const auto log_a = [&](double hz) { return std::log(hz / (critical_hz_per_ug_gev2 * loop.field)); };
+        const auto log_a = [&](double hz) {
+            return std::log(hz / (critical_frequency_constant_hz() * loop.field));
+        };
         std::vector<double> ratios, fractions;
         for (const Frequency frequency : frequencies) {
             const double a = log_a(frequency.hz());

@@ -7,6 +7,7 @@
 #include "base/error.h"
 #include "base/parallel.h"
 #include "math/cubic_b_spline.h"
+#include "physics/synchrotron_kernel.h"
 
 namespace foreglow {
 namespace {
@@ -20,19 +21,6 @@ constexpr double log_x_high = 6.4;   // F(x) < 1e-260 beyond
 constexpr double log_x_low = -36.0;  // E^(1-s) F falls by 1e-12 at least down to here for s > 1.1
 constexpr double lowest_log = -600;  // of Phi, for populations that are switched off
 constexpr std::size_t heights = GalaxyTable::height_points;
-
-double kernel(double x) {
-    // x integral of K_5/3 = x integral of exp(-x cosh t) cosh(5 t/3)/cosh t dt
-    const double h = 0.02;
-    double sum = 0.5 * std::exp(-x);
-    for (int i = 1; i < 4000; ++i) {
-        const double t = h * i;
-        const double e = x * std::cosh(t) - 2 * t / 3;
-        if (e > 60 + x) break;
-        sum += std::exp(-x * std::cosh(t)) * std::cosh(5 * t / 3) / std::cosh(t);
-    }
-    return x * h * sum;
-}
 
 // ln N(E) of the old disc in the plane, of the young disc; and ln of the scale height.
 double log_old_density(const GalaxySpec& g, double energy) {
@@ -67,7 +55,7 @@ Grid make_grid() {
     for (std::size_t j = 0; j < n; ++j)
         grid.energy.push_back(std::exp(log_energy_low + log_energy_step * static_cast<double>(j)));
     for (std::size_t j = 0; j < grid.terms; ++j)
-        grid.f.push_back(kernel(std::exp(log_x_high - log_a_step * static_cast<double>(j))));
+        grid.f.push_back(kernel_f(std::exp(log_x_high - log_a_step * static_cast<double>(j))));
     return grid;
 }
 
@@ -181,7 +169,7 @@ GalaxyNodes::GalaxyNodes(const GalaxyTable& table, std::span<const Frequency> fr
         std::vector<double> young(static_cast<std::size_t>(field_points));
         for (std::size_t b = 0; b < young.size(); ++b) {
             const double log_field = std::log(field_low) + field_step * (static_cast<double>(b) - margin);
-            const double log_a = log_nu - std::log(critical_hz_per_ug_gev2) - log_field;
+            const double log_a = log_nu - std::log(critical_frequency_constant_hz()) - log_field;
             table.write_old_row(log_a, std::span(rows).subspan(b * heights, heights));
             young[b] = table.log_young(log_a);
         }

@@ -10,10 +10,6 @@
 
 namespace foreglow {
 
-/// The frequency of electrons of 1 GeV in 1 uG: nu_c = c1 B E^2, c1 = 3 e/(4 pi m^3 c^4) in SI (Rybicki &
-/// Lightman eq. 6.17c; CODATA 2018) [Hz].
-inline constexpr double critical_hz_per_ug_gev2 = 16.080249143541e6;
-
 /// What the electrons of the Galaxy radiate, for every frequency and field at once.
 ///
 /// Phi(a, z) = integral of N(E, z) F(a/E^2) dE with a = nu/(c1 B) [GeV^2]; N of the old disc at the Sun's

@@ -3,8 +3,10 @@
 
 #include <CLI/CLI.hpp>
 #include <algorithm>
+#include <cerrno>
 #include <csignal>
 #include <cstdio>
+#include <cstring>
 #include <new>
 
 #include "base/build_info.h"
@@ -13,6 +15,7 @@
 #include "base/parallel.h"
 #include "base/progress.h"
 #include "base/text.h"
+#include "jobs/at.h"
 #include "jobs/draw.h"
 #include "jobs/make.h"
 #include "jobs/models.h"
@@ -21,6 +24,13 @@
 
 namespace foreglow {
 namespace {
+
+/// `at` with the options that are read as text first.
+struct AtRequest {
+    AtOptions options;
+    std::string disc;
+    std::optional<RowFormat> format;
+};
 
 struct CommonOptions {
     int threads = 0;
@@ -133,12 +143,80 @@ void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>&
     command.add_flag("--replace", draw.replace, "replace a picture that exists");
 }
 
+constexpr const char* at_examples =
+    R"(Examples:
+  foreglow at disc-and-loops --position "120.5,-30" --frequency "70 MHz" --frequency "408 MHz"
+      brightness, index, curvature and polarization at one galactic position, two rows
+  foreglow at ridge-out --positions targets.csv --frame icrs --disc "1 deg" --format csv > rows.csv
+      every channel of a finished run, averaged within 1 deg of each position of a table (ra,dec))";
+
+void add_at_options(CLI::App& command, AtRequest& request) {
+    AtOptions& at = request.options;
+    command.footer(at_examples);
+    command
+        .add_option("SOURCE", at.source,
+                    "a bundled model, a model file, a study, a finished run's folder, or an index map")
+        ->required();
+    command
+        .add_option("--position", at.positions,
+                    "\"LON,LAT\" in degrees, or in icrs hours and degrees \"05:34:31.9,+22:00:52\"; "
+                    "repeatable")
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false);
+    command.add_option("--pixel", at.pixels, "pixel number on the grid of --nside; repeatable")
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false);
+    command.add_option("--positions", at.positions_file,
+                       "CSV of any length with lon_deg,lat_deg or pixel; - is standard input");
+    command.add_option("--nside", at.nside, "of pixel numbers, and the grid of a sky from formulas");
+    command.add_flag("--nested", at.nested, "pixel numbers are NESTED (default: RING)");
+    add_choice<Frame>(command, "--frame", at.frame,
+                      {{"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}},
+                      "of positions, Q and U (default: galactic; with --pixel the source's)");
+    command.add_option("--disc", request.disc,
+                       "mean over the pixels within this radius of each position, such as \"2 deg\"");
+    command.add_flag("--interpolate", at.interpolate,
+                     "bilinear between the four nearest pixels (default: the pixel itself)");
+    command
+        .add_option("--frequency", at.frequencies,
+                    "\"70 MHz\", or a log grid \"50 MHz:200 MHz:7\"; repeatable (default: a study's or run's "
+                    "channels)")
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false);
+    command.add_option("--unit", at.unit,
+                       "K_RJ, mK_RJ, uK_RJ, K_CMB, mK_CMB, uK_CMB, MJy/sr or Jy/pixel (default: K_RJ, or the "
+                       "study's)");
+    add_choice<PolarizationConvention>(
+        command, "--polarization-convention", at.convention,
+        {{"cosmo", PolarizationConvention::Cosmo}, {"iau", PolarizationConvention::Iau}},
+        "sign of U and angle_deg (default: COSMO, or the study's)");
+    command.add_option("--realization", at.realization, "of a run with several");
+    add_choice<RowFormat>(command, "--format", request.format,
+                          {{"table", RowFormat::Table}, {"csv", RowFormat::Csv}, {"json", RowFormat::Json}},
+                          "how rows are written (default: table)");
+    const char* index_map = "Of an index map";
+    command.add_option("--column", at.column, "number from 1, or name (default: INDEX, else the first)")
+        ->group(index_map);
+    command.add_option("--hdu", at.hdu, "number of the table (default: the first HEALPix one)")
+        ->group(index_map);
+    add_choice<Frame>(command, "--map-frame", at.map_frame,
+                      {{"galactic", Frame::Galactic}, {"icrs", Frame::Icrs}, {"ecliptic", Frame::Ecliptic}},
+                      "where the file does not say");
+    add_choice<Ordering>(command, "--map-ordering", at.map_ordering,
+                         {{"ring", Ordering::Ring}, {"nested", Ordering::Nested}},
+                         "where the file does not say");
+}
+
 /// All that the command line can ask for.
 struct Request {
     CommonOptions common;
     StudyRequest study;
     bool sha256 = false;
     StartRequest start;
+    AtRequest at;
     std::string model_name;
     DrawOptions draw;
     std::vector<double> draw_center;
@@ -158,6 +236,28 @@ void run_draw_command(Request& request) {
     for (const std::string& notice : result.notices)
         note(request.common, notice);
     say(result.picture.string() + "\n");
+}
+
+// Writes rows; false once their reader has closed the pipe.
+bool write_rows_out(std::string_view text) {
+    const bool written =
+        std::fwrite(text.data(), 1, text.size(), stdout) == text.size() && std::fflush(stdout) == 0;
+    if (!written && errno != EPIPE)
+        throw FileError("standard output cannot be written: " + std::string(std::strerror(errno)));
+    return written;
+}
+
+void run_at_command(Request& request) {
+    AtOptions options = request.at.options;
+    if (!request.at.disc.empty()) {
+        try {
+            options.disc = parse_angle(request.at.disc);
+        } catch (const InputError& error) {
+            throw InputError(std::string("--disc ") + error.what());
+        }
+    }
+    options.format = request.at.format.value_or(RowFormat::Table);
+    run_at(options, write_rows_out, [&](const std::string& line) { note(request.common, line); });
 }
 
 void run_start_command(const Request& request) {
@@ -210,7 +310,13 @@ void define_commands(CLI::App& app, Request& request) {
     add_common(*draw, request.common);
     draw->callback([&request] { run_draw_command(request); });
 
-    for (CLI::App* command : {make, plan, start, models, draw})
+    CLI::App* at = app.add_subcommand(
+        "at", "answers at positions: brightness, index, curvature, polarization at any frequency");
+    add_at_options(*at, request.at);
+    add_common(*at, request.common);
+    at->callback([&request] { run_at_command(request); });
+
+    for (CLI::App* command : {make, plan, start, at, models, draw})
         command->parse_complete_callback([&request] {
             set_thread_count(request.common.threads > 0 ? request.common.threads : available_processors());
         });

@@ -3,6 +3,7 @@
 
 #include <fcntl.h>
 #include <fitsio.h>
+#include <sys/mman.h>
 #include <sys/stat.h>
 #include <unistd.h>
 
@@ -122,6 +123,7 @@ struct FitsTableFile::Impl {
         int ignored = 0;
         if (file != nullptr) fits_close_file(file, &ignored);
         fits_clear_errmsg();
+        if (mapped != nullptr) ::munmap(mapped, static_cast<std::size_t>(file_bytes));
         if (descriptor >= 0) ::close(descriptor);
     }
     Impl(const Impl&) = delete;
@@ -141,6 +143,7 @@ struct FitsTableFile::Impl {
     bool plain = true;  // else unpacked by CFITSIO in memory
     std::int64_t data_start = 0, file_bytes = 0;
     mutable std::mutex library;
+    void* mapped = nullptr;  // the whole file, once asked for
 };
 
 FitsTableFile::Impl::Impl(const FitsMapRequest& request_in) : request(request_in) {
@@ -332,6 +335,21 @@ void FitsTableFile::read_bytes(std::int64_t offset, std::span<std::byte> out) co
         at += got;
         out = out.subspan(static_cast<std::size_t>(got));
     }
+}
+
+std::span<const std::byte> FitsTableFile::view() const {
+    if (!impl_->plain) return {};
+    const std::lock_guard lock(impl_->library);
+    if (impl_->mapped == nullptr) {
+        void* const address = ::mmap(nullptr, static_cast<std::size_t>(impl_->file_bytes), PROT_READ,
+                                     MAP_SHARED, impl_->descriptor, 0);
+        if (address == MAP_FAILED)
+            throw FileError("cannot map " + impl_->request.path.string() +
+                            " into memory: " + system_reason(errno));
+        impl_->mapped = address;
+    }
+    return {static_cast<const std::byte*>(impl_->mapped) + impl_->data_start,
+            static_cast<std::size_t>(table().rows * table().row_bytes)};
 }
 
 }  // namespace foreglow

@@ -52,6 +52,11 @@ class FitsTableFile {
     /// @throws DataError, FileError where they cannot be read
     void read_bytes(std::int64_t offset, std::span<std::byte> out) const;
 
+    /// Returns the table's bytes mapped into memory, for readers of many single cells; empty for a gzip'd
+    /// file. The file must not become shorter meanwhile.
+    /// @throws FileError where the system refuses
+    [[nodiscard]] std::span<const std::byte> view() const;
+
   private:
     struct Impl;
     std::unique_ptr<Impl> impl_;

@@ -1,95 +1,15 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include "model/sketch_sky.h"
 
-#include <algorithm>
-#include <array>
-#include <cmath>
-
-#include "base/constants.h"
 #include "base/parallel.h"
-#include "base/random.h"
-#include "sphere/beam.h"
-#include "sphere/gaussian_field.h"
+#include "model/sketch_formulas.h"
 #include "sphere/harmonics.h"
 
 namespace foreglow {
 namespace {
 
-constexpr double degree = constants::pi / 180;
-constexpr double finest_scale_deg = 1.0;
-enum Field : std::uint32_t { TextureField = 1, IndexField = 2, CurvatureField = 3, EField = 4, BField = 5 };
-
-struct Loop {
-    double lon, lat, diameter;  // deg, Berkhuijsen 1971
-    double brightness;          // K_RJ of the ridge at the reference frequency, invented
-    double bright_angle;        // deg from north through increasing longitude, invented
-};
-constexpr std::array<Loop, 4> loops{
-    {{329, 17.5, 116, 22, 55}, {100, -32.5, 91, 5, 150}, {124, 15.5, 65, 9, 20}, {315, 48.5, 39.5, 4.5, 20}}};
-
-Vector3 direction_of(double lon, double lat) {
-    return {std::cos(lat) * std::cos(lon), std::cos(lat) * std::sin(lon), std::sin(lat)};
-}
-
-double dot(const Vector3& a, const Vector3& b) {
-    return a[0] * b[0] + a[1] * b[1] + a[2] * b[2];
-}
-
-// A ring as wide as 5 % of its radius, brighter towards one side of its centre.
-double loop_brightness(const Loop& loop, const Vector3& n) {
-    const double lon = loop.lon * degree;
-    const double lat = loop.lat * degree;
-    const Vector3 centre = direction_of(lon, lat);
-    const Vector3 north = {-std::sin(lat) * std::cos(lon), -std::sin(lat) * std::sin(lon), std::cos(lat)};
-    const Vector3 east = {-std::sin(lon), std::cos(lon), 0};
-    const double radius = 0.5 * loop.diameter * degree;
-    const double separation = std::acos(std::clamp(dot(n, centre), -1.0, 1.0));
-    const double position_angle = std::atan2(dot(n, east), dot(n, north));
-    const double side = 0.5 * (1 + std::cos(position_angle - loop.bright_angle * degree));
-    const double width = std::max(0.05 * radius, 1.5 * degree);
-    const double offset = (separation - radius) / width;
-    return loop.brightness * (0.15 + 0.85 * side * side) * std::exp(-0.5 * offset * offset);
-}
-
-double smooth_brightness(const SketchSpec& sketch, const Vector3& n) {
-    const double sine = n[2];
-    constexpr double softening = 0.12;  // of sin b, keeps the cosecant finite in the plane
-    double t = 0;
-    if (sketch.disc) {
-        t += sketch.pole_brightness *
-             std::sqrt((1 + softening * softening) / (sine * sine + softening * softening));
-        const double latitude = std::asin(std::clamp(sine, -1.0, 1.0)) / sketch.plane_height.radians();
-        const double towards_centre = 0.5 * (1 + n[0] / std::max(std::hypot(n[0], n[1]), 1e-12));
-        const double bulge = std::pow(towards_centre, 4);
-        t += sketch.plane_brightness * (1 + 4 * bulge) / std::cosh(latitude);
-    }
-    if (sketch.loops)
-        for (const Loop& loop : loops)
-            t += loop_brightness(loop, n);
-    return t;
-}
-
-// C_l ~ (l^2 + l0^2)^-power from l = 2 on, unit variance when summed to infinity, so that it is the same
-// field at every nside.
-std::vector<double> unit_spectrum(int lmax, double l0, double power) {
-    const BeamWindow finest = make_gaussian_beam(Angle::from_degrees(finest_scale_deg), 2048);
-    std::vector<double> cl(static_cast<std::size_t>(2049));
-    double variance = 0;
-    for (std::size_t l = 2; l < cl.size(); ++l) {
-        const double ell = static_cast<double>(l);
-        cl[l] = std::pow(ell * ell + l0 * l0, -power) * finest.temperature[l] * finest.temperature[l];
-        variance += (2 * ell + 1) / (4 * constants::pi) * cl[l];
-    }
-    for (double& c : cl)
-        c /= variance;
-    cl.resize(std::min(cl.size(), static_cast<std::size_t>(lmax) + 1));
-    return cl;
-}
-
-std::vector<double> unit_field(const SketchSpec& sketch, const HealpixGrid& grid, Field field, double power) {
-    const int lmax = std::min(2048, 2 * grid.nside());
-    const auto cl = unit_spectrum(lmax, 18, power);  // l0: structure grows down to about 10 degrees
-    return synthesize(make_gaussian_alm(cl, lmax, {sketch.seed, 0, field}), grid);
+std::vector<double> unit_field(const SketchSpec& sketch, const HealpixGrid& grid, SketchField field) {
+    return synthesize(make_sketch_alm(sketch, grid, field), grid);
 }
 
 std::shared_ptr<SkyMap> empty_map(const HealpixGrid& grid) {
@@ -103,55 +23,41 @@ std::shared_ptr<SkyMap> empty_map(const HealpixGrid& grid) {
 std::shared_ptr<const SkyMap> make_intensity(const SketchSpec& sketch, const HealpixGrid& grid) {
     auto map = empty_map(grid);
     std::vector<double> texture(map->values.size(), 0.0);
-    if (sketch.texture) texture = unit_field(sketch, grid, TextureField, 11.0 / 6);
-    const double rms =
-        sketch.texture ? sketch.texture_rms : 0.0;  // without a texture its mean needs no correction
+    if (sketch.texture) texture = unit_field(sketch, grid, SketchField::Texture);
     parallel_for_blocks(grid.npix(), 4096, [&](std::int64_t begin, std::int64_t end) {
         for (std::int64_t p = begin; p < end; ++p) {
             const auto i = static_cast<std::size_t>(p);
-            map->values[i] =
-                smooth_brightness(sketch, grid.direction(p)) * std::exp(rms * texture[i] - 0.5 * rms * rms);
+            map->values[i] = sketch_intensity(sketch, grid.direction(p), texture[i]);
         }
     });
     return map;
 }
 
-PixelField make_scattered(const SketchSpec& sketch, const HealpixGrid& grid, Field field, double mean,
+PixelField make_scattered(const SketchSpec& sketch, const HealpixGrid& grid, SketchField field, double mean,
                           double rms) {
     if (rms == 0) return PixelField::uniform(mean);
     auto map = empty_map(grid);
-    map->values = unit_field(sketch, grid, field, 1.3);
+    map->values = unit_field(sketch, grid, field);
     for (double& value : map->values)
-        value = mean + rms * std::clamp(value, -4.0, 4.0);
+        value = sketch_scattered(mean, rms, value);
     return PixelField::of_map(map);
 }
 
-// Field lines along the plane give E vectors across it (Q > 0 in COSMO); a random part turns them, the plane
-// depolarizes.
 std::shared_ptr<const StokesMaps> make_stokes(const SketchSpec& sketch, const SkyMap& intensity) {
     const HealpixGrid& grid = intensity.grid;
-    const int lmax = std::min(2048, 2 * grid.nside());
-    const auto cl = unit_spectrum(lmax, 18, 11.0 / 6);
-    AlmEB alm{make_gaussian_alm(cl, lmax, {sketch.seed, 0, EField}),
-              make_gaussian_alm(cl, lmax, {sketch.seed, 0, BField})};
-    multiply_by_l(alm.b, std::vector<double>(static_cast<std::size_t>(lmax) + 1, std::sqrt(0.5)));
+    const AlmEB alm{make_sketch_alm(sketch, grid, SketchField::E),
+                    make_sketch_alm(sketch, grid, SketchField::B)};
     StokesValues random = synthesize_spin2(alm, grid);
     auto maps = std::make_shared<StokesMaps>();
     maps->grid = grid;
     maps->frame = Frame::Galactic;
     maps->q.resize(intensity.values.size());
     maps->u.resize(intensity.values.size());
-    constexpr double highest_fraction = 0.7;  // below the 75 % that no electron distribution exceeds by much
     for (std::size_t i = 0; i < maps->q.size(); ++i) {
-        const double latitude =
-            std::asin(std::clamp(grid.direction(static_cast<std::int64_t>(i))[2], -1.0, 1.0)) / degree;
-        const double fraction =
-            sketch.polarized_fraction * (1 - 0.75 * std::exp(-0.5 * latitude * latitude / 36));
-        double q = fraction * (0.8 + 0.5 * random.q[i]);
-        double u = fraction * 0.5 * random.u[i];
-        const double cap = std::min(1.0, highest_fraction / std::max(std::hypot(q, u), 1e-30));
-        maps->q[i] = intensity.values[i] * cap * q;
-        maps->u[i] = intensity.values[i] * cap * u;
+        const auto [q, u] = sketch_stokes(sketch, grid.direction(static_cast<std::int64_t>(i)),
+                                          intensity.values[i], random.q[i], random.u[i]);
+        maps->q[i] = q;
+        maps->u[i] = u;
     }
     return maps;
 }
@@ -166,15 +72,16 @@ SkyModel make_sketch_sky(const SketchSpec& sketch, Frequency reference, const He
     sky.reference = reference;
     const auto intensity = make_intensity(sketch, grid);
     sky.intensity = PixelField::of_map(intensity);
-    sky.index = make_scattered(sketch, grid, IndexField, sketch.index, sketch.index_rms);
-    sky.curvature = make_scattered(sketch, grid, CurvatureField, sketch.curvature, sketch.curvature_rms);
+    sky.index = make_scattered(sketch, grid, SketchField::Index, sketch.index, sketch.index_rms);
+    sky.curvature =
+        make_scattered(sketch, grid, SketchField::Curvature, sketch.curvature, sketch.curvature_rms);
     if (with_polarization) {
         PolarizedSky polarized;
         polarized.stokes.source = make_stokes(sketch, *intensity);
         polarized.reference = reference;
         sky.polarization = std::move(polarized);
     }
-    sky.beam_fwhm = Angle::from_degrees(finest_scale_deg);
+    sky.beam_fwhm = Angle::from_degrees(sketch_finest_scale_deg);
     sky.labels.push_back("Invented sky from closed formulas: not a measurement of the Galaxy");
     return sky;
 }

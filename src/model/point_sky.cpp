@@ -1,0 +1,214 @@
+// SPDX-License-Identifier: GPL-2.0-or-later
+#include "model/point_sky.h"
+
+#include <cmath>
+
+#include "base/error.h"
+#include "model/point_field.h"
+#include "model/sketch_points.h"
+#include "physics/spectral_law.h"
+#include "sphere/stokes_turn.h"
+
+namespace foreglow {
+namespace {
+
+std::string approximation_notice(const char* what, const PointMap& map, const HealpixGrid& grid,
+                                 Frame frame) {
+    const bool finer = map.grid().nside() > grid.nside();
+    return std::string("the ") + what + " template has nside " + std::to_string(map.grid().nside()) + " in " +
+           to_text(map.frame()) + ", this sky nside " + std::to_string(grid.nside()) + " in " +
+           to_text(frame) + ": it is read by " + (finer ? "the mean of its pixels" : "interpolation") +
+           ", where make goes through its a_lm";
+}
+
+/// Q and U of a template, against the meridians of the sky's frame.
+class PointStokes {
+  public:
+    PointStokes(PointMap map, const HealpixGrid& grid, Frame frame)
+        : map_(std::move(map)), grid_(grid), frame_(frame), to_sky_(rotation_between(map_.frame(), frame)) {
+        if (!is_pixel_for_pixel()) sampler_.emplace(map_.grid());
+    }
+
+    [[nodiscard]] bool is_pixel_for_pixel() const { return map_.grid() == grid_ && map_.frame() == frame_; }
+    [[nodiscard]] const PointMap& map() const { return map_; }
+
+    void evaluate(std::span<const std::int64_t> pixels, std::span<double> q, std::span<double> u) const {
+        if (is_pixel_for_pixel()) return map_.read_stokes(pixels, q, u);
+        std::vector<std::int64_t> corners(4 * pixels.size());
+        std::vector<double> weights(corners.size()), corner_q(corners.size()), corner_u(corners.size());
+        make_stencils(*sampler_, map_.frame(), grid_, frame_, pixels, corners, weights);
+        map_.read_stokes(corners, corner_q, corner_u);
+        for (std::size_t i = 0; i < corners.size(); ++i)
+            if (map_.frame() != frame_)
+                apply(turn_between_frames(map_.grid().direction(corners[i]), to_sky_), corner_q[i],
+                      corner_u[i]);
+        for (std::size_t i = 0; i < pixels.size(); ++i) {
+            const auto four = [i](const std::vector<double>& values) {
+                return std::span(values).subspan(4 * i, 4);
+            };
+            q[i] = mean_of_four(four(corner_q), four(weights));
+            u[i] = mean_of_four(four(corner_u), four(weights));
+        }
+    }
+
+  private:
+    PointMap map_;
+    HealpixGrid grid_;
+    Frame frame_;
+    Matrix3 to_sky_;
+    std::optional<BilinearSampler> sampler_;
+};
+
+/// What Q and U of a model over templates are made of.
+struct PolarizedPoints {
+    std::optional<PointStokes> stokes;
+    std::optional<PointField> fraction, index;
+};
+
+}  // namespace
+
+struct PointSky::Impl {
+    Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization);
+    void open_templates(const ModelSpec& model, std::optional<HealpixGrid> grid_in);
+    void open_polarization(const PolarizationSpec& spec);
+    [[nodiscard]] PointField open_value(const ValueOrMap& value);
+    void add_polarization(std::span<const std::int64_t> pixels, SkyStrip& values) const;
+    void scale_to_fraction(std::span<const std::int64_t> pixels, SkyStrip& values) const;
+
+    HealpixGrid grid{1};
+    Frame frame = Frame::Galactic;
+    Frequency reference, polarized_reference;
+    double index_log_ratio = 0;
+    std::shared_ptr<const PointMap> brightness;  // of models over templates
+    std::optional<PointField> intensity, index, curvature;
+    std::optional<PolarizedPoints> polarization;
+    std::optional<SketchPoints> sketch;
+    std::vector<std::string> notices;
+};
+
+PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization) {
+    reference = polarized_reference = model.reference_frequency;
+    if (model.sketch) {
+        grid = grid_in.value_or(HealpixGrid(SketchPoints::usual_nside));
+        sketch.emplace(*model.sketch, grid, with_polarization);
+        if (with_polarization) polarization.emplace();
+        notices.emplace_back("invented sky from closed formulas: not a measurement of the Galaxy");
+        return;
+    }
+    open_templates(model, grid_in);
+    if (!with_polarization) return;
+    if (!model.polarization)
+        throw InputError("the model " + model.name + " has no [polarization]: add one, or ask for I alone");
+    open_polarization(*model.polarization);
+}
+
+void PointSky::Impl::open_templates(const ModelSpec& model, std::optional<HealpixGrid> grid_in) {
+    FOREGLOW_EXPECTS(model.intensity.has_value());
+    brightness = std::make_shared<const PointMap>(
+        PointMap::open_brightness(model.intensity->map, reference, model.intensity->zero_level, notices));
+    grid = grid_in.value_or(brightness->grid());
+    frame = brightness->frame();
+    if (model.index.frequency) index_log_ratio = log_frequency_ratio(*model.index.frequency, reference);
+    index = open_value(model.index.value);
+    curvature = open_value(model.curvature);
+    if (!(brightness->grid() == grid))
+        notices.push_back(approximation_notice("intensity", *brightness, grid, frame));
+    intensity = PointField::of_map(brightness, nullptr, grid, frame);
+}
+
+PointField PointSky::Impl::open_value(const ValueOrMap& value) {
+    if (const double* number = std::get_if<double>(&value)) return PointField::uniform(*number);
+    auto map = std::make_shared<const PointMap>(PointMap::open_plain(std::get<MapSource>(value), notices));
+    return PointField::of_map(std::move(map), brightness, grid, frame);
+}
+
+void PointSky::Impl::open_polarization(const PolarizationSpec& spec) {
+    polarized_reference = spec.reference_frequency.value_or(reference);
+    PolarizedPoints& points = polarization.emplace();
+    if (spec.map) {
+        points.stokes.emplace(PointMap::open_stokes(*spec.map, polarized_reference, notices), grid, frame);
+    } else {
+        FOREGLOW_EXPECTS(spec.fraction && spec.angle_map);
+        points.stokes.emplace(PointMap::open_angles(*spec.angle_map, notices), grid, frame);
+        points.fraction = open_value(*spec.fraction);
+    }
+    if (!points.stokes->is_pixel_for_pixel())
+        notices.push_back(approximation_notice("polarization", points.stokes->map(), grid, frame));
+    if (spec.index) points.index = open_value(*spec.index);
+}
+
+// As make_sky_strip does it for whole strips.
+void PointSky::Impl::scale_to_fraction(std::span<const std::int64_t> pixels, SkyStrip& values) const {
+    std::vector<double> fraction(pixels.size());
+    polarization->fraction->evaluate(pixels, fraction);
+    const double log_ratio = log_frequency_ratio(polarized_reference, reference);
+    for (std::size_t i = 0; i < fraction.size(); ++i) {
+        const double there =
+            std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
+        const double length = std::hypot(values.q[i], values.u[i]);
+        const double factor = fraction[i] * values.intensity[i] * there / length;
+        values.q[i] *= factor;
+        values.u[i] *= factor;
+    }
+}
+
+void PointSky::Impl::add_polarization(std::span<const std::int64_t> pixels, SkyStrip& values) const {
+    const std::size_t n = pixels.size();
+    values.q.resize(n);
+    values.u.resize(n);
+    polarization->stokes->evaluate(pixels, values.q, values.u);
+    if (polarization->fraction) scale_to_fraction(pixels, values);
+    if (!polarization->index && polarized_reference == reference) return;
+    values.polarized_index.resize(n);
+    values.polarized_curvature.assign(n, 0.0);
+    if (polarization->index) return polarization->index->evaluate(pixels, values.polarized_index);
+    const double log_ratio = log_frequency_ratio(polarized_reference, reference);
+    for (std::size_t i = 0; i < n; ++i) {
+        values.polarized_index[i] = local_index({values.index[i], values.curvature[i]}, log_ratio);
+        values.polarized_curvature[i] = values.curvature[i];
+    }
+}
+
+PointSky::PointSky(const ModelSpec& model, std::optional<HealpixGrid> grid, bool with_polarization)
+    : impl_(std::make_unique<Impl>(model, grid, with_polarization)) {}
+PointSky::~PointSky() = default;
+PointSky::PointSky(PointSky&&) noexcept = default;
+PointSky& PointSky::operator=(PointSky&&) noexcept = default;
+
+const HealpixGrid& PointSky::grid() const {
+    return impl_->grid;
+}
+Frame PointSky::frame() const {
+    return impl_->frame;
+}
+Frequency PointSky::reference() const {
+    return impl_->reference;
+}
+Frequency PointSky::polarized_reference() const {
+    return impl_->polarized_reference;
+}
+bool PointSky::is_polarized() const {
+    return impl_->polarization.has_value();
+}
+const std::vector<std::string>& PointSky::notices() const {
+    return impl_->notices;
+}
+
+SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
+    if (impl_->sketch) return impl_->sketch->evaluate(pixels);
+    SkyStrip values;
+    values.intensity.resize(pixels.size());
+    values.index.resize(pixels.size());
+    values.curvature.resize(pixels.size());
+    impl_->intensity->evaluate(pixels, values.intensity);
+    impl_->index->evaluate(pixels, values.index);
+    impl_->curvature->evaluate(pixels, values.curvature);
+    if (impl_->index_log_ratio != 0)
+        for (std::size_t i = 0; i < pixels.size(); ++i)
+            values.index[i] =
+                index_at_reference(values.index[i], values.curvature[i], impl_->index_log_ratio);
+    if (impl_->polarization) impl_->add_polarization(pixels, values);
+    return values;
+}
+
+}  // namespace foreglow

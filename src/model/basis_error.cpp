@@ -5,7 +5,6 @@
 #include <array>
 #include <cmath>
 
-#include "base/parallel.h"
 #include "model/component_maps.h"
 
 namespace foreglow {
@@ -44,21 +43,21 @@ class DipoleFit {
     Matrix normal_;
 };
 
-struct Spectra {
-    std::vector<double> index, curvature;  ///< [n], defined pixels only
+// The pixels of a sample that are defined: their law's numbers, what multiplies them, where they are.
+struct Sampled {
+    LawPoints points;
+    std::vector<double> first, second;  // I and nothing, or Q and U
+    std::vector<std::array<double, 4>> functions;
+
+    void add(const LawColumns& columns, std::size_t p) {
+        if (!columns.index.empty()) points.index.push_back(columns.index[p]);
+        if (!columns.curvature.empty()) points.curvature.push_back(columns.curvature[p]);
+    }
 };
 
-// Component values for unit amplitude, [pixels][K].
-Matrix component_values(const Spectra& spectra, const SpectralBasis& basis, Frequency reference) {
-    Matrix values(spectra.index.size(), basis.components.size());
-    parallel_for_blocks(
-        static_cast<std::int64_t>(values.rows), 1024, [&](std::int64_t begin, std::int64_t end) {
-            for (auto p = static_cast<std::size_t>(begin); p < static_cast<std::size_t>(end); ++p)
-                for (std::size_t k = 0; k < values.columns; ++k)
-                    values(p, k) = exact_band_value(basis.components[k], reference, spectra.index[p],
-                                                    spectra.curvature[p]);
-        });
-    return values;
+bool is_defined_at(const LawColumns& columns, std::size_t p) {
+    const auto good = [p](std::span<const double> column) { return column.empty() || is_defined(column[p]); };
+    return good(columns.index) && good(columns.curvature);
 }
 
 // error[p] and truth[p] of one channel for unit amplitude.
@@ -66,16 +65,18 @@ struct Compared {
     std::vector<double> error, truth;
 };
 
-Compared compare(const Spectra& spectra, const Matrix& components, const Matrix& weights, std::size_t channel,
-                 const BandSum& band, Frequency reference) {
+Compared compare(const SkyLaw& law, const LawPoints& points, const Matrix& components, const Matrix& weights,
+                 std::size_t channel, const BandSum& band) {
+    const Matrix exact = exact_band_values(law, {band}, points.columns());
     Compared out;
-    for (std::size_t p = 0; p < spectra.index.size(); ++p) {
+    out.error.reserve(exact.rows);
+    out.truth.reserve(exact.rows);
+    for (std::size_t p = 0; p < exact.rows; ++p) {
         double sum = 0;
         for (std::size_t k = 0; k < components.columns; ++k)
             sum += weights(channel, k) * components(p, k);
-        const double exact = exact_band_value(band, reference, spectra.index[p], spectra.curvature[p]);
-        out.error.push_back(sum - exact);
-        out.truth.push_back(exact);
+        out.error.push_back(sum - exact(p, 0));
+        out.truth.push_back(exact(p, 0));
     }
     return out;
 }
@@ -103,45 +104,46 @@ BasisErrors measure_basis_errors(const SkyModel& sky, const std::vector<Channel>
         static_cast<std::int64_t>(evaluations / static_cast<double>(channels.size())), 2048, 65536);
     const SkySample sample = make_sky_sample(sky, pixels, polarized != nullptr);
     const SkyStrip& values = sample.values;
-    Spectra spectra, polarized_spectra;
-    std::vector<double> amplitude, q, u;
-    std::vector<std::array<double, 4>> functions;
+    const LawColumns columns = values.intensity_columns();
+    Sampled of_intensity;
+    Sampled of_polarization;
     for (std::size_t p = 0; p < values.intensity.size(); ++p) {
-        if (is_defined(values.intensity[p] + values.index[p] + values.curvature[p])) {
-            spectra.index.push_back(values.index[p]);
-            spectra.curvature.push_back(values.curvature[p]);
-            amplitude.push_back(values.intensity[p]);
-            functions.push_back(
-                {1.0, sample.directions[p][0], sample.directions[p][1], sample.directions[p][2]});
+        if (is_defined(values.intensity[p]) && is_defined_at(columns, p)) {
+            of_intensity.add(columns, p);
+            of_intensity.first.push_back(values.intensity[p]);
+            const Vector3& n = sample.directions[p];
+            of_intensity.functions.push_back({1.0, n[0], n[1], n[2]});
         }
         if (polarized == nullptr) continue;
-        if (!is_defined(values.q[p] + values.u[p] + values.index_of_polarization()[p] +
-                        values.curvature_of_polarization()[p]))
-            continue;
-        polarized_spectra.index.push_back(values.index_of_polarization()[p]);
-        polarized_spectra.curvature.push_back(values.curvature_of_polarization()[p]);
-        q.push_back(values.q[p]);
-        u.push_back(values.u[p]);
+        const LawColumns own = values.polarized_columns();
+        if (!is_defined(values.q[p] + values.u[p]) || !is_defined_at(own, p)) continue;
+        of_polarization.add(own, p);
+        of_polarization.first.push_back(values.q[p]);
+        of_polarization.second.push_back(values.u[p]);
     }
-    const DipoleFit fit(std::move(functions));
-    const Matrix components = component_values(spectra, intensity, sky.reference);
-    const Matrix polarized_components =
-        polarized != nullptr ? component_values(polarized_spectra, *polarized, sky.polarization->reference)
-                             : Matrix();
-    parallel_for_blocks(static_cast<std::int64_t>(channels.size()), 1, [&](std::int64_t begin, std::int64_t) {
-        const auto c = static_cast<std::size_t>(begin);
-        Compared i = compare(spectra, components, intensity.weights, c, channels[c].band, sky.reference);
-        for (std::size_t p = 0; p < amplitude.size(); ++p) {
-            i.error[p] *= amplitude[p];
-            i.truth[p] *= amplitude[p];
+    const DipoleFit fit(std::move(of_intensity.functions));
+    const SkyLaw law = intensity_law(sky);
+    const Matrix components = exact_band_values(law, intensity.components, of_intensity.points.columns());
+    for (std::size_t c = 0; c < channels.size(); ++c) {
+        Compared i = compare(law, of_intensity.points, components, intensity.weights, c, channels[c].band);
+        for (std::size_t p = 0; p < of_intensity.first.size(); ++p) {
+            i.error[p] *= of_intensity.first[p];
+            i.truth[p] *= of_intensity.first[p];
         }
         errors.relative[c] = ratio(fit.rms_without(i.error), fit.rms_without(i.truth));
-        if (polarized == nullptr) return;
-        const Compared p = compare(polarized_spectra, polarized_components, polarized->weights, c,
-                                   channels[c].band, sky.polarization->reference);
-        errors.relative[c] =
-            std::max(errors.relative[c], ratio(rms_of_both(q, u, p.error), rms_of_both(q, u, p.truth)));
-    });
+    }
+    if (polarized == nullptr) return errors;
+    const SkyLaw own_law = polarized_law(sky);
+    const Matrix own_components =
+        exact_band_values(own_law, polarized->components, of_polarization.points.columns());
+    for (std::size_t c = 0; c < channels.size(); ++c) {
+        const Compared p =
+            compare(own_law, of_polarization.points, own_components, polarized->weights, c, channels[c].band);
+        const auto rms = [&](const std::vector<double>& factor) {
+            return rms_of_both(of_polarization.first, of_polarization.second, factor);
+        };
+        errors.relative[c] = std::max(errors.relative[c], ratio(rms(p.error), rms(p.truth)));
+    }
     return errors;
 }
 

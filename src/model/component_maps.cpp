@@ -13,9 +13,8 @@ constexpr std::int64_t strip_pixels = std::int64_t{1} << 22;
 constexpr std::int64_t block = 4096;
 
 // Writes amplitude times the law's factor into a full map.
-void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandLaw& law,
-                std::span<const double> index, std::span<const double> curvature,
-                std::span<const std::span<const double>> amplitudes,
+void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandFactor& law,
+                const LawColumns& columns, std::span<const std::span<const double>> amplitudes,
                 std::span<std::vector<double>* const> maps) {
     for (const PixelRange& range : pixel_ranges(grid, strip))
         parallel_for_blocks(range.count, block, [&](std::int64_t begin, std::int64_t end) {
@@ -23,7 +22,7 @@ void scale_into(const RingStrip& strip, const HealpixGrid& grid, const BandLaw& 
             const auto from = static_cast<std::size_t>(range.offset + begin);
             const auto to = static_cast<std::size_t>(range.first_pixel + begin);
             std::vector<double> factor(n);
-            law.evaluate(index.subspan(from, n), curvature.subspan(from, n), factor);
+            law.evaluate(columns.part(from, n), factor);
             for (std::size_t a = 0; a < amplitudes.size(); ++a)
                 for (std::size_t i = 0; i < n; ++i)
                     (*maps[a])[to + i] = amplitudes[a][from + i] * factor[i];
@@ -47,25 +46,36 @@ void for_each_sky_strip(const SkyModel& sky, bool with_polarization,
     }
 }
 
-std::vector<double> make_intensity_component(const SkyModel& sky, const BandLaw& law) {
+SpectralBasis make_intensity_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
+                                   double tolerance) {
+    return make_spectral_basis(channels, intensity_law(sky), tolerance);
+}
+
+SpectralBasis make_polarized_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
+                                   double tolerance) {
+    return make_spectral_basis(channels, polarized_law(sky), tolerance);
+}
+
+std::vector<double> make_intensity_component(const SkyModel& sky, const BandSum& component) {
+    const BandFactor law(intensity_law(sky), component, component_tolerance);
     std::vector<double> map(static_cast<std::size_t>(sky.grid.npix()));
     for_each_sky_strip(sky, false, [&](const RingStrip& strip, const SkyStrip& values) {
         const std::span<const double> amplitude = values.intensity;
         std::vector<double>* const target = &map;
-        scale_into(strip, sky.grid, law, values.index, values.curvature, {&amplitude, 1}, {&target, 1});
+        scale_into(strip, sky.grid, law, values.intensity_columns(), {&amplitude, 1}, {&target, 1});
     });
     return map;
 }
 
-StokesComponent make_polarized_component(const SkyModel& sky, const BandLaw& law) {
+StokesComponent make_polarized_component(const SkyModel& sky, const BandSum& component) {
+    const BandFactor law(polarized_law(sky), component, component_tolerance);
     StokesComponent maps;
     maps.q.resize(static_cast<std::size_t>(sky.grid.npix()));
     maps.u.resize(maps.q.size());
     for_each_sky_strip(sky, true, [&](const RingStrip& strip, const SkyStrip& values) {
         const std::array<std::span<const double>, 2> amplitudes{values.q, values.u};
         const std::array<std::vector<double>*, 2> targets{&maps.q, &maps.u};
-        scale_into(strip, sky.grid, law, values.index_of_polarization(), values.curvature_of_polarization(),
-                   amplitudes, targets);
+        scale_into(strip, sky.grid, law, values.polarized_columns(), amplitudes, targets);
     });
     return maps;
 }

@@ -8,18 +8,27 @@
 #include <vector>
 
 #include "model/sky_model.h"
-#include "physics/band_law.h"
+#include "model/spectral_basis.h"
 
 namespace foreglow {
 
-/// The whole sky under one component's law, RING order, undefined pixels NaN.
+/// Make the smallest basis of component maps for some channels (make_spectral_basis), of intensity and of Q
+/// and U.
+[[nodiscard]] SpectralBasis make_intensity_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
+                                                 double tolerance);
+[[nodiscard]] SpectralBasis make_polarized_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
+                                                 double tolerance);
+
+/// Makes the whole sky in one component band, RING order, undefined pixels NaN; its relative error is below
+/// component_tolerance.
 /// @return [npix]
-[[nodiscard]] std::vector<double> make_intensity_component(const SkyModel& sky, const BandLaw& law);
+[[nodiscard]] std::vector<double> make_intensity_component(const SkyModel& sky, const BandSum& component);
+inline constexpr double component_tolerance = 1e-9;  // far below any accuracy that transforms reach
 
 struct StokesComponent {
     std::vector<double> q, u;  ///< [npix]
 };
-[[nodiscard]] StokesComponent make_polarized_component(const SkyModel& sky, const BandLaw& law);
+[[nodiscard]] StokesComponent make_polarized_component(const SkyModel& sky, const BandSum& component);
 
 /// Pixels of a sky taken evenly over it, with their directions.
 struct SkySample {

@@ -20,7 +20,6 @@ namespace foreglow {
 namespace {
 
 constexpr double negligible_window = 1e-7;  // a channel's a_lm end where its beam falls below this
-constexpr double law_tolerance = 1e-9;      // of component maps: far below any accuracy that transforms reach
 
 std::vector<BandSum> bands_of(const std::vector<Channel>& channels) {
     std::vector<BandSum> bands;
@@ -88,13 +87,11 @@ HarmonicRoute::HarmonicRoute(const SkyModel& sky, std::vector<Channel> channels,
 
 void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
     const auto bands = bands_of(channels_);
-    intensity_basis_ = make_spectral_basis(bands, sky.reference, parameter_range(sky), tolerance);
+    intensity_basis_ = make_intensity_basis(sky, bands, tolerance);
     report_.intensity_components = intensity_basis_.components.size();
     if (!options_.polarized) return;
-    polarized_basis_ = polarization_shares_law(sky)
-                           ? intensity_basis_
-                           : make_spectral_basis(bands, sky.polarization->reference,
-                                                 polarized_parameter_range(sky), tolerance);
+    polarized_basis_ =
+        polarization_shares_law(sky) ? intensity_basis_ : make_polarized_basis(sky, bands, tolerance);
     report_.polarized_components = polarized_basis_.components.size();
 }
 
@@ -102,14 +99,13 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
     const auto widest = widest_window(channels_, options_);
     const TransformPlan plan(grid_, options_.lmax, 0.5 * options_.accuracy, widest.temperature,
                              widest.polarization);
-    const ParameterRange range = parameter_range(sky);
     const auto total = static_cast<std::int64_t>(report_.intensity_components + report_.polarized_components);
     progress.begin("transforming component maps", total);
     std::int64_t done = 0;
     TransformState state;
     for (const BandSum& component : intensity_basis_.components) {
         check_interrupt();
-        auto map = make_intensity_component(sky, BandLaw(component, sky.reference, range, law_tolerance));
+        auto map = make_intensity_component(sky, component);
         if (intensity_alms_.empty()) filled_intensity_.emplace(grid_, sky_frame_, map, narrowest_beam());
         if (filled_intensity_->any()) fill_undefined(grid_, map);
         intensity_alms_.push_back(plan.analyse(map, state));
@@ -120,12 +116,10 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
         progress.end();
         return;
     }
-    const ParameterRange polarized_range = polarized_parameter_range(sky);
     TransformState polarized_state;
     for (const BandSum& component : polarized_basis_.components) {
         check_interrupt();
-        auto maps = make_polarized_component(
-            sky, BandLaw(component, sky.polarization->reference, polarized_range, law_tolerance));
+        auto maps = make_polarized_component(sky, component);
         if (polarized_alms_.empty())
             filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
         if (filled_polarization_->any()) {

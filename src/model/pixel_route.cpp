@@ -22,13 +22,15 @@ void multiply(std::span<const double> amplitude, std::span<const double> factor,
 
 PixelRoute::PixelRoute(const SkyModel& sky, std::span<const BandSum> bands, bool polarized,
                        double tolerance) {
-    const ParameterRange range = parameter_range(sky);
+    const SkyLaw law = intensity_law(sky);
+    intensity_laws_.reserve(bands.size());
     for (const BandSum& band : bands)
-        intensity_laws_.emplace_back(band, sky.reference, range, tolerance);
+        intensity_laws_.emplace_back(law, band, tolerance);
     if (!polarized || polarization_shares_law(sky)) return;
-    const ParameterRange own_range = polarized_parameter_range(sky);
+    const SkyLaw own_law = polarized_law(sky);
+    polarized_laws_.reserve(bands.size());
     for (const BandSum& band : bands)
-        polarized_laws_.emplace_back(band, sky.polarization->reference, own_range, tolerance);
+        polarized_laws_.emplace_back(own_law, band, tolerance);
 }
 
 double PixelRoute::error_of(std::size_t channel) const {
@@ -46,12 +48,11 @@ void PixelRoute::make_pixels(const SkyStrip& strip, std::size_t channel, std::si
         const auto part = [&](const std::vector<double>& values) {
             return std::span(values).subspan(first, n);
         };
-        intensity_laws_[channel].evaluate(part(strip.index), part(strip.curvature), f, precision);
+        intensity_laws_[channel].evaluate(strip.intensity_columns().part(first, n), f, precision);
         multiply(part(strip.intensity), f, out[0].subspan(first - begin, n));
         if (out.size() == 1) continue;
         if (!polarized_laws_.empty())
-            polarized_laws_[channel].evaluate(part(strip.index_of_polarization()),
-                                              part(strip.curvature_of_polarization()), f, precision);
+            polarized_laws_[channel].evaluate(strip.polarized_columns().part(first, n), f, precision);
         multiply(part(strip.q), f, out[1].subspan(first - begin, n));
         multiply(part(strip.u), f, out[2].subspan(first - begin, n));
     }

@@ -5,7 +5,6 @@
 #include <vector>
 
 #include "model/sky_model.h"
-#include "physics/band_law.h"
 #include "physics/response.h"
 
 namespace foreglow {
@@ -30,8 +29,8 @@ class PixelRoute {
                      ExpPrecision precision = ExpPrecision::Double) const;
 
   private:
-    std::vector<BandLaw> intensity_laws_;
-    std::vector<BandLaw> polarized_laws_;  ///< empty where Q and U share the intensity's
+    std::vector<BandFactor> intensity_laws_;
+    std::vector<BandFactor> polarized_laws_;  ///< empty where Q and U share the intensity's
 };
 
 }  // namespace foreglow

@@ -117,6 +117,14 @@ ParameterRange polarized_parameter_range(const SkyModel& sky) {
                    2 * (log_ratio - sky.index_log_ratio));
 }
 
+SkyLaw intensity_law(const SkyModel& sky) {
+    return CurvedSkyLaw{sky.reference, parameter_range(sky)};
+}
+
+SkyLaw polarized_law(const SkyModel& sky) {
+    return CurvedSkyLaw{sky.polarization->reference, polarized_parameter_range(sky)};
+}
+
 bool polarization_shares_law(const SkyModel& sky) {
     return sky.polarization && !sky.polarization->index && sky.polarization->reference == sky.reference;
 }

@@ -10,7 +10,7 @@
 
 #include "base/quantity.h"
 #include "model/pixel_field.h"
-#include "physics/band_law.h"
+#include "model/sky_law.h"
 #include "sphere/alm.h"
 
 namespace foreglow {
@@ -45,6 +45,11 @@ struct SkyStrip {
     [[nodiscard]] const std::vector<double>& curvature_of_polarization() const {
         return polarized_curvature.empty() ? curvature : polarized_curvature;
     }
+    /// What the law of intensity, and that of Q and U, reads.
+    [[nodiscard]] LawColumns intensity_columns() const { return {index, curvature}; }
+    [[nodiscard]] LawColumns polarized_columns() const {
+        return {index_of_polarization(), curvature_of_polarization()};
+    }
 };
 
 /// A sky on one grid: what each pixel's spectrum is made of.
@@ -71,6 +76,10 @@ struct SkyModel {
 [[nodiscard]] ParameterRange parameter_range(const SkyModel& sky);
 /// Returns the bounds of what Q and U follow, at the polarization's reference frequency.
 [[nodiscard]] ParameterRange polarized_parameter_range(const SkyModel& sky);
+/// Returns the law of intensity, and that of Q and U, with the bounds of their parameters over the sky.
+/// @throws DataError where no pixel of a map is defined
+[[nodiscard]] SkyLaw intensity_law(const SkyModel& sky);
+[[nodiscard]] SkyLaw polarized_law(const SkyModel& sky);
 /// Tells whether Q and U share the intensity's reference frequency and curve, so that one factor serves all
 /// three.
 [[nodiscard]] bool polarization_shares_law(const SkyModel& sky);

@@ -6,37 +6,9 @@
 
 #include "base/constants.h"
 #include "base/error.h"
-#include "physics/spectral_law.h"
 
 namespace foreglow {
 namespace {
-
-std::vector<SpectralParameters> grid_over(const ParameterRange& range, int index_points,
-                                          int curvature_points) {
-    std::vector<SpectralParameters> grid;
-    const bool one_index = !(range.index_high > range.index_low);
-    const bool one_curvature = !(range.curvature_high > range.curvature_low);
-    const int n = one_index ? 1 : index_points;
-    const int m = one_curvature ? 1 : curvature_points;
-    const auto at = [](double low, double high, int i, int count) {
-        return count == 1 ? 0.5 * (low + high) : low + (high - low) * i / (count - 1);
-    };
-    for (int j = 0; j < m; ++j)
-        for (int i = 0; i < n; ++i)
-            grid.push_back({at(range.index_low, range.index_high, i, n),
-                            at(range.curvature_low, range.curvature_high, j, m)});
-    return grid;
-}
-
-// [parameters][bands]: the exact band values, by the sum itself.
-Matrix exact_values(const std::vector<BandSum>& bands, Frequency reference,
-                    const std::vector<SpectralParameters>& grid) {
-    Matrix values(grid.size(), bands.size());
-    for (std::size_t j = 0; j < grid.size(); ++j)
-        for (std::size_t b = 0; b < bands.size(); ++b)
-            values(j, b) = exact_band_value(bands[b], reference, grid[j].index, grid[j].curvature);
-    return values;
-}
 
 std::vector<BandSum> chebyshev_components(double log_low, double log_high, int count) {
     std::vector<BandSum> components;
@@ -96,8 +68,7 @@ SpectralBasis channels_themselves(const std::vector<BandSum>& channels) {
 
 }  // namespace
 
-SpectralBasis make_spectral_basis(const std::vector<BandSum>& channels, Frequency reference,
-                                  const ParameterRange& range, double tolerance) {
+SpectralBasis make_spectral_basis(const std::vector<BandSum>& channels, const SkyLaw& law, double tolerance) {
     FOREGLOW_EXPECTS(!channels.empty() && tolerance > 1e-12);
     double log_low = std::log(channels.front().hz.front());
     double log_high = log_low;
@@ -107,16 +78,17 @@ SpectralBasis make_spectral_basis(const std::vector<BandSum>& channels, Frequenc
             log_high = std::max(log_high, std::log(hz));
         }
     constexpr int most_components = 28;
-    const auto fit_grid = grid_over(range, 21, 9);
-    const auto check_grid = grid_over(range, 47, 14);
-    const Matrix fit_channels = exact_values(channels, reference, fit_grid);
-    const Matrix check_channels = exact_values(channels, reference, check_grid);
+    const LawPoints fit_grid = make_law_grid(law, 21, 9);
+    const LawPoints check_grid = make_law_grid(law, 47, 14);
+    const Matrix fit_channels = exact_band_values(law, channels, fit_grid.columns());
+    const Matrix check_channels = exact_band_values(law, channels, check_grid.columns());
     for (int count = 1; count < static_cast<int>(channels.size()) && count <= most_components; ++count) {
         SpectralBasis basis;
         basis.components = chebyshev_components(log_low, log_high, count);
-        basis.weights = fit_weights(exact_values(basis.components, reference, fit_grid), fit_channels);
+        basis.weights =
+            fit_weights(exact_band_values(law, basis.components, fit_grid.columns()), fit_channels);
         basis.worst_error = worst_relative_error(
-            basis.weights, exact_values(basis.components, reference, check_grid), check_channels);
+            basis.weights, exact_band_values(law, basis.components, check_grid.columns()), check_channels);
         if (basis.worst_error <= tolerance) return basis;
     }
     return channels_themselves(channels);

@@ -5,6 +5,7 @@
 
 #include <cmath>
 
+#include "model/component_maps.h"
 #include "support/sky_builder.h"
 #include "support/threads.h"
 
@@ -37,10 +38,8 @@ TEST(BasisErrors, AreTheRmsOverTheSky) {
     SkyModel sky = make_test_sky(8, true);
     sky.polarization->reference = Frequency::from_ghz(22.8);
     const auto channels = log_channels(16);
-    const SpectralBasis basis =
-        make_spectral_basis(bands_of(channels), sky.reference, parameter_range(sky), 1e-3);
-    const SpectralBasis polarized = make_spectral_basis(bands_of(channels), sky.polarization->reference,
-                                                        polarized_parameter_range(sky), 1e-3);
+    const SpectralBasis basis = make_intensity_basis(sky, bands_of(channels), 1e-3);
+    const SpectralBasis polarized = make_polarized_basis(sky, bands_of(channels), 1e-3);
     ASSERT_FALSE(basis.is_exact);
     const BasisErrors errors = measure_basis_errors(sky, channels, basis, &polarized);
     const BasisErrors of_intensity = measure_basis_errors(sky, channels, basis, nullptr);
@@ -99,8 +98,7 @@ TEST(BasisErrors, AreTheRmsOverTheSky) {
 TEST(BasisErrors, AreZeroWhereTheChannelsAreTheBasis) {
     const SkyModel sky = make_test_sky(4, false);
     const auto channels = log_channels(3);
-    const SpectralBasis basis =
-        make_spectral_basis(bands_of(channels), sky.reference, parameter_range(sky), 1e-5);
+    const SpectralBasis basis = make_intensity_basis(sky, bands_of(channels), 1e-5);
     ASSERT_TRUE(basis.is_exact);
     EXPECT_EQ(measure_basis_errors(sky, channels, basis, nullptr).relative, std::vector<double>(3, 0.0));
 }
@@ -108,8 +106,7 @@ TEST(BasisErrors, AreZeroWhereTheChannelsAreTheBasis) {
 TEST(BasisErrors, LeaveUndefinedPixelsOutAndNeverDependOnTheThreads) {
     SkyModel sky = make_test_sky(8, true);
     const auto channels = log_channels(12);
-    const SpectralBasis basis =
-        make_spectral_basis(bands_of(channels), sky.reference, parameter_range(sky), 1e-3);
+    const SpectralBasis basis = make_intensity_basis(sky, bands_of(channels), 1e-3);
     auto map = testing::make_map(sky.grid, testing::test_brightness);
     for (std::size_t p = 100; p < 300; ++p)
         map->values[p] = undefined_pixel;

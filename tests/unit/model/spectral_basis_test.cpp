@@ -48,7 +48,7 @@ TEST(SpectralBasis, KeepsItsToleranceBetweenItsSamplesWithFewComponents) {
                             {20, 350, 0.2, 1e-6, 11},
                             {0.041, 0.408, 0, 1e-5, 15}}) {
         const auto channels = log_channels(one.low, one.high, 40, one.width);
-        const SpectralBasis basis = make_spectral_basis(channels, nu0, wide, one.tolerance);
+        const SpectralBasis basis = make_spectral_basis(channels, CurvedSkyLaw{nu0, wide}, one.tolerance);
         EXPECT_FALSE(basis.is_exact);
         EXPECT_LE(basis.components.size(), one.most);
         EXPECT_LE(basis.worst_error, one.tolerance);
@@ -59,7 +59,8 @@ TEST(SpectralBasis, KeepsItsToleranceBetweenItsSamplesWithFewComponents) {
 
 TEST(SpectralBasis, UsesTheChannelsThemselvesWhenTheyAreFew) {
     const auto channels = log_channels(20, 350, 3, 0.2);
-    const SpectralBasis basis = make_spectral_basis(channels, Frequency::from_ghz(30), wide, 1e-5);
+    const SpectralBasis basis =
+        make_spectral_basis(channels, CurvedSkyLaw{Frequency::from_ghz(30), wide}, 1e-5);
     EXPECT_TRUE(basis.is_exact);
     EXPECT_EQ(basis.components.size(), 3U);
     EXPECT_EQ(worst_between(basis, channels, Frequency::from_ghz(30)), 0.0);
@@ -68,7 +69,7 @@ TEST(SpectralBasis, UsesTheChannelsThemselvesWhenTheyAreFew) {
 TEST(SpectralBasis, NeedsOneComponentForAUniformSpectrum) {
     const auto channels = log_channels(20, 350, 12, 0.2);
     const SpectralBasis basis =
-        make_spectral_basis(channels, Frequency::from_ghz(30), {-3, -3, -0.02, -0.02}, 1e-9);
+        make_spectral_basis(channels, CurvedSkyLaw{Frequency::from_ghz(30), {-3, -3, -0.02, -0.02}}, 1e-9);
     EXPECT_EQ(basis.components.size(), 1U);
 }
 

@@ -17,6 +17,7 @@
 #include "base/text.h"
 #include "jobs/at.h"
 #include "jobs/draw.h"
+#include "jobs/index.h"
 #include "jobs/make.h"
 #include "jobs/models.h"
 #include "jobs/start.h"
@@ -118,6 +119,21 @@ void add_choice(CLI::App& command, const std::string& name, std::optional<Value>
     command.add_option_function<std::string>(name, choose, words + "; " + help);
 }
 
+void add_index_options(CLI::App& command, IndexOptions& index) {
+    command.add_option("SURVEYS", index.surveys, "surveys file (TOML)")->required();
+    command.add_option("--out", index.out, "folder to write to (default: SURVEYS' stem + \"-out\" here)");
+    const auto choose = [&index](const std::string& word) {
+        if (to_lower(word) != "all" && to_lower(word) != "noise")
+            throw InputError("--errors " + word + ": use one of all, noise");
+        index.noise_errors_only = to_lower(word) == "noise";
+    };
+    command.add_option_function<std::string>(
+        "--errors", choose,
+        "all (default): noise, calibration and zero levels; noise: leaves the latter out");
+    command.add_flag("--replace", index.replace,
+                     "write into a folder that is not empty, replacing an earlier run");
+}
+
 void add_draw_options(CLI::App& command, DrawOptions& draw, std::vector<double>& center, std::string& size) {
     command.add_option("MAP", draw.map, "HEALPix FITS map")->required();
     add_choice<Frame>(command, "--frame", draw.frame,
@@ -210,6 +226,40 @@ void add_at_options(CLI::App& command, AtRequest& request) {
                          "where the file does not say");
 }
 
+void add_format(CLI::App& command, RowFormat& format) {
+    const auto choose = [&format](const std::string& word) {
+        const std::string lower = to_lower(word);
+        if (lower != "table" && lower != "csv" && lower != "json")
+            throw InputError("--format " + word + ": use one of table, csv, json");
+        format = lower == "csv" ? RowFormat::Csv : lower == "json" ? RowFormat::Json : RowFormat::Table;
+    };
+    command.add_option_function<std::string>("--format", choose, "of the rows: table, csv or json");
+}
+
+constexpr const char* index_examples = R"(
+Examples:
+  foreglow index surveys.toml --out index
+      reads the surveys that the file names, and leaves index/index.fits, ready to be an
+      [index] map, amplitude.fits, scatter.csv (the T-T estimate by cell) and run.json.
+      surveys.toml:
+          reference_frequency = "1 GHz"
+          nside = 128
+          beam_fwhm = "1 deg"
+          [[survey]]
+          map = "a.fits"
+          frequency = "408 MHz"
+          beam_fwhm = "51 arcmin"
+          noise = "0.3 K_RJ"           # rms per pixel of the map as given, or noise_map
+          calibration_error = 0.05
+          zero_level = "3 K_RJ"        # subtracted
+          zero_level_error = "1 K_RJ"
+          [[survey]]
+          map = "b.fits"
+          ...
+  foreglow index surveys.toml --errors noise --format csv > summary.csv
+      the same values; errors of the noise alone, as wanted for the scatter between pixels.
+index is beta of T ~ nu^beta (brightness temperature); errors are one sigma.)";
+
 /// All that the command line can ask for.
 struct Request {
     CommonOptions common;
@@ -221,6 +271,7 @@ struct Request {
     DrawOptions draw;
     std::vector<double> draw_center;
     std::string draw_size;
+    IndexOptions index;
 };
 
 void run_draw_command(Request& request) {
@@ -316,7 +367,18 @@ void define_commands(CLI::App& app, Request& request) {
     add_common(*at, request.common);
     at->callback([&request] { run_at_command(request); });
 
-    for (CLI::App* command : {make, plan, start, at, models, draw})
+    CLI::App* index = app.add_subcommand(
+        "index", "makes a spectral-index map with its errors from survey maps at two or more frequencies");
+    add_index_options(*index, request.index);
+    add_format(*index, request.index.format);
+    index->footer(index_examples);
+    add_common(*index, request.common);
+    index->callback([&request] {
+        Progress progress = make_progress(request.common);
+        say(run_index(request.index, progress).rows);
+    });
+
+    for (CLI::App* command : {make, plan, start, at, index, models, draw})
         command->parse_complete_callback([&request] {
             set_thread_count(request.common.threads > 0 ? request.common.threads : available_processors());
         });

@@ -10,12 +10,11 @@
 #include <vector>
 
 #include "base/quantity.h"
+#include "jobs/row_format.h"
 #include "sphere/frame.h"
 #include "sphere/grid.h"
 
 namespace foreglow {
-
-enum class RowFormat { Table, Csv, Json };
 
 /// What `foreglow at SOURCE` is asked for; what is left open is chosen from the source.
 struct AtOptions {

@@ -2,13 +2,12 @@
 #include "jobs/manifest.h"
 
 #include <algorithm>
-#include <regex>
 
 #include "base/build_info.h"
 #include "base/error.h"
 #include "base/parallel.h"
-#include "io/hash.h"
 #include "io/json_value.h"
+#include "jobs/manifest_parts.h"
 
 namespace foreglow {
 namespace {
@@ -21,50 +20,6 @@ void add_source(const std::optional<MapSource>& source, std::vector<fs::path>& i
 
 void add_value(const ValueOrMap& value, std::vector<fs::path>& inputs) {
     if (const auto* source = std::get_if<MapSource>(&value)) inputs.push_back(source->path);
-}
-
-JsonValue describe_inputs(const Plan& plan) {
-    const auto inputs = list_plan_inputs(plan);
-    std::vector<std::string> sums(inputs.size());
-    parallel_for_blocks(static_cast<std::int64_t>(inputs.size()), 1, [&](std::int64_t i, std::int64_t) {
-        const auto n = static_cast<std::size_t>(i);
-        sums[n] = sha256_of_file(inputs[n]);
-    });
-    JsonValue::Array array;
-    for (std::size_t i = 0; i < inputs.size(); ++i)
-        array.push_back(JsonValue::Object{{"name", inputs[i].filename().string()},
-                                          {"bytes", static_cast<std::int64_t>(fs::file_size(inputs[i]))},
-                                          {"sha256", sums[i]}});
-    return array;
-}
-
-JsonValue describe_outputs(const Plan& plan, const MakeResult& result, bool with_sha256) {
-    struct Sums {
-        std::string xxh3, sha256;
-    };
-    std::vector<Sums> sums(result.outputs.size());
-    parallel_for_blocks(static_cast<std::int64_t>(sums.size()), 1, [&](std::int64_t i, std::int64_t) {
-        const auto n = static_cast<std::size_t>(i);
-        const fs::path path = plan.out / result.outputs[n];
-        sums[n].xxh3 = xxh3_128_of_file(path);
-        if (with_sha256) sums[n].sha256 = sha256_of_file(path);
-    });
-    JsonValue::Array array;
-    for (std::size_t i = 0; i < sums.size(); ++i) {
-        JsonValue::Object file{
-            {"name", result.outputs[i]},
-            {"bytes", static_cast<std::int64_t>(fs::file_size(plan.out / result.outputs[i]))},
-            {"xxh3_128", sums[i].xxh3}};
-        if (with_sha256) file.emplace_back("sha256", sums[i].sha256);
-        array.push_back(std::move(file));
-    }
-    return array;
-}
-
-// Study and model texts are kept as used, but for absolute paths, which would tell of the machine.
-std::string without_absolute_paths(const std::string& text) {
-    static const std::regex absolute(R"((["'=])\s*/(?:[^"'\n/]*/)*)");
-    return std::regex_replace(text, absolute, "$1");
 }
 
 JsonValue describe_channels(const Plan& plan, const MakeResult& result) {
@@ -85,31 +40,6 @@ JsonValue describe_channels(const Plan& plan, const MakeResult& result) {
         one.emplace_back("negative_pixels", outcome.i.negative);
         if (plan.study.remove_monopole) one.emplace_back("mean_removed", outcome.mean_removed);
         array.push_back(std::move(one));
-    }
-    return array;
-}
-
-template <class List>
-JsonValue texts(const List& list) {
-    JsonValue::Array array;
-    for (const std::string& one : list)
-        array.emplace_back(one);
-    return array;
-}
-
-// What was said on the terminal, with the folders of the inputs left out.
-template <class List>
-JsonValue texts_without_folders(const List& list, const std::vector<fs::path>& inputs) {
-    JsonValue::Array array;
-    for (std::string one : list) {
-        for (const fs::path& input : inputs) {
-            const std::string path = input.string();
-            const std::string name = input.filename().string();
-            for (std::size_t at = one.find(path); at != std::string::npos && path != name;
-                 at = one.find(path, at + name.size()))
-                one.replace(at, path.size(), name);
-        }
-        array.emplace_back(std::move(one));
     }
     return array;
 }
@@ -179,9 +109,7 @@ std::vector<fs::path> list_plan_inputs(const Plan& plan) {
 
 std::string make_manifest(const Plan& plan, const MakeResult& result, const Progress& progress,
                           bool with_sha256) {
-    JsonValue::Array phases;
-    for (const Progress::Phase& phase : progress.phases())
-        phases.push_back(JsonValue::Object{{"phase", phase.name}, {"seconds", phase.seconds}});
+    const std::vector<fs::path> inputs = list_plan_inputs(plan);
     JsonValue::Array realizations;
     for (const int r : plan.realizations)
         realizations.emplace_back(r);
@@ -190,7 +118,7 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
         {"version", version()},
         {"build", build_description()},
         {"title", plan.study.title},
-        {"sky_notes", texts(result.labels)},
+        {"sky_notes", describe_texts(result.labels)},
         {"seed", plan.study.seed},
         {"realizations", std::move(realizations)},
         {"nside", plan.study.nside},
@@ -199,12 +127,12 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
         {"conventions", describe_conventions(plan.study)},
         {"accuracy", describe_accuracy(plan, result)},
         {"channels", describe_channels(plan, result)},
-        {"warnings", texts_without_folders(progress.warnings(), list_plan_inputs(plan))},
-        {"notices", texts_without_folders(progress.notices(), list_plan_inputs(plan))},
-        {"inputs", describe_inputs(plan)},
-        {"outputs", describe_outputs(plan, result, with_sha256)},
+        {"warnings", describe_texts_without_folders(progress.warnings(), inputs)},
+        {"notices", describe_texts_without_folders(progress.notices(), inputs)},
+        {"inputs", describe_input_files(inputs)},
+        {"outputs", describe_output_files(plan.out, result.outputs, with_sha256)},
         {"threads", thread_count()},
-        {"timings", std::move(phases)},
+        {"timings", describe_timings(progress)},
         {"study", without_absolute_paths(plan.study.source)},
         {"model", without_absolute_paths(plan.model.source)}};
     return write_json(manifest);

@@ -258,6 +258,12 @@ IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder) {
     return index;
 }
 
+void read_map_layout(TomlReader& reader, MapSource& source) {
+    source.columns = read_column(reader);
+    add_layout_keys(source, reader);
+    source.unit = read_unit(reader, "unit");
+}
+
 ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder) {
     return read_value_section(reader, "curvature", -2, 2, "-0.04", folder);
 }

@@ -17,4 +17,8 @@ namespace foreglow {
 [[nodiscard]] IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder);
 [[nodiscard]] ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder);
 
+/// Reads the keys that say how one column of a brightness map is laid out: column, hdu, ordering, frame,
+/// unit.
+void read_map_layout(TomlReader& reader, MapSource& source);
+
 }  // namespace foreglow

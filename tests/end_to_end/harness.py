@@ -69,7 +69,7 @@ class Case(unittest.TestCase):
         if convention:
             table.header["POLCCONV"] = convention
         path = self.folder / name
-        table.writeto(path)
+        table.writeto(path, overwrite=True)
         return path
 
 

@@ -12,13 +12,14 @@ import signal
 import sys
 from pathlib import Path
 
+from index_surveys import index_surveys
 from kernels import kernels
 from timing import Failed, Workplace, say, significant, table
 from whole_studies import GROUPS, LONG
 
 
 def main():
-    groups = {**GROUPS, "kernels": kernels}
+    groups = {**GROUPS, "index": index_surveys, "kernels": kernels}
     parser = argparse.ArgumentParser(prog="scripts/benchmark", description="Measures Foreglow against what it should be "
                                      "compared with; every number is a ratio of two things measured in turn.")
     parser.add_argument("build", type=Path, help=argparse.SUPPRESS)

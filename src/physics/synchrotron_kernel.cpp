@@ -88,83 +88,101 @@ BesselPair small_pair(double y) {
     return {bessel_k_small(4.0 / 3, y), bessel_k_small(1.0 / 3, y)};
 }
 
-double fall(double x) {
-    return std::exp(-x);
-}
-
-double bessel_53(double x) {
-    return x <= 1 ? bessel_k_small(5.0 / 3, x)
-                  : table_value(synchrotron_tables::bessel_53, x) / std::sqrt(x) * fall(x);
+double scaled_bessel_53(double x) {
+    return x <= 1 ? bessel_k_small(5.0 / 3, x) * std::exp(x)
+                  : table_value(synchrotron_tables::bessel_53, x) / std::sqrt(x);
 }
 
 // At and beyond the ends 0, infinity and NaN no formula is asked.
-bool is_inside(double x) {
+double fall(double x, double (*scaled)(double)) {
     FOREGLOW_EXPECTS(!(x < 0));
-    return x > 0 && x < 750;
+    if (std::isnan(x)) return x;
+    return x > 0 && x < 750 ? scaled(x) * std::exp(-x) : 0;
 }
-double outside(double x) {
-    return std::isnan(x) ? x : 0;
+KernelDerivatives fall(double x, KernelDerivatives (*scaled)(double)) {
+    FOREGLOW_EXPECTS(!(x < 0));
+    if (std::isnan(x)) return {x, x, x};
+    if (!(x > 0 && x < 750)) return {};
+    const KernelDerivatives d = scaled(x);
+    const double e = std::exp(-x);
+    return {d.value * e, d.first * e, d.second * e};
 }
 
 }  // namespace
 
-double kernel_f(double x) {
-    if (!is_inside(x)) return outside(x);
-    if (x <= 1) return kernel_f_small(x);
-    return table_value(synchrotron_tables::kernel_f, x) * std::sqrt(x) * fall(x);
+double scaled_kernel_f(double x) {
+    return x <= 1 ? kernel_f_small(x) * std::exp(x)
+                  : table_value(synchrotron_tables::kernel_f, x) * std::sqrt(x);
 }
 
-double kernel_g(double x) {
-    if (!is_inside(x)) return outside(x);
-    if (x <= 1) return x * bessel_k_small(2.0 / 3, x);
-    return table_value(synchrotron_tables::kernel_g, x) * std::sqrt(x) * fall(x);
+double scaled_kernel_g(double x) {
+    return x <= 1 ? x * bessel_k_small(2.0 / 3, x) * std::exp(x)
+                  : table_value(synchrotron_tables::kernel_g, x) * std::sqrt(x);
 }
 
-double kernel_r(double x) {
-    if (!is_inside(x)) return outside(x);
-    if (x > 1) return table_value(synchrotron_tables::kernel_r, x) * fall(x);
+double scaled_kernel_r(double x) {
+    if (x > 1) return table_value(synchrotron_tables::kernel_r, x);
     const double y = 0.5 * x;
     const auto [a, b] = small_pair(y);
-    return 2 * y * y * (a * b - 0.6 * y * (a * a - b * b));
+    return 2 * y * y * (a * b - 0.6 * y * (a * a - b * b)) * std::exp(x);
 }
 
-double kernel_r_polarized(double x) {
-    if (!is_inside(x)) return outside(x);
-    return x <= 1 ? kernel_r_polarized_small(x) : table_value(synchrotron_tables::polarized_r, x) * fall(x);
+double scaled_kernel_r_polarized(double x) {
+    return x <= 1 ? kernel_r_polarized_small(x) * std::exp(x)
+                  : table_value(synchrotron_tables::polarized_r, x);
 }
 
-// With D = x d/dx: D F = F - x^2 K_5/3 and D(x^2 K_5/3) = x^2 K_5/3/3 - x^2 G (recurrence of K_nu,
-// A&S 9.6.26).
-KernelDerivatives kernel_f_derivatives(double x) {
-    if (!is_inside(x)) return {outside(x), outside(x), outside(x)};
-    const double f = kernel_f(x);
-    const double k = x * x * bessel_53(x);
-    return {f, f - k, f - 4.0 / 3 * k + x * x * kernel_g(x)};
+// With D = x d/dx: D F = F - x^2 K_5/3, D(x^2 K_5/3) = x^2 K_5/3/3 - x^2 G (recurrence of K_nu, A&S 9.6.26).
+KernelDerivatives scaled_kernel_f_derivatives(double x) {
+    const double f = scaled_kernel_f(x);
+    const double k = x * x * scaled_bessel_53(x);
+    return {f, f - k, f - 4.0 / 3 * k + x * x * scaled_kernel_g(x)};
 }
 
-KernelDerivatives kernel_g_derivatives(double x) {
-    if (!is_inside(x)) return {outside(x), outside(x), outside(x)};
-    const double g = kernel_g(x);
-    const double k = x * x * bessel_53(x);
+KernelDerivatives scaled_kernel_g_derivatives(double x) {
+    const double g = scaled_kernel_g(x);
+    const double k = x * x * scaled_bessel_53(x);
     return {g, 5.0 / 3 * g - k, 25.0 / 9 * g - 2 * k + x * x * g};
 }
 
 // S = 2 y^2 K_4/3 K_1/3 and V = 2 y^3 (K_4/3^2 + K_1/3^2): D R = 2 R - S, D S = S - V.
-KernelDerivatives kernel_r_derivatives(double x) {
-    if (!is_inside(x)) return {outside(x), outside(x), outside(x)};
-    const double r = kernel_r(x);
+KernelDerivatives scaled_kernel_r_derivatives(double x) {
+    const double r = scaled_kernel_r(x);
     double s = 0;
     double v = 0;
     if (x > 1) {
-        s = table_value(synchrotron_tables::product, x) * x * fall(x);
-        v = table_value(synchrotron_tables::squares, x) * x * x * fall(x);
+        s = table_value(synchrotron_tables::product, x) * x;
+        v = table_value(synchrotron_tables::squares, x) * x * x;
     } else {
         const double y = 0.5 * x;
+        const double e = std::exp(x);
         const auto [a, b] = small_pair(y);
-        s = 2 * y * y * a * b;
-        v = 2 * y * y * y * (a * a + b * b);
+        s = 2 * y * y * a * b * e;
+        v = 2 * y * y * y * (a * a + b * b) * e;
     }
     return {r, 2 * r - s, 4 * r - 3 * s + v};
+}
+
+double kernel_f(double x) {
+    return fall(x, scaled_kernel_f);
+}
+double kernel_g(double x) {
+    return fall(x, scaled_kernel_g);
+}
+double kernel_r(double x) {
+    return fall(x, scaled_kernel_r);
+}
+double kernel_r_polarized(double x) {
+    return fall(x, scaled_kernel_r_polarized);
+}
+KernelDerivatives kernel_f_derivatives(double x) {
+    return fall(x, scaled_kernel_f_derivatives);
+}
+KernelDerivatives kernel_g_derivatives(double x) {
+    return fall(x, scaled_kernel_g_derivatives);
+}
+KernelDerivatives kernel_r_derivatives(double x) {
+    return fall(x, scaled_kernel_r_derivatives);
 }
 
 double critical_frequency_constant_hz() {

@@ -38,6 +38,15 @@ struct KernelDerivatives {
 [[nodiscard]] KernelDerivatives kernel_g_derivatives(double x);
 [[nodiscard]] KernelDerivatives kernel_r_derivatives(double x);
 
+/// Return e^x times a kernel (or its derivatives), which do not underflow; 0 < x < infinity.
+[[nodiscard]] double scaled_kernel_f(double x);
+[[nodiscard]] double scaled_kernel_g(double x);
+[[nodiscard]] double scaled_kernel_r(double x);
+[[nodiscard]] double scaled_kernel_r_polarized(double x);
+[[nodiscard]] KernelDerivatives scaled_kernel_f_derivatives(double x);
+[[nodiscard]] KernelDerivatives scaled_kernel_g_derivatives(double x);
+[[nodiscard]] KernelDerivatives scaled_kernel_r_derivatives(double x);
+
 // Energies are total energies [GeV] of ultra-relativistic electrons, E = gamma m c^2; fields are in
 // microgauss.
 

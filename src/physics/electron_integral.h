@@ -6,7 +6,6 @@
 
 #include "base/quantity.h"
 #include "physics/electron_law.h"
-#include "physics/response.h"
 
 namespace foreglow {
 
@@ -27,9 +26,7 @@ enum class EmissionPart {
 /// fixed-pitch ageing 1e-9.
 class ElectronIntegral {
   public:
-    /// @param law  its slope is left open
-    /// @param sum  observed frequencies, with any weights
-    ElectronIntegral(const ElectronLaw& law, const BandSum& sum, EmissionPart part);
+    /// @param frequency  as observed
     ElectronIntegral(const ElectronLaw& law, Frequency frequency, EmissionPart part);
 
     /// Returns the integral over exp(log_scale()), N0 = (E0/GeV)^-s (E0/E_b)^-step ... per GeV.

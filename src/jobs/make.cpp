@@ -2,13 +2,17 @@
 #include "jobs/make.h"
 
 #include <algorithm>
+#include <optional>
+#include <utility>
 
+#include "base/interrupt.h"
 #include "base/text.h"
 #include "io/atomic_file.h"
 #include "jobs/make_maps.h"
 #include "jobs/make_report.h"
 #include "jobs/manifest.h"
 #include "jobs/output_folder.h"
+#include "model/detailed_sky.h"
 #include "model/load_sky.h"
 
 namespace foreglow {
@@ -67,6 +71,49 @@ std::string summarize(const Plan& plan, const MakeResult& result) {
     return text;
 }
 
+void warn_about_counts(const DetailCounts& counts, bool capped, Progress& progress) {
+    if (counts.not_positive > 0)
+        progress.warn(std::to_string(counts.not_positive) +
+                      " pixels of the template are not positive: the lognormal detail is added there, not "
+                      "multiplied");
+    if (counts.too_polarized > 0)
+        progress.warn(std::to_string(counts.too_polarized) +
+                      " pixels have P > 0.75 I, more than synchrotron radiation gives" +
+                      (capped ? std::string("; Q and U were scaled back there")
+                              : std::string(": set cap_polarization = true in [detail] to scale them back")));
+}
+
+// Each realization is a sky of its own where something is random, and one sky serves all where nothing is.
+// Returns the first one.
+SkyModel make_realizations(const Plan& plan, const DetailedSky& sky, OutputFolder& folder, Progress& progress,
+                           MakeResult& result) {
+    if (sky.has_detail()) result.detail = sky.report();
+    const auto& numbers = plan.realizations;
+    if (!sky.varies()) {
+        SkyModel only = sky.realize(numbers.front());
+        write_channel_maps(plan, only, numbers, folder, progress, result);
+        write_truth_maps(plan, only, std::nullopt, folder, progress, result);
+        return only;
+    }
+    SkyModel first = sky.realize(numbers.front(), &result.detail_counts);
+    write_channel_maps(plan, first, {numbers.data(), 1}, folder, progress, result);
+    write_truth_maps(plan, first, numbers.front(), folder, progress, result);
+    warn_about_counts(result.detail_counts, plan.model.detail && plan.model.detail->cap_polarization,
+                      progress);
+    if (numbers.size() == 1) return first;
+    progress.begin("making the other realizations", static_cast<std::int64_t>(numbers.size()) - 1);
+    Progress silent;  // a hundred realizations would say the same a hundred times
+    for (std::size_t k = 1; k < numbers.size(); ++k) {
+        check_interrupt();
+        const SkyModel other = sky.realize(numbers[k]);
+        write_channel_maps(plan, other, {&numbers[k], 1}, folder, silent, result);
+        write_truth_maps(plan, other, numbers[k], folder, silent, result);
+        progress.step(static_cast<std::int64_t>(k));
+    }
+    progress.end();
+    return first;
+}
+
 }  // namespace
 
 MakeSummary run_make(MakeOptions options, Progress& progress) {
@@ -75,17 +122,17 @@ MakeSummary run_make(MakeOptions options, Progress& progress) {
     for (const std::string& warning : plan.warnings)
         progress.warn(warning);
     progress.begin("loading the sky");
-    const SkyModel sky =
+    SkyModel loaded =
         load_sky(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized, progress);
     progress.end();
+    const DetailedSky sky(plan.model, std::move(loaded), plan.study.seed, plan.study.polarized, progress);
     OutputFolder folder(plan.out, replace);
     MakeResult result;
-    write_channel_maps(plan, sky, folder, progress, result);
-    write_truth_maps(plan, sky, folder, progress, result);
+    const SkyModel first = make_realizations(plan, sky, folder, progress, result);
     warn_about_result(plan, result, progress);
-    warn_about_ringing(plan, sky, result, progress);
+    warn_about_ringing(plan, first, result, progress);
     progress.begin("writing the report");
-    write_text_file(folder.prepare("report.html"), make_report(plan, sky, result, progress));
+    write_text_file(folder.prepare("report.html"), make_report(plan, first, result, progress));
     result.outputs.emplace_back("report.html");
     progress.end();
     const std::string manifest = make_manifest(plan, result, progress, options.sha256);

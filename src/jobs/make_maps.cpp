@@ -48,18 +48,24 @@ struct OpenMap {
     double mean = 0;                          ///< to be subtracted from I
 };
 
+/// What a route reached in one channel, which goes into the channel's headers.
+struct Reached {
+    double accuracy = 0;
+    double mean_removed = 0;
+};
+
 OpenMap open_map(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel,
-                 int realization, MakeResult& result) {
+                 int realization, const Reached& reached, MakeResult& result) {
     OpenMap map;
     map.channel = channel;
     const std::string name = map_name(plan, channel, realization);
-    const FitsMapLayout layout = make_channel_layout(plan, sky, plan.channels[channel], realization,
-                                                     result.channels[channel].accuracy);
+    const FitsMapLayout layout =
+        make_channel_layout(plan, sky, plan.channels[channel], realization, reached.accuracy);
     map.file = std::make_unique<MapFile>(folder.prepare(name), layout, plan.study.polarized);
     result.outputs.push_back(name);
     map.counts = realization == plan.realizations.front();
     if (map.counts) map.sampler = make_sampler(plan, channel);
-    map.mean = result.channels[channel].mean_removed;
+    map.mean = reached.mean_removed;
     return map;
 }
 
@@ -129,21 +135,24 @@ template <class Route>
 class ChannelWriter {
   public:
     ChannelWriter(const Plan& plan, const SkyModel& sky, const Route& route,
-                  const std::vector<std::size_t>& channels)
+                  const std::vector<std::size_t>& channels, std::span<const int> realizations)
         : plan_(plan),
           sky_(sky),
           route_(route),
           channels_(channels),
-          columns_(plan.study.polarized ? 3 : 1) {}
+          realizations_(realizations),
+          columns_(plan.study.polarized ? 3 : 1),
+          reached_(channels.size()) {}
 
-    void write(const std::string& phase, OutputFolder& folder, Progress& progress, MakeResult& result) const {
+    void write(const std::string& phase, OutputFolder& folder, Progress& progress, MakeResult& result) {
         for (std::size_t k = 0; k < channels_.size(); ++k)
-            result.channels[channels_[k]].accuracy = route_.error_of(k) + rounding_of(plan_.study);
-        if (plan_.study.remove_monopole) measure_means(result);
-        progress.begin(phase, static_cast<std::int64_t>(channels_.size() * plan_.realizations.size()));
+            reached_[k].accuracy = route_.error_of(k) + rounding_of(plan_.study);
+        if (plan_.study.remove_monopole) measure_means();
+        report_reached(result);
+        progress.begin(phase, static_cast<std::int64_t>(channels_.size() * realizations_.size()));
         std::int64_t done = 0;
         const std::size_t group = std::min(most_open_files, route_.group_size());
-        for (const int realization : plan_.realizations)
+        for (const int realization : realizations_)
             for (std::size_t first = 0; first < channels_.size(); first += group) {
                 const std::size_t count = std::min(group, channels_.size() - first);
                 write_group(first, count, realization, folder, result);
@@ -153,7 +162,17 @@ class ChannelWriter {
     }
 
   private:
-    void measure_means(MakeResult& result) const {
+    // The worst accuracy of all realizations, the first one's mean.
+    void report_reached(MakeResult& result) const {
+        const bool is_first = realizations_.front() == plan_.realizations.front();
+        for (std::size_t k = 0; k < channels_.size(); ++k) {
+            ChannelOutcome& outcome = result.channels[channels_[k]];
+            outcome.accuracy = std::max(outcome.accuracy, reached_[k].accuracy);
+            if (is_first) outcome.mean_removed = reached_[k].mean_removed;
+        }
+    }
+
+    void measure_means() {
         std::vector<MapStatistics> means(channels_.size());
         for (std::size_t first = 0; first < channels_.size(); first += route_.group_size()) {
             const std::size_t count = std::min(route_.group_size(), channels_.size() - first);
@@ -166,14 +185,14 @@ class ChannelWriter {
                 });
         }
         for (std::size_t k = 0; k < channels_.size(); ++k)
-            result.channels[channels_[k]].mean_removed = means[k].mean();
+            reached_[k].mean_removed = means[k].mean();
     }
 
     void write_group(std::size_t first, std::size_t count, int realization, OutputFolder& folder,
                      MakeResult& result) const {
         std::vector<OpenMap> maps;
         for (std::size_t k = first; k < first + count; ++k)
-            maps.push_back(open_map(plan_, sky_, folder, channels_[k], realization, result));
+            maps.push_back(open_map(plan_, sky_, folder, channels_[k], realization, reached_[k], result));
         stream_channels(
             sky_.grid, route_, columns_, first, count,
             [&](std::size_t k, const MapPiece& piece, std::span<const std::span<double>> columns,
@@ -188,23 +207,27 @@ class ChannelWriter {
     const SkyModel& sky_;
     const Route& route_;
     const std::vector<std::size_t>& channels_;
+    std::span<const int> realizations_;
     std::size_t columns_;
+    std::vector<Reached> reached_;  // [channels]
 };
 
 void write_pixel_maps(const Plan& plan, const SkyModel& sky, const std::vector<std::size_t>& channels,
-                      OutputFolder& folder, Progress& progress, MakeResult& result) {
+                      std::span<const int> realizations, OutputFolder& folder, Progress& progress,
+                      MakeResult& result) {
     std::vector<BandSum> bands;
     for (const std::size_t c : channels) {
         bands.push_back(plan.channels[c].band);
         result.channels[c].per_pixel = true;
     }
     const PixelSource source(sky, bands, plan.study);
-    ChannelWriter(plan, sky, source, channels)
+    ChannelWriter(plan, sky, source, channels, realizations)
         .write("writing maps made pixel by pixel", folder, progress, result);
 }
 
 void write_harmonic_maps(const Plan& plan, const SkyModel& sky, const std::vector<std::size_t>& channels,
-                         OutputFolder& folder, Progress& progress, MakeResult& result) {
+                         std::span<const int> realizations, OutputFolder& folder, Progress& progress,
+                         MakeResult& result) {
     std::vector<Channel> chosen;
     chosen.reserve(channels.size());
     for (const std::size_t c : channels)
@@ -216,22 +239,23 @@ void write_harmonic_maps(const Plan& plan, const SkyModel& sky, const std::vecto
     options.frame = plan.study.frame;
     if (plan.study.pixel_window) options.pixel_window = read_pixel_window(plan.study.nside, plan.study.lmax);
     const HarmonicRoute route(sky, std::move(chosen), options, progress);
-    result.harmonic = route.report();
+    if (!result.has_harmonic) result.harmonic = route.report();
     result.has_harmonic = true;
-    ChannelWriter(plan, sky, route, channels).write("writing maps with beams", folder, progress, result);
+    ChannelWriter(plan, sky, route, channels, realizations)
+        .write("writing maps with beams", folder, progress, result);
 }
 
 }  // namespace
 
-void write_channel_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
-                        MakeResult& result) {
+void write_channel_maps(const Plan& plan, const SkyModel& sky, std::span<const int> realizations,
+                        OutputFolder& folder, Progress& progress, MakeResult& result) {
     result.channels.resize(plan.channels.size());
     result.labels = sky.labels;
     std::vector<std::size_t> per_pixel, harmonic;
     for (std::size_t c = 0; c < plan.channels.size(); ++c)
         (plan.per_pixel[c] ? per_pixel : harmonic).push_back(c);
-    if (!per_pixel.empty()) write_pixel_maps(plan, sky, per_pixel, folder, progress, result);
-    if (!harmonic.empty()) write_harmonic_maps(plan, sky, harmonic, folder, progress, result);
+    if (!per_pixel.empty()) write_pixel_maps(plan, sky, per_pixel, realizations, folder, progress, result);
+    if (!harmonic.empty()) write_harmonic_maps(plan, sky, harmonic, realizations, folder, progress, result);
     std::sort(result.outputs.begin(), result.outputs.end());
 }
 

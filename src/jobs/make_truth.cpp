@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include <algorithm>
 #include <cmath>
+#include <optional>
+#include <string>
 
 #include "base/interrupt.h"
 #include "base/parallel.h"
@@ -43,6 +45,10 @@ void carry_to_reference(const SkyModel& sky, SkyStrip& values) {
     }
 }
 
+std::string truth_name(const Plan& plan, const std::string& what, std::optional<int> realization) {
+    return "truth/" + (realization ? map_stem(plan, what, *realization) : what) + ".fits";
+}
+
 std::vector<FitsMapColumnName> amplitude_columns(bool polarized) {
     if (polarized) return {{"I_STOKES", "K_RJ"}, {"Q_STOKES", "K_RJ"}, {"U_STOKES", "K_RJ"}};
     return {{"I_STOKES", "K_RJ"}};
@@ -51,17 +57,19 @@ std::vector<FitsMapColumnName> amplitude_columns(bool polarized) {
 /// The three files, open; index.fits has a second column where the polarization has its own index.
 class TruthFiles {
   public:
-    TruthFiles(const Plan& plan, const SkyModel& sky, OutputFolder& folder, MakeResult& result)
+    TruthFiles(const Plan& plan, const SkyModel& sky, std::optional<int> realization, OutputFolder& folder,
+               MakeResult& result)
         : polarized_(plan.study.polarized),
           own_index_(polarized_ && sky.polarization->index.has_value()),
-          amplitude_(folder.prepare("truth/amplitude.fits"),
-                     make_truth_layout(plan, sky, amplitude_columns(polarized_), polarized_), polarized_),
-          index_(folder.prepare("truth/index.fits"), make_truth_layout(plan, sky, index_columns(), false),
-                 false),
-          curvature_(folder.prepare("truth/curvature.fits"),
-                     make_truth_layout(plan, sky, {{"CURVATURE", ""}}, false), false) {
-        for (const char* name : {"truth/amplitude.fits", "truth/index.fits", "truth/curvature.fits"})
-            result.outputs.emplace_back(name);
+          amplitude_(folder.prepare(truth_name(plan, "amplitude", realization)),
+                     make_truth_layout(plan, sky, amplitude_columns(polarized_), polarized_, realization),
+                     polarized_),
+          index_(folder.prepare(truth_name(plan, "index", realization)),
+                 make_truth_layout(plan, sky, index_columns(), false, realization), false),
+          curvature_(folder.prepare(truth_name(plan, "curvature", realization)),
+                     make_truth_layout(plan, sky, {{"CURVATURE", ""}}, false, realization), false) {
+        for (const char* name : {"amplitude", "index", "curvature"})
+            result.outputs.push_back(truth_name(plan, name, realization));
     }
 
     void write(const HealpixGrid& grid, const RingStrip& strip, SkyStrip& values) {
@@ -116,23 +124,24 @@ SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
 }
 
 MapFile open_channel_sky(const Plan& plan, const SkyModel& sky, OutputFolder& folder, std::size_t channel,
-                         double accuracy, MakeResult& result) {
-    const std::string name = "truth/channels/" + plan.channels[channel].name + ".fits";
+                         std::optional<int> realization, double accuracy, MakeResult& result) {
+    const std::string name = truth_name(plan, "channels/" + plan.channels[channel].name, realization);
     result.outputs.push_back(name);
-    const FitsMapLayout layout =
-        make_channel_layout(plan, sky, plan.channels[channel], plan.realizations.front(), accuracy, false);
+    const FitsMapLayout layout = make_channel_layout(
+        plan, sky, plan.channels[channel], realization.value_or(plan.realizations.front()), accuracy, false);
     return {folder.prepare(name), layout, plan.study.polarized};
 }
 
 // Each channel's sky before its beam, pixel by pixel.
-void write_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder, MakeResult& result) {
+void write_channel_skies(const Plan& plan, const SkyModel& sky, std::optional<int> realization,
+                         OutputFolder& folder, MakeResult& result) {
     std::vector<BandSum> bands;
     for (const Channel& channel : plan.channels)
         bands.push_back(channel.band);
     const PixelRoute route(sky, bands, plan.study.polarized, truth_tolerance);
     const std::size_t stokes = plan.study.polarized ? 3 : 1;
     for (std::size_t c = 0; c < bands.size(); ++c) {
-        MapFile file = open_channel_sky(plan, sky, folder, c, route.error_of(c), result);
+        MapFile file = open_channel_sky(plan, sky, folder, c, realization, route.error_of(c), result);
         for (const RingStrip& strip : cut_into_strips(sky.grid, strip_pixels)) {
             check_interrupt();
             const SkyStrip values = make_sky_strip(sky, strip, plan.study.polarized);
@@ -152,8 +161,8 @@ void write_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& fo
 }
 
 // As above in another frame: through a_lm, as the maps themselves.
-void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFolder& folder,
-                                Progress& progress, MakeResult& result) {
+void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, std::optional<int> realization,
+                                OutputFolder& folder, Progress& progress, MakeResult& result) {
     std::vector<Channel> channels = plan.channels;
     for (Channel& channel : channels)
         channel.beam.reset();
@@ -168,7 +177,7 @@ void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFol
         const std::size_t count = std::min(group, route.channel_count() - first);
         std::vector<MapFile> files;
         for (std::size_t c = first; c < first + count; ++c)
-            files.push_back(open_channel_sky(plan, sky, folder, c, route.error_of(c), result));
+            files.push_back(open_channel_sky(plan, sky, folder, c, realization, route.error_of(c), result));
         stream_channels(
             sky.grid, route, plan.study.polarized ? 3 : 1, first, count,
             [&](std::size_t k, const MapPiece& piece, std::span<const std::span<double>> columns,
@@ -181,11 +190,11 @@ void write_turned_channel_skies(const Plan& plan, const SkyModel& sky, OutputFol
 
 }  // namespace
 
-void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folder, Progress& progress,
-                      MakeResult& result) {
+void write_truth_maps(const Plan& plan, const SkyModel& sky, std::optional<int> realization,
+                      OutputFolder& folder, Progress& progress, MakeResult& result) {
     if (plan.study.truth == TruthLevel::None) return;
     progress.begin("writing truth maps");
-    TruthFiles files(plan, sky, folder, result);
+    TruthFiles files(plan, sky, realization, folder, result);
     if (plan.study.frame != sky.frame) {
         SkyStrip turned = turn_sky(plan, sky);
         files.write(sky.grid, {0, sky.grid.ring_count(), false}, turned);
@@ -201,11 +210,11 @@ void write_truth_maps(const Plan& plan, const SkyModel& sky, OutputFolder& folde
     progress.end();
     if (plan.study.truth != TruthLevel::Full) return;
     if (plan.study.frame != sky.frame) {
-        write_turned_channel_skies(plan, sky, folder, progress, result);
+        write_turned_channel_skies(plan, sky, realization, folder, progress, result);
         return;
     }
     progress.begin("writing the channels' skies before beams");
-    write_channel_skies(plan, sky, folder, result);
+    write_channel_skies(plan, sky, realization, folder, result);
     progress.end();
 }
 

@@ -62,7 +62,7 @@ FitsMapLayout make_channel_layout(const Plan& plan, const SkyModel& sky, const C
 }
 
 FitsMapLayout make_truth_layout(const Plan& plan, const SkyModel& sky, std::vector<FitsMapColumnName> columns,
-                                bool polarized) {
+                                bool polarized, std::optional<int> realization) {
     const Coverage* coverage = plan.coverage ? &*plan.coverage : nullptr;
     const bool is_brightness = !columns.front().unit.empty();
     FitsMapLayout layout = make_study_layout(plan.study, coverage, std::move(columns), polarized);
@@ -73,6 +73,8 @@ FitsMapLayout make_truth_layout(const Plan& plan, const SkyModel& sky, std::vect
         layout.cards.push_back(
             {"SKYFWHM", sky.beam_fwhm->degrees(), "[deg] FWHM of the template's own beam"});
     add_origin(layout, plan, sky);
+    if (realization)
+        layout.cards.push_back({"REALIZ", static_cast<std::int64_t>(*realization), "realization"});
     return layout;
 }
 

@@ -64,14 +64,22 @@ void list_files(Plan& plan) {
     if (study.truth != TruthLevel::None) {
         const std::int64_t one =
             fits_map_file_bytes(make_study_layout(study, coverage, {{"INDEX", ""}}, false));
-        plan.files.push_back(
-            {"truth/amplitude.fits", "amplitude at the reference frequency, K_RJ, before beams", map_bytes});
-        plan.files.push_back({"truth/index.fits", "tangent index there", one});
-        plan.files.push_back({"truth/curvature.fits", "curvature there", one});
-        if (study.truth == TruthLevel::Full)
-            for (const Channel& channel : plan.channels)
-                plan.files.push_back({"truth/channels/" + channel.name + ".fits",
-                                      "the channel's sky before its beam", map_bytes});
+        // Where nothing is random, one truth serves all realizations.
+        const bool each = is_random(plan.model);
+        const std::size_t sets = each ? plan.realizations.size() : 1;
+        for (std::size_t k = 0; k < sets; ++k) {
+            const auto name = [&](const std::string& what) {
+                return "truth/" + (each ? map_stem(plan, what, plan.realizations[k]) : what) + ".fits";
+            };
+            plan.files.push_back(
+                {name("amplitude"), "amplitude at the reference frequency, K_RJ, before beams", map_bytes});
+            plan.files.push_back({name("index"), "tangent index there", one});
+            plan.files.push_back({name("curvature"), "curvature there", one});
+            if (study.truth == TruthLevel::Full)
+                for (const Channel& channel : plan.channels)
+                    plan.files.push_back(
+                        {name("channels/" + channel.name), "the channel's sky before its beam", map_bytes});
+        }
     }
     plan.files.push_back({"report.html", "what a person looks at first", 0});
     plan.files.push_back({"run.json", "manifest, written last", 0});
@@ -124,7 +132,7 @@ void add_warnings(Plan& plan) {
                                     to_text(*channel.beam_fwhm) + " is narrower than 2.5 pixels of nside " +
                                     std::to_string(plan.study.nside) +
                                     ", so the map does not hold all of it: raise `nside`");
-        if (beam && *channel.beam_fwhm < *beam)
+        if (beam && !plan.model.detail && *channel.beam_fwhm < *beam)
             plan.warnings.push_back("channel " + channel.name + ": its beam of " +
                                     to_text(*channel.beam_fwhm) + " is finer than the template's " +
                                     to_text(*beam) + ", so there is no structure between the two");

@@ -6,6 +6,7 @@
 
 #include "base/error.h"
 #include "base/text.h"
+#include "model/detailed_sky.h"
 #include "model/map_source.h"
 #include "model/sketch_sky.h"
 #include "physics/spectral_law.h"
@@ -79,14 +80,36 @@ void subtract_zero_level(SkyMap& map, const Brightness& level, Frequency referen
         value -= kelvin;
 }
 
-PolarizedSky load_polarization(const PolarizationSpec& spec, const SkyModel& sky, int lmax,
-                               const SkyMap& brightness, Progress& progress) {
+LRange fit_lrange_of(const DetailSpec& detail, Angle beam) {
+    return detail.fit_lrange.value_or(default_fit_lrange(beam));
+}
+
+// Where the detail continues the template's own spectrum, that is measured before the template is brought to
+// another grid.
+void fit_intensity_template(const ModelSpec& model, const SkyMap& map, SkyModel& sky) {
+    if (!model.detail || model.detail->intensity || model.detail->spectrum) return;
+    const Angle beam = *model.intensity->beam_fwhm;
+    sky.intensity_fit = fit_intensity(map, beam, model.detail->latitude_cut,
+                                      fit_lrange_of(*model.detail, beam), model.detail->place);
+}
+
+void fit_polarization_template(const ModelSpec& model, const StokesMaps& maps, SkyModel& sky) {
+    if (!model.detail || model.detail->polarization || model.detail->spectrum) return;
+    const Angle beam = *model.polarization->beam_fwhm;
+    sky.polarization_fit = fit_polarization(maps, beam, model.detail->latitude_cut,
+                                            fit_lrange_of(*model.detail, beam), model.detail->place);
+}
+
+PolarizedSky load_polarization(const ModelSpec& model, SkyModel& sky, int lmax, const SkyMap& brightness,
+                               Progress& progress) {
+    const PolarizationSpec& spec = *model.polarization;
     PolarizedSky polarized;
     polarized.reference = spec.reference_frequency.value_or(sky.reference);
     polarized.beam_fwhm = spec.beam_fwhm;
     if (spec.map) {
-        polarized.stokes = bring_stokes(read_stokes_maps(*spec.map, polarized.reference, progress), sky.grid,
-                                        sky.frame, lmax, progress);
+        StokesMaps maps = read_stokes_maps(*spec.map, polarized.reference, progress);
+        fit_polarization_template(model, maps, sky);
+        polarized.stokes = bring_stokes(std::move(maps), sky.grid, sky.frame, lmax, progress);
     } else {
         FOREGLOW_EXPECTS(spec.fraction && spec.angle_map);
         polarized.stokes =
@@ -130,6 +153,7 @@ class HeaderCheck {
         static_cast<void>(resolve_convention(source, header.convention));
         add(header, header.grid == grid_ && frame == maps_.frame, 2);
     }
+    void add_held(std::int64_t values) { maps_.held_values += values; }
     [[nodiscard]] ModelMaps result() const { return maps_; }
 
   private:
@@ -152,12 +176,14 @@ class HeaderCheck {
 
 ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax,
                            bool with_polarization) {
-    if (model.sketch) return {Frame::Galactic, (with_polarization ? 5 : 3) * grid.npix(), 0};
+    const std::int64_t random = detail_held_values(model, grid, with_polarization);
+    if (model.sketch) return {Frame::Galactic, (with_polarization ? 5 : 3) * grid.npix() + random, 0};
     FOREGLOW_EXPECTS(model.intensity.has_value());
     HeaderCheck check(grid, lmax);
     check.intensity(model.intensity->map);
     check.plain(model.index.value);
     check.plain(model.curvature);
+    check.add_held(random);
     if (!with_polarization || !model.polarization) return check.result();
     const PolarizationSpec& polarization = *model.polarization;
     if (polarization.map) check.stokes(*polarization.map, true);
@@ -177,6 +203,7 @@ SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, boo
     SkyMap intensity = read_brightness_map(model.intensity->map, sky.reference, progress);
     if (model.intensity->zero_level)
         subtract_zero_level(intensity, *model.intensity->zero_level, sky.reference);
+    fit_intensity_template(model, intensity, sky);
     sky.frame = intensity.frame;
     sky.beam_fwhm = model.intensity->beam_fwhm;
     if (model.index.frequency)
@@ -187,7 +214,7 @@ SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, boo
         if (!model.polarization)
             throw InputError("the study asks for IQU but the model " + model.name +
                              " has no [polarization]: add one, or set `stokes = \"I\"`");
-        sky.polarization = load_polarization(*model.polarization, sky, lmax, intensity, progress);
+        sky.polarization = load_polarization(model, sky, lmax, intensity, progress);
     }
     sky.intensity = bring_intensity(std::move(intensity), grid, lmax, progress);
     return sky;

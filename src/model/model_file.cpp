@@ -6,6 +6,7 @@
 #include "io/text_file.h"
 #include "io/toml_reader.h"
 #include "model/bundled_models.h"
+#include "model/detail_section.h"
 #include "model/model_sections.h"
 #include "model/typed_keys.h"
 
@@ -38,7 +39,7 @@ void add_index_warning(ModelSpec& model) {
 }
 
 struct Sections {
-    std::optional<TomlReader> sketch, intensity, polarization, index, curvature;
+    std::optional<TomlReader> sketch, intensity, polarization, index, curvature, detail;
 };
 
 void check_sections(TomlReader& top, const Sections& sections) {
@@ -58,6 +59,36 @@ void check_sections(TomlReader& top, const Sections& sections) {
         top.fail_here("the section [index] is missing: add it with value = -2.9 or map = \"index.fits\"");
 }
 
+/// Refuses a detail that does not know where the template ends.
+void check_detail(const TomlReader& reader, const ModelSpec& model) {
+    const auto check_beam = [&](const std::optional<Angle>& beam, const std::string& section) {
+        if (!beam)
+            reader.fail_here("[detail] begins where the template's own beam ends, so it needs [" + section +
+                             "] beam_fwhm = \"56 arcmin\" (the survey's resolution)");
+        if (model.detail->envelope_fwhm < *beam)
+            reader.fail("envelope_fwhm", "must be at least the beam of [" + section + "], " + to_text(*beam) +
+                                             ", but is " + to_text(model.detail->envelope_fwhm) +
+                                             ": the brightness that modulates is smoother than the template");
+    };
+    if (model.intensity) check_beam(model.intensity->beam_fwhm, "intensity");
+    if (model.polarization && model.polarization->map)
+        check_beam(model.polarization->beam_fwhm, "polarization");
+    if (!model.intensity && !model.sketch)
+        reader.fail_here("[detail] needs a template with a beam: an [intensity] section");
+}
+
+void check_scatter_correlation(const ModelSpec& model, Sections& sections) {
+    if (model.detail) return;
+    if (model.index.scatter && model.index.scatter->correlation != 0)
+        sections.index->fail("scatter_correlation",
+                             "is one with the intensity's detail, but there is no [detail]: add one, or take "
+                             "it out");
+    if (model.curvature_scatter && model.curvature_scatter->correlation != 0)
+        sections.curvature->fail("scatter_correlation",
+                                 "is one with the intensity's detail, but there is no [detail]: add one, or "
+                                 "take it out");
+}
+
 }  // namespace
 
 ModelSpec make_model(const std::string& text, const std::filesystem::path& file, const std::string& name) {
@@ -70,9 +101,9 @@ ModelSpec make_model(const std::string& text, const std::filesystem::path& file,
     model.source = text;
     model.title = top.text("title", "title = \"Survey at 408 MHz\"").value_or(name);
     const std::optional<Frequency> reference = read_frequency(top, "reference_frequency");
-    const Sections sections{top.table("sketch"), top.table("intensity"), top.table("polarization"),
-                            top.table("index"), top.table("curvature")};
-    for (const char* later : {"electrons", "galaxy", "detail", "faraday"})
+    Sections sections{top.table("sketch"), top.table("intensity"), top.table("polarization"),
+                      top.table("index"),  top.table("curvature"), top.table("detail")};
+    for (const char* later : {"electrons", "galaxy", "faraday"})
         refuse_for_now(top, later);
     top.check_no_other_keys();
     if (!reference) top.fail_missing("reference_frequency", "reference_frequency = \"408 MHz\"");
@@ -82,7 +113,13 @@ ModelSpec make_model(const std::string& text, const std::filesystem::path& file,
     if (sections.intensity) model.intensity = read_intensity(*sections.intensity, folder);
     if (sections.polarization) model.polarization = read_polarization(*sections.polarization, folder);
     if (sections.index) model.index = read_index(*sections.index, folder);
-    if (sections.curvature) model.curvature = read_curvature(*sections.curvature, folder);
+    if (sections.curvature)
+        model.curvature = read_curvature(*sections.curvature, folder, model.curvature_scatter);
+    if (sections.detail) {
+        model.detail = read_detail(*sections.detail, folder);
+        check_detail(*sections.detail, model);
+    }
+    check_scatter_correlation(model, sections);
     add_shared_map_keys(model);
     add_index_warning(model);
     return model;

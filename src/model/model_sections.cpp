@@ -5,6 +5,7 @@
 #include <limits>
 
 #include "base/text.h"
+#include "model/detail_section.h"
 #include "model/typed_keys.h"
 
 namespace foreglow {
@@ -248,8 +249,7 @@ PolarizationSpec read_polarization(TomlReader reader, const std::filesystem::pat
 
 IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder) {
     IndexSpec index;
-    for (const char* later : {"scatter", "scatter_slope", "scatter_lrange"})
-        refuse_for_now(reader, later);
+    index.scatter = read_scatter(reader, 2);
     const auto frequency = read_frequency(reader, "frequency");
     const auto between = read_between(reader);
     index.value = read_value_section(reader, "index", -10, 10, "-2.9", folder);
@@ -264,7 +264,11 @@ void read_map_layout(TomlReader& reader, MapSource& source) {
     source.unit = read_unit(reader, "unit");
 }
 
-ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder) {
+ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder,
+                          std::optional<ScatterSpec>& scatter) {
+    if (reader.has("decorrelation_length"))
+        reader.fail("decorrelation_length", "belongs into [index]: move it there");
+    scatter = read_scatter(reader, 1);
     return read_value_section(reader, "curvature", -2, 2, "-0.04", folder);
 }
 

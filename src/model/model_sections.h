@@ -2,6 +2,7 @@
 #pragma once
 
 #include <filesystem>
+#include <optional>
 
 #include "io/toml_reader.h"
 #include "model/model_spec.h"
@@ -15,7 +16,8 @@ namespace foreglow {
 [[nodiscard]] IntensitySpec read_intensity(TomlReader reader, const std::filesystem::path& folder);
 [[nodiscard]] PolarizationSpec read_polarization(TomlReader reader, const std::filesystem::path& folder);
 [[nodiscard]] IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder);
-[[nodiscard]] ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder);
+[[nodiscard]] ValueOrMap read_curvature(TomlReader reader, const std::filesystem::path& folder,
+                                        std::optional<ScatterSpec>& scatter);
 
 /// Reads the keys that say how one column of a brightness map is laid out: column, hdu, ordering, frame,
 /// unit.

@@ -9,6 +9,7 @@
 #include <vector>
 
 #include "base/quantity.h"
+#include "model/detail_spec.h"
 #include "physics/brightness_unit.h"
 #include "sphere/frame.h"
 #include "sphere/grid.h"
@@ -67,6 +68,7 @@ struct IndexSpec {
     ValueOrMap value = -3.0;
     std::optional<Frequency> frequency;  ///< where it holds, if not at the reference frequency;
                                          ///< `between` is turned into the geometric mean
+    std::optional<ScatterSpec> scatter;  ///< added to it, at the frequency where it holds
 };
 
 /// A model as written, every key checked by itself and against the others.
@@ -81,7 +83,14 @@ struct ModelSpec {
     std::optional<PolarizationSpec> polarization;
     IndexSpec index;
     ValueOrMap curvature = 0.0;
+    std::optional<ScatterSpec> curvature_scatter;
+    std::optional<DetailSpec> detail;   ///< structure below the template's beam
     std::vector<std::string> warnings;  ///< e.g. an index that looks like one of flux
 };
+
+/// Tells whether a study's seed and realizations matter to a model.
+[[nodiscard]] inline bool is_random(const ModelSpec& model) {
+    return model.detail || model.index.scatter || model.curvature_scatter;
+}
 
 }  // namespace foreglow

@@ -41,6 +41,11 @@ class PixelField {
     };
     /// Returns bounds of the defined values; nothing where none is defined or the field is harmonic.
     [[nodiscard]] std::optional<Range> range() const;
+    /// Returns the map that is used pixel for pixel, or nullptr where the field is made otherwise.
+    [[nodiscard]] std::shared_ptr<const SkyMap> map() const {
+        const auto* source = std::get_if<Map>(&source_);
+        return source == nullptr ? nullptr : source->map;
+    }
     [[nodiscard]] bool is_uniform() const { return std::holds_alternative<double>(source_); }
 
   private:

@@ -11,6 +11,7 @@
 #include "base/quantity.h"
 #include "model/pixel_field.h"
 #include "model/sky_law.h"
+#include "model/spectrum_fit.h"
 #include "sphere/alm.h"
 
 namespace foreglow {
@@ -63,6 +64,8 @@ struct SkyModel {
     PixelField curvature = PixelField::uniform(0);
     std::optional<PolarizedSky> polarization;
     std::optional<Angle> beam_fwhm;  ///< the template's own
+    /// The template's spectra, measured at its own nside, where the model's detail continues them.
+    std::optional<SpectrumFit> intensity_fit, polarization_fit;
     std::vector<std::string>
         labels;  ///< sentences a reader of the maps must see, e.g. that the sky is invented
 };

@@ -96,7 +96,7 @@ WRONG = [
           'model = "disc-and-loops"\nnside = 16\n[chanel_grid]\ncount = 3\n'),
     model("unknown key", r"5:\d+", "did you mean 'column'", intensity="colum = 1"),
     model("unknown key", r"8:\d+", "did you mean 'polarization'", index="[polarisation]"),
-    model("unknown key", r"8:\d+", "not there yet", index="scatter = 0.1"),
+    model("conflict", r"9:\d+", "contradicts 'scatter'", index="scatter = 0.1\ndecorrelation_length = 20"),
     study("unknown key", r"8:\d+", "not there yet", STUDY.format(top="", channel='\n[[patch]]\nname = "deep"')),
 
     study("conflict", r"8:\d+", "contradicts 'bandwidth'",

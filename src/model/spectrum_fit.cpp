@@ -72,7 +72,11 @@ void fit_line(SpectrumFit& fit) {
 }
 
 std::string range_text(const LRange& lrange) {
-    return "[" + std::to_string(lrange.first) + ", " + std::to_string(lrange.last) + "]";
+    std::string text("[");
+    text += std::to_string(lrange.first);
+    text += ", ";
+    text += std::to_string(lrange.last);
+    return text + "]";
 }
 
 void check_range(const LRange& lrange, Angle beam_fwhm, std::span<const double> window,

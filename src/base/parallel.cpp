@@ -37,7 +37,7 @@ void parallel_for_blocks(std::int64_t count, std::int64_t block,
     std::atomic<std::int64_t> failed_block{std::numeric_limits<std::int64_t>::max()};
     std::mutex guard;
     std::exception_ptr failure;
-#pragma omp parallel for schedule(dynamic, 1)
+#pragma omp parallel for schedule(dynamic, 1) if (blocks > 1)
     for (std::int64_t b = 0; b < blocks; ++b) {
         if (b > failed_block.load(std::memory_order_relaxed)) continue;
         try {

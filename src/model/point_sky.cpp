@@ -38,11 +38,16 @@ class PointStokes {
         std::vector<double> weights(corners.size()), corner_q(corners.size()), corner_u(corners.size());
         make_stencils(*sampler_, map_.frame(), grid_, frame_, pixels, corners, weights);
         map_.read_stokes(corners, corner_q, corner_u);
-        for (std::size_t i = 0; i < corners.size(); ++i)
-            if (map_.frame() != frame_)
-                apply(turn_between_frames(map_.grid().direction(corners[i]), to_sky_), corner_q[i],
-                      corner_u[i]);
+        const Matrix3 to_map = rotation_between(frame_, map_.frame());
         for (std::size_t i = 0; i < pixels.size(); ++i) {
+            // Carried to the pixel first: near a pole the corners' meridians differ.
+            const Vector3 here = rotate(to_map, grid_.direction(pixels[i]));
+            const StokesTurn turn = turn_between_frames(here, to_sky_);
+            for (std::size_t k = 4 * i; k < 4 * i + 4; ++k) {
+                apply(turn_along_great_circle(map_.grid().direction(corners[k]), here), corner_q[k],
+                      corner_u[k]);
+                if (map_.frame() != frame_) apply(turn, corner_q[k], corner_u[k]);
+            }
             const auto four = [i](const std::vector<double>& values) {
                 return std::span(values).subspan(4 * i, 4);
             };

@@ -16,8 +16,10 @@ namespace {
 constexpr double degree = constants::pi / 180;
 
 std::optional<double> find_number(std::string_view text) {
-    if (text.starts_with('+')) text.remove_prefix(1);
-    if (text.empty() || text.front() == '+') return std::nullopt;
+    if (text.starts_with('+')) {
+        text.remove_prefix(1);
+        if (text.starts_with('-')) return std::nullopt;
+    }
     double value = 0;
     const auto [end, code] = std::from_chars(text.data(), text.data() + text.size(), value);
     if (code != std::errc() || end != text.data() + text.size() || !std::isfinite(value)) return std::nullopt;

@@ -12,56 +12,90 @@ namespace {
 
 using synchrotron_tables::Table;
 
-constexpr int series_terms = 12;  // (x/2)^24/(12!)^2 < 1e-24 at x = 1, the series' last
+constexpr std::size_t series_terms = 12;  // (x/2)^24/(12!)^2 < 1e-24 at x = 1, the series' last
 
-// sum over k of (x/2)^2k/(k! Gamma(k + nu + 1)), times Gamma(nu + 1); `divisor` shifts an antiderivative's
-// 1/(2k + d).
-double bessel_sum(double nu, double quarter_square, double divisor = 0) {
-    double term = 1;
-    double sum = divisor == 0 ? 1 : 1 / divisor;
-    for (int k = 1; k < series_terms; ++k) {
-        term *= quarter_square / (k * (k + nu));
-        sum += divisor == 0 ? term : term / (2 * k + divisor);
-    }
+double polynomial(const std::array<double, series_terms>& c, double x) {
+    double sum = 0;
+    for (std::size_t k = series_terms; k-- > 0;)
+        sum = sum * x + c[k];
     return sum;
 }
 
-// K_nu = (pi/2)/sin(nu pi) (I_-nu - I_nu) for 0 < x <= 1, nu no integer (Abramowitz & Stegun 1964, 9.6.2).
-double bessel_k_small(double nu, double x) {
-    const double q = 0.25 * x * x;
-    const double power = std::pow(0.5 * x, nu);
-    const double scale = 0.5 * constants::pi / std::sin(nu * constants::pi);
-    return scale * (bessel_sum(-nu, q) / (power * std::tgamma(1 - nu)) -
-                    bessel_sum(nu, q) * power / std::tgamma(1 + nu));
+// The coefficients of (x/2)^2k in I_nu (x/2)^-nu: 1/(k! Gamma(k + nu + 1)) (Abramowitz & Stegun
+// 1964, 9.6.10).
+std::array<double, series_terms> bessel_coefficients(double nu) {
+    std::array<double, series_terms> c{};
+    c[0] = 1 / std::tgamma(nu + 1);
+    for (std::size_t k = 1; k < series_terms; ++k)
+        c[k] = c[k - 1] / (static_cast<double>(k) * (static_cast<double>(k) + nu));
+    return c;
+}
+
+/// K_nu = (pi/2)/sin(nu pi) (I_-nu - I_nu) for 0 < x <= 1, nu no integer (Abramowitz & Stegun 1964, 9.6.2).
+class SmallBesselK {
+  public:
+    explicit SmallBesselK(double nu)
+        : nu_(nu),
+          scale_(0.5 * constants::pi / std::sin(nu * constants::pi)),
+          minus_(bessel_coefficients(-nu)),
+          plus_(bessel_coefficients(nu)) {}
+    [[nodiscard]] double operator()(double x) const {
+        const double power = std::pow(0.5 * x, nu_);
+        const double q = 0.25 * x * x;
+        return scale_ * (polynomial(minus_, q) / power - polynomial(plus_, q) * power);
+    }
+
+  private:
+    double nu_, scale_;
+    std::array<double, series_terms> minus_, plus_;
+};
+
+double small_bessel_k(int thirds, double x) {
+    static const std::array<SmallBesselK, 4> functions{SmallBesselK(1.0 / 3), SmallBesselK(2.0 / 3),
+                                                       SmallBesselK(4.0 / 3), SmallBesselK(5.0 / 3)};
+    return functions[static_cast<std::size_t>(thirds > 2 ? thirds - 2 : thirds - 1)](x);
 }
 
 // The integral of the two series for K_5/3 term by term; at infinity only -pi/sqrt(3) is left of them.
 double kernel_f_small(double x) {
-    const double nu = 5.0 / 3.0;
+    constexpr double nu = 5.0 / 3.0;
+    const auto integrated = [](double order) {
+        auto c = bessel_coefficients(order);
+        for (std::size_t k = 0; k < series_terms; ++k)
+            c[k] *= 2 / (2 * static_cast<double>(k) + order + 1);
+        return c;
+    };
+    static const std::array<double, series_terms> minus = integrated(-nu);
+    static const std::array<double, series_terms> plus = integrated(nu);
     const double q = 0.25 * x * x;
-    const double half = 0.5 * x;
-    const double minus = 2 * std::pow(half, 1 - nu) / std::tgamma(1 - nu) * bessel_sum(-nu, q, 1 - nu);
-    const double plus = 2 * std::pow(half, 1 + nu) / std::tgamma(1 + nu) * bessel_sum(nu, q, 1 + nu);
-    return x * constants::pi / std::sqrt(3.0) * (minus - plus - 1);
+    const double cube_root = std::cbrt(0.5 * x);
+    const double square = cube_root * cube_root;  // (x/2)^(1 - nu) is its inverse
+    return x * constants::pi / std::sqrt(3.0) *
+           (polynomial(minus, q) / square - polynomial(plus, q) * q * square - 1);
 }
 
 // Sums residues of the Mellin transform 2^(s-1) sqrt(pi)/2 Gamma(s/2+3/2) Gamma(s/2+5/6) Gamma(s/2+1/6)/
 // Gamma(s/2+2), which is that of G (Rybicki & Lightman 1979, eq. 6.35b) times the angles' mean of sin^(s+2).
 double kernel_r_polarized_small(double x) {
-    const auto residues = [x](double pole, double other, double another) {
-        double sum = 0;
-        double sign_over_factorial = 1;
-        for (int k = 0; k < series_terms; ++k) {
-            const double half_s = -pole - k;
-            sum += sign_over_factorial * std::tgamma(half_s + other) * std::tgamma(half_s + another) /
-                   std::tgamma(half_s + 2) * std::pow(0.5 * x, -2 * half_s);
-            sign_over_factorial /= -(k + 1.0);
+    const auto residues = [](double pole, double other, double another) {
+        std::array<double, series_terms> c{};
+        double sign_over_factorial = 0.5 * std::sqrt(constants::pi);
+        for (std::size_t k = 0; k < series_terms; ++k) {
+            const double half_s = -pole - static_cast<double>(k);
+            c[k] = sign_over_factorial * std::tgamma(half_s + other) * std::tgamma(half_s + another) /
+                   std::tgamma(half_s + 2);
+            sign_over_factorial /= -(static_cast<double>(k) + 1.0);
         }
-        return sum;
+        return c;
     };
-    const double sum =
-        residues(1.0 / 6, 1.5, 5.0 / 6) + residues(5.0 / 6, 1.5, 1.0 / 6) + residues(1.5, 5.0 / 6, 1.0 / 6);
-    return 0.5 * std::sqrt(constants::pi) * sum;
+    static const auto third = residues(1.0 / 6, 1.5, 5.0 / 6);
+    static const auto five_thirds = residues(5.0 / 6, 1.5, 1.0 / 6);
+    static const auto cube = residues(1.5, 5.0 / 6, 1.0 / 6);
+    const double half = 0.5 * x;
+    const double q = half * half;
+    const double root = std::cbrt(half);
+    return root * polynomial(third, q) + root * root * half * polynomial(five_thirds, q) +
+           q * half * polynomial(cube, q);
 }
 
 // Clenshaw's sum of the tabulated e^x f(x) x^-p for x >= 1.
@@ -85,11 +119,11 @@ struct BesselPair {
     double four_thirds = 0, one_third = 0;
 };
 BesselPair small_pair(double y) {
-    return {bessel_k_small(4.0 / 3, y), bessel_k_small(1.0 / 3, y)};
+    return {small_bessel_k(4, y), small_bessel_k(1, y)};
 }
 
 double scaled_bessel_53(double x) {
-    return x <= 1 ? bessel_k_small(5.0 / 3, x) * std::exp(x)
+    return x <= 1 ? small_bessel_k(5, x) * std::exp(x)
                   : table_value(synchrotron_tables::bessel_53, x) / std::sqrt(x);
 }
 
@@ -116,7 +150,7 @@ double scaled_kernel_f(double x) {
 }
 
 double scaled_kernel_g(double x) {
-    return x <= 1 ? x * bessel_k_small(2.0 / 3, x) * std::exp(x)
+    return x <= 1 ? x * small_bessel_k(2, x) * std::exp(x)
                   : table_value(synchrotron_tables::kernel_g, x) * std::sqrt(x);
 }
 

@@ -17,6 +17,7 @@
 #include "base/text.h"
 #include "jobs/at.h"
 #include "jobs/draw.h"
+#include "jobs/grade.h"
 #include "jobs/index.h"
 #include "jobs/make.h"
 #include "jobs/models.h"
@@ -260,6 +261,49 @@ Examples:
       the same values; errors of the noise alone, as wanted for the scatter between pixels.
 index is beta of T ~ nu^beta (brightness temperature); errors are one sigma.)";
 
+constexpr const char* grade_examples = R"(
+Examples:
+  foreglow grade array-out --terms 4
+      what remains of each channel of that run after the best smooth fit of 1, 2, 3, 4 terms
+      in ln(nu) in every pixel: rows here, residual maps and spectra in array-out/grade.
+      `foreglow grade array.toml` says the same of a study in seconds, on a coarse grid.
+  foreglow grade array-out recovered/ --cut 0 --cut 30 --format csv
+      recovered/NAME.fits minus the run's own map of channel NAME, by sky cut and band of l;
+      recovered/index.fits is compared with the index of the beam-smoothed truth.
+--terms amplitude+index+curvature is 3. rms, mean and p95 (of the absolute value) are in the
+run's unit; rms_K_RJ is the same as Rayleigh-Jeans brightness temperature at the frequency.)";
+
+void add_grade_options(CLI::App& command, GradeOptions& grade, std::string& beam) {
+    command.add_option("SOURCE", grade.source, "a finished run's folder, or a study file")->required();
+    command.add_option("RECOVERED", grade.recovered,
+                       "recovered maps, or folders of them (default: the floor)");
+    command.add_option("--terms", grade.terms,
+                       "most terms of the smooth fit, or amplitude, amplitude+index, "
+                       "amplitude+index+curvature (default: 3)");
+    const auto choose = [&grade](const std::string& word) {
+        if (to_lower(word) != "log" && to_lower(word) != "linear")
+            throw InputError("--fit " + word + ": use one of log, linear");
+        grade.linear = to_lower(word) == "linear";
+    };
+    command.add_option_function<std::string>("--fit", choose, "log (default) or linear: what is smooth");
+    command.add_option("--tilt", grade.tilt, "index of the reference power law (default: -2.7)")
+        ->check(CLI::Range(-10.0, 10.0));
+    command.add_option("--mask", grade.mask, "FITS map: pixels that are defined and not zero count");
+    command.add_option(
+        "--common-beam", beam,
+        "bring all channels to this FWHM first, such as \"2 deg\"; of recovered parameters the "
+        "resolution");
+    command.add_option("--nside", grade.nside, "grade on a coarser grid (a study: 64)");
+    command.add_option("--cut", grade.cuts, "of recovered maps: |b| from this many degrees; repeatable")
+        ->take_all()
+        ->expected(1)
+        ->allow_extra_args(false);
+    command.add_option("--study", grade.study, "where a run's study file is, for its response tables");
+    command.add_option("--realization", grade.realization, "of a run with several");
+    command.add_option("--out", grade.out, "folder to write to (default: RUN/grade; of a study nothing)");
+    command.add_flag("--replace", grade.replace, "replace an earlier grading");
+}
+
 /// All that the command line can ask for.
 struct Request {
     CommonOptions common;
@@ -272,7 +316,24 @@ struct Request {
     std::vector<double> draw_center;
     std::string draw_size;
     IndexOptions index;
+    GradeOptions grade;
+    std::string grade_beam;
 };
+
+void run_grade_command(Request& request) {
+    if (!request.grade_beam.empty()) {
+        try {
+            request.grade.common_beam = parse_angle(request.grade_beam);
+        } catch (const InputError& error) {
+            throw InputError(std::string("--common-beam ") + error.what());
+        }
+        if (!(request.grade.common_beam->radians() > 0 && request.grade.common_beam->degrees() <= 180))
+            throw InputError("--common-beam " + request.grade_beam +
+                             ": give an angle above 0, up to 180 deg");
+    }
+    Progress progress = make_progress(request.common);
+    say(run_grade(request.grade, progress).rows);
+}
 
 void run_draw_command(Request& request) {
     if (!request.draw_center.empty()) request.draw.center = {request.draw_center[0], request.draw_center[1]};
@@ -378,7 +439,15 @@ void define_commands(CLI::App& app, Request& request) {
         say(run_index(request.index, progress).rows);
     });
 
-    for (CLI::App* command : {make, plan, start, at, index, models, draw})
+    CLI::App* grade = app.add_subcommand(
+        "grade", "scores what a subtraction recovered, or what a smooth fit would leave, against the truth");
+    add_grade_options(*grade, request.grade, request.grade_beam);
+    add_format(*grade, request.grade.format);
+    grade->footer(grade_examples);
+    add_common(*grade, request.common);
+    grade->callback([&request] { run_grade_command(request); });
+
+    for (CLI::App* command : {make, plan, start, at, index, grade, models, draw})
         command->parse_complete_callback([&request] {
             set_thread_count(request.common.threads > 0 ? request.common.threads : available_processors());
         });

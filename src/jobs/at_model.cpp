@@ -66,6 +66,16 @@ ModelSpec read_model_of(const std::string& name, bool bundled) {
     return bundled ? read_bundled_model(name) : read_model(name);
 }
 
+PointSky open_study_sky(const AtOptions& options, const StudySpec& study, const ModelSpec& model) {
+    const int realization = options.realization.value_or(0);
+    if (realization < 0 || realization >= study.realizations)
+        throw InputError("--realization " + std::to_string(realization) +
+                         ": the study has realizations 0 to " + std::to_string(study.realizations - 1));
+    const HealpixGrid grid(study.nside);
+    if (!is_random(model)) return {model, grid, study.polarized};
+    return {model, grid, study.polarized, study.lmax, study.seed, realization};
+}
+
 void add_study_notices(AtSource& source, const StudySpec& study, const std::vector<Channel>& channels) {
     bool smoothed = false;
     for (const Channel& channel : channels)
@@ -115,7 +125,7 @@ AtSource open_study_at(const AtOptions& options) {
         throw InputError(study.model_place + ": the study asks for stokes = \"IQU\" but the model " +
                          model.name +
                          " has no [polarization]: add one to the model, or set `stokes = \"I\"`");
-    const auto rows = std::make_shared<ModelRows>(PointSky(model, HealpixGrid(study.nside), study.polarized));
+    const auto rows = std::make_shared<ModelRows>(open_study_sky(options, study, model));
     AtSource source = make_source(rows);
     source.convention = study.convention;
     if (!frequencies.empty()) {

@@ -4,8 +4,11 @@
 #include <cmath>
 
 #include "base/error.h"
+#include "model/detailed_sky.h"
+#include "model/load_sky.h"
 #include "model/point_field.h"
 #include "model/sketch_points.h"
+#include "model/strip_points.h"
 #include "physics/spectral_law.h"
 #include "sphere/stokes_turn.h"
 
@@ -74,6 +77,7 @@ struct PolarizedPoints {
 
 struct PointSky::Impl {
     Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization);
+    Impl(const ModelSpec& model, SkyModel sky, bool with_polarization);
     void open_templates(const ModelSpec& model, std::optional<HealpixGrid> grid_in);
     void open_polarization(const PolarizationSpec& spec);
     [[nodiscard]] PointField open_value(const ValueOrMap& value);
@@ -88,8 +92,20 @@ struct PointSky::Impl {
     std::optional<PointField> intensity, index, curvature;
     std::optional<PolarizedPoints> polarization;
     std::optional<SketchPoints> sketch;
+    std::optional<SkyModel> whole;  // made with its random structure
+    bool whole_is_polarized = false;
     std::vector<std::string> notices;
 };
+
+PointSky::Impl::Impl(const ModelSpec& model, SkyModel sky, bool with_polarization)
+    : grid(sky.grid),
+      frame(sky.frame),
+      reference(model.reference_frequency),
+      polarized_reference(reference),
+      whole(std::move(sky)),
+      whole_is_polarized(with_polarization) {
+    if (with_polarization) polarized_reference = whole->polarization->reference;
+}
 
 PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization) {
     reference = polarized_reference = model.reference_frequency;
@@ -101,6 +117,10 @@ PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in,
         return;
     }
     open_templates(model, grid_in);
+    if (is_random(model))
+        notices.emplace_back(
+            "a model by itself has no seed: [detail] and scatter of the index are off here, and are there in "
+            "the rows of a study");
     if (!with_polarization) return;
     if (!model.polarization)
         throw InputError("the model " + model.name + " has no [polarization]: add one, or ask for I alone");
@@ -176,6 +196,16 @@ void PointSky::Impl::add_polarization(std::span<const std::int64_t> pixels, SkyS
 
 PointSky::PointSky(const ModelSpec& model, std::optional<HealpixGrid> grid, bool with_polarization)
     : impl_(std::make_unique<Impl>(model, grid, with_polarization)) {}
+PointSky::PointSky(const ModelSpec& model, const HealpixGrid& grid, bool with_polarization, int lmax,
+                   std::uint64_t seed, int realization) {
+    Progress progress;
+    SkyModel base = load_sky(model, grid, lmax, with_polarization, progress);
+    const DetailedSky sky(model, std::move(base), seed, with_polarization, progress);
+    impl_ = std::make_unique<Impl>(model, sky.realize(realization), with_polarization);
+    impl_->notices = progress.notices();
+    impl_->notices.emplace_back(
+        "random structure of the study's seed is in the rows: the whole sky was made");
+}
 PointSky::~PointSky() = default;
 PointSky::PointSky(PointSky&&) noexcept = default;
 PointSky& PointSky::operator=(PointSky&&) noexcept = default;
@@ -193,7 +223,7 @@ Frequency PointSky::polarized_reference() const {
     return impl_->polarized_reference;
 }
 bool PointSky::is_polarized() const {
-    return impl_->polarization.has_value();
+    return impl_->polarization.has_value() || impl_->whole_is_polarized;
 }
 const std::vector<std::string>& PointSky::notices() const {
     return impl_->notices;
@@ -201,6 +231,7 @@ const std::vector<std::string>& PointSky::notices() const {
 
 SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
     if (impl_->sketch) return impl_->sketch->evaluate(pixels);
+    if (impl_->whole) return make_sky_points(*impl_->whole, pixels, impl_->whole_is_polarized);
     SkyStrip values;
     values.intensity.resize(pixels.size());
     values.index.resize(pixels.size());

@@ -13,7 +13,8 @@
 
 namespace foreglow {
 
-/// A model's sky of which only single pixels are wanted: nothing of the size of a map is made or read.
+/// A model's sky of which only single pixels are wanted: nothing of the size of a map is made or read, but
+/// where random structure is asked for. Without a seed [detail] and scatter are off, and a notice says so.
 ///
 /// On the grid and in the frame of its templates a pixel is the one that load_sky and make_sky_strip give.
 /// Indices, curvatures and fractions on other grids are brought as there; an intensity or polarization
@@ -24,6 +25,11 @@ class PointSky {
     /// @param grid  to answer on; else the intensity template's own
     /// @throws InputError, DataError, FileError as load_sky
     PointSky(const ModelSpec& model, std::optional<HealpixGrid> grid, bool with_polarization);
+    /// Takes the random structure that a study's seed adds, for which the whole sky has to be made first.
+    /// @param lmax  the study's
+    /// @throws as load_sky and DetailedSky
+    PointSky(const ModelSpec& model, const HealpixGrid& grid, bool with_polarization, int lmax,
+             std::uint64_t seed, int realization);
     ~PointSky();
     PointSky(PointSky&&) noexcept;
     PointSky& operator=(PointSky&&) noexcept;

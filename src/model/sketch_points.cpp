@@ -1,12 +1,11 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include "model/sketch_points.h"
 
-#include <algorithm>
-#include <numeric>
 #include <vector>
 
 #include "model/sketch_formulas.h"
 #include "model/sketch_sky.h"
+#include "model/strip_points.h"
 
 namespace foreglow {
 namespace {
@@ -43,26 +42,13 @@ SketchPoints::SketchPoints(const SketchSpec& sketch, const HealpixGrid& grid, bo
 }
 
 SkyStrip SketchPoints::evaluate(std::span<const std::int64_t> pixels) const {
-    std::vector<int> rings(pixels.size());
-    for (std::size_t i = 0; i < pixels.size(); ++i)
-        rings[i] = grid_.ring_of(pixels[i]);
-    std::vector<std::size_t> order(pixels.size());
-    std::iota(order.begin(), order.end(), std::size_t{0});
-    std::sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) { return rings[a] < rings[b]; });
-    std::size_t distinct = 0;
-    for (std::size_t k = 0; k < order.size(); ++k)
-        distinct += k == 0 || rings[order[k]] != rings[order[k - 1]] ? 1U : 0U;
+    const std::vector<RingPlaces> rings = sort_by_ring(grid_, pixels);
     if (whole_ || (grid_.nside() <= largest_whole_nside &&
-                   distinct * share_of_rings > static_cast<std::size_t>(grid_.ring_count())))
+                   rings.size() * share_of_rings > static_cast<std::size_t>(grid_.ring_count())))
         return pick_from_whole(pixels);
     SkyStrip out = make_sized(pixels.size(), polarization_.has_value());
-    for (std::size_t begin = 0; begin < order.size();) {
-        std::size_t end = begin + 1;
-        while (end < order.size() && rings[order[end]] == rings[order[begin]])
-            ++end;
-        add_ring(rings[order[begin]], pixels, std::span(order).subspan(begin, end - begin), out);
-        begin = end;
-    }
+    for (const RingPlaces& group : rings)
+        add_ring(group.ring, pixels, group.places, out);
     return out;
 }
 

@@ -155,6 +155,22 @@ class AnswersAtPositions(harness.Case):
                                       [i, q, u, beta], rtol=1e-12)
         self.assertIn("truth", notes)
 
+    def test_random_structure_is_in_a_study_and_not_in_a_model(self):
+        self.write("model.toml", MODEL.replace('zero_level = "3 K_RJ"', 'beam_fwhm = "20 deg"') .replace(
+            "[curvature]", "scatter = 0.2\nscatter_slope = -2.5\nscatter_lrange = [2, 30]\n[curvature]"))
+        bare, notes = self.rows("model.toml", "--pixel", 42, "--nside", NSIDE, "--frequency", "1 GHz")
+        self.assertAlmostEqual(bare[0]["index"], self.sky["index"][42], delta=1e-13)
+        self.assertIn("no seed", notes)
+        self.write("study.toml", STUDY.format(convention="COSMO", precision="float64", realizations=2))
+        self.foreglow("make", "study.toml", "--out", "out", "--quiet")
+        for realization in (0, 1):
+            rows, notes = self.rows("study.toml", "--pixel", 42, "--nside", NSIDE, "--realization", realization)
+            maps, _ = harness.read_maps(self.folder / f"out/maps/low_r{realization:04d}.fits")
+            self.assertGreater(abs(rows[0]["index_reference"] - bare[0]["index_reference"]), 1e-3)
+            # One frequency: the law itself on both sides, some roundings.
+            numpy.testing.assert_allclose([rows[0]["brightness"], rows[0]["Q"], rows[0]["U"]], maps[:, 42], rtol=1e-12)
+            self.assertIn("whole sky", notes)
+
     def test_discs_and_interpolation(self):
         lon, lat = 213.7, -41.2
         rows, _ = self.rows("model.toml", "--position", f"{lon},{lat}", "--frequency", "5 GHz", "--disc", "12 deg")

@@ -2,6 +2,7 @@
 #include "io/fits_pixel_reader.h"
 
 #include <algorithm>
+#include <bit>
 #include <cmath>
 #include <cstring>
 #include <mutex>
@@ -25,6 +26,35 @@ struct ListedPixel {
     std::int64_t pixel = 0, entry = 0;
     bool operator<(const ListedPixel& other) const { return pixel < other.pixel; }
 };
+
+/// Where the cells of a column stand in a table.
+class CellPlaces {
+  public:
+    CellPlaces(const FitsTableColumn& column, std::int64_t row_bytes)
+        : repeat_(column.repeat), offset_(column.offset), width_(column.width), row_bytes_(row_bytes) {
+        if (std::has_single_bit(static_cast<std::uint64_t>(repeat_)))
+            shift_ = std::countr_zero(static_cast<std::uint64_t>(repeat_));
+    }
+    /// Returns the first byte of an entry; of none it is that of the first.
+    [[nodiscard]] std::int64_t of(std::int64_t entry) const {
+        const std::int64_t cell = std::max<std::int64_t>(entry, 0);
+        // A division takes as long as all the rest, and rows usually hold 1 or 1024 cells.
+        const std::int64_t row = shift_ >= 0 ? cell >> shift_ : cell / repeat_;
+        return row * row_bytes_ + offset_ + (cell - row * repeat_) * width_;
+    }
+
+  private:
+    std::int64_t repeat_, offset_, width_, row_bytes_;
+    int shift_ = -1;
+};
+
+// A width known at compile time makes each copy one load and one store.
+template <std::size_t width>
+void gather(const CellPlaces& places, std::span<const std::int64_t> entries,
+            std::span<const std::byte> mapped, std::span<std::byte> out) {
+    for (std::size_t i = 0; i < entries.size(); ++i)
+        std::memcpy(out.data() + i * width, mapped.data() + places.of(entries[i]), width);
+}
 
 }  // namespace
 
@@ -68,16 +98,21 @@ void FitsPixelReader::Impl::read_cells(const FitsTableColumn& column, std::span<
                                        std::span<double> out) const {
     const auto width = static_cast<std::size_t>(column.width);
     bytes.resize(entries.size() * width);
-    for (std::size_t i = 0; i < entries.size(); ++i) {
-        const std::int64_t entry = std::max<std::int64_t>(entries[i], 0);
-        const std::int64_t at = entry / column.repeat * file.table().row_bytes + column.offset +
-                                entry % column.repeat * column.width;
-        if (mapped.empty())
-            file.read_bytes(at, std::span(bytes).subspan(i * width, width));
-        else
-            std::memcpy(bytes.data() + i * width, mapped.data() + at, width);
+    const CellPlaces places(column, file.table().row_bytes);
+    if (mapped.empty()) {
+        for (std::size_t i = 0; i < entries.size(); ++i)
+            file.read_bytes(places.of(entries[i]), std::span(bytes).subspan(i * width, width));
+    } else if (width == 4) {
+        gather<4>(places, entries, mapped, bytes);
+    } else if (width == 8) {
+        gather<8>(places, entries, mapped, bytes);
+    } else if (width == 2) {
+        gather<2>(places, entries, mapped, bytes);
+    } else {
+        gather<1>(places, entries, mapped, bytes);
     }
     decode_cells(column, bad_data, bytes.data(), column.width, 1, out);
+    if (!header.partial) return;
     for (std::size_t i = 0; i < entries.size(); ++i)
         if (entries[i] == not_listed) out[i] = std::numeric_limits<double>::quiet_NaN();
 }

@@ -44,3 +44,6 @@ def kernels(place):
     for case, above, below, what, target in COMPARISONS:
         a, b = seconds[case, above], seconds[case, below]
         yield Line("kernels", what, ratios(a, b), target, "", {above: a, below: b})
+    million = seconds["positions/million", "foreglow"]
+    yield Line("kernels", "a million positions on a model over templates, no text: 1 s / time",
+               [Seconds(1, 1) / s for s in million], ">= 1", "", {"foreglow": million})

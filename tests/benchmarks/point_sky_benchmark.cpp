@@ -103,6 +103,10 @@ void answer_million(benchmark::State& state) {
     fs::remove_all(folder());
 }
 
-BENCHMARK(answer_million)->Name("positions/million/foreglow")->Unit(benchmark::kMillisecond)->UseRealTime();
+BENCHMARK(answer_million)
+    ->Name("positions/million/foreglow")
+    ->Unit(benchmark::kMillisecond)
+    ->MeasureProcessCPUTime()
+    ->UseRealTime();
 
 }  // namespace

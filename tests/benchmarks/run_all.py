@@ -12,6 +12,7 @@ import signal
 import sys
 from pathlib import Path
 
+from answers import answers
 from index_surveys import index_surveys
 from kernels import kernels
 from timing import Failed, Workplace, say, significant, table
@@ -19,7 +20,7 @@ from whole_studies import GROUPS, LONG
 
 
 def main():
-    groups = {**GROUPS, "index": index_surveys, "kernels": kernels}
+    groups = {**GROUPS, "index": index_surveys, "answers": answers, "kernels": kernels}
     parser = argparse.ArgumentParser(prog="scripts/benchmark", description="Measures Foreglow against what it should be "
                                      "compared with; every number is a ratio of two things measured in turn.")
     parser.add_argument("build", type=Path, help=argparse.SUPPRESS)

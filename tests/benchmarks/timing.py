@@ -88,12 +88,12 @@ class Failed(Exception):
     """Says which program of a comparison failed, and its last words."""
 
 
-def run(command, environment=None):
-    """Runs a program; returns its Seconds and what it printed."""
+def run(command, environment=None, output=subprocess.PIPE):
+    """Runs a program; returns its Seconds and what it printed (nothing where that goes to an open file)."""
     before = resource.getrusage(resource.RUSAGE_CHILDREN)
     start = time.perf_counter()
-    done = subprocess.run([str(word) for word in command], capture_output=True, text=True, stdin=subprocess.DEVNULL,
-                          env={**os.environ, **(environment or {})})
+    done = subprocess.run([str(word) for word in command], stdout=output, stderr=subprocess.PIPE, text=True,
+                          stdin=subprocess.DEVNULL, env={**os.environ, **(environment or {})})
     wall = time.perf_counter() - start
     after = resource.getrusage(resource.RUSAGE_CHILDREN)
     if done.returncode != 0:

@@ -139,9 +139,9 @@ void add_accuracy(const Plan& plan, const MakeResult& result, ReportContent& pag
          plan.study.polarized
              ? "for I, and " + std::to_string(result.harmonic.polarized_components) + " for Q, U"
              : "for I"});
-    page.accuracy.push_back(
-        {"Left by the transforms", format_number(result.harmonic.transform_error, 2),
-         "ring weights and " + std::to_string(result.harmonic.iterations) + " refinements"});
+    page.accuracy.push_back({"Left by the transforms", format_number(result.harmonic.transform_error, 2),
+                             "ring weights; refinements: " + std::to_string(result.harmonic.iterations) +
+                                 " of " + std::to_string(result.harmonic.refined) + " component maps"});
 }
 
 void add_tables(const Plan& plan, const MakeResult& result, ReportContent& page) {

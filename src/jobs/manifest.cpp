@@ -61,6 +61,7 @@ JsonValue describe_accuracy(const Plan& plan, const MakeResult& result) {
         accuracy.emplace_back("rank_error", result.harmonic.rank_error);
         accuracy.emplace_back("transform_error", result.harmonic.transform_error);
         accuracy.emplace_back("transform_refinements", result.harmonic.iterations);
+        accuracy.emplace_back("refined_components", static_cast<std::int64_t>(result.harmonic.refined));
         accuracy.emplace_back("worst_cl_ratio", result.harmonic.worst_cl_ratio);
     }
     return accuracy;

@@ -5,11 +5,13 @@
 #include <array>
 #include <cmath>
 #include <map>
+#include <numeric>
 
 #include "base/error.h"
 #include "base/interrupt.h"
 #include "model/basis_error.h"
 #include "model/component_maps.h"
+#include "model/component_transforms.h"
 #include "model/transform_plan.h"
 #include "sphere/fill.h"
 #include "sphere/harmonics.h"
@@ -55,7 +57,19 @@ int last_l(std::span<const double> window) {
 constexpr double strip_bytes = 0.5e9;
 constexpr std::size_t plain_group = 16;  // channels whose maps are held at once where none can be combined
 
-// The skeletons that a channel is made of, and their coefficients.
+// Components by frequency: the middle one, the outermost two, the others.
+std::vector<std::size_t> outward_order(const SpectralBasis& basis) {
+    std::vector<std::size_t> order(basis.components.size());
+    std::iota(order.begin(), order.end(), std::size_t{0});
+    std::stable_sort(order.begin(), order.end(), [&](std::size_t a, std::size_t b) {
+        return basis.components[a].hz.front() < basis.components[b].hz.front();
+    });
+    std::rotate(order.begin(), order.begin() + static_cast<std::ptrdiff_t>(order.size() / 2), order.end());
+    // Now: middle, upwards to the last, the first, upwards. The last and the first come next.
+    const auto last = static_cast<std::ptrdiff_t>(order.size() - 1 - order.size() / 2);
+    if (last > 0) std::rotate(order.begin() + 1, order.begin() + last, order.end());
+    return order;
+}
 
 }  // namespace
 
@@ -102,35 +116,46 @@ void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress
     const auto total = static_cast<std::int64_t>(report_.intensity_components + report_.polarized_components);
     progress.begin("transforming component maps", total);
     std::int64_t done = 0;
-    TransformState state;
-    for (const BandSum& component : intensity_basis_.components) {
-        check_interrupt();
+    intensity_alms_ = analyse_components<Alm>(plan, intensity_basis_, [&](const BandSum& component) {
         auto map = make_intensity_component(sky, component);
-        if (intensity_alms_.empty()) filled_intensity_.emplace(grid_, sky_frame_, map, narrowest_beam());
+        if (!filled_intensity_) filled_intensity_.emplace(grid_, sky_frame_, map, narrowest_beam());
         if (filled_intensity_->any()) fill_undefined(grid_, map);
-        intensity_alms_.push_back(plan.analyse(map, state));
         progress.step(++done);
-    }
-    report_.add(state);
-    if (!options_.polarized) {
-        progress.end();
-        return;
-    }
-    TransformState polarized_state;
-    for (const BandSum& component : polarized_basis_.components) {
-        check_interrupt();
+        return ComponentTransforms<Alm>::Columns{std::move(map)};
+    });
+    if (!options_.polarized) return progress.end();
+    polarized_alms_ = analyse_components<AlmEB>(plan, polarized_basis_, [&](const BandSum& component) {
         auto maps = make_polarized_component(sky, component);
-        if (polarized_alms_.empty())
-            filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
+        if (!filled_polarization_) filled_polarization_.emplace(grid_, sky_frame_, maps.q, narrowest_beam());
         if (filled_polarization_->any()) {
             fill_undefined(grid_, maps.q);
             fill_undefined(grid_, maps.u);
         }
-        polarized_alms_.push_back(plan.analyse_spin2(maps.q, maps.u, polarized_state));
         progress.step(++done);
-    }
-    report_.add(polarized_state);
+        return ComponentTransforms<AlmEB>::Columns{std::move(maps.q), std::move(maps.u)};
+    });
     progress.end();
+}
+
+template <class Coefficients, class MakeMaps>
+std::vector<Coefficients> HarmonicRoute::analyse_components(const TransformPlan& plan,
+                                                            const SpectralBasis& basis,
+                                                            const MakeMaps& make_maps) {
+    std::vector<Coefficients> alms(basis.components.size());
+    for (const bool refine_all : {false, true}) {
+        ComponentTransforms<Coefficients> transforms(plan, refine_all);
+        bool reached = true;
+        for (const std::size_t k : outward_order(basis)) {
+            check_interrupt();
+            auto alm = transforms.add(make_maps(basis.components[k]));
+            if (!(reached = alm.has_value())) break;
+            alms[k] = std::move(*alm);
+        }
+        if (!reached) continue;
+        report_.add(transforms.state());
+        return alms;
+    }
+    return alms;  // not reached: nothing is begun again where every component is refined
 }
 
 // Rotation costs far more than the other steps and commutes with round beams: the few components are turned,
@@ -153,6 +178,7 @@ void HarmonicRoute::turn_components(Progress& progress) {
 
 void HarmonicReport::add(const TransformState& state) {
     iterations = std::max(iterations, state.iterations);
+    refined += state.refined;
     transform_error = std::max(transform_error, state.relative_error);
     worst_cl_ratio = std::max(worst_cl_ratio, state.worst_cl_ratio);
     converged = converged && state.converged;

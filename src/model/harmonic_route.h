@@ -8,6 +8,7 @@
 
 #include "base/progress.h"
 #include "model/channel.h"
+#include "model/component_transforms.h"
 #include "model/filled_share.h"
 #include "model/joint_rank.h"
 #include "model/skeleton_maps.h"
@@ -23,10 +24,10 @@ namespace foreglow {
 /// How a harmonic route got its accuracy.
 struct HarmonicReport {
     std::size_t intensity_components = 0, polarized_components = 0;
-    int iterations = 0;  ///< of each forward transform after the first, weighted one
-    double transform_error =
-        0;  ///< relative rms, estimated from the last correction, the larger of I and (Q, U)
-    double worst_cl_ratio = 0;  ///< of the error's C_l to the map's, where B_l^2 > 1e-3
+    int iterations = 0;       ///< refinements of each refined component after its first, weighted transform
+    std::size_t refined = 0;  ///< components that were refined
+    double transform_error = 0;  ///< relative rms, the larger of I and (Q, U); see ComponentTransforms
+    double worst_cl_ratio = 0;   ///< of the error's C_l to the map's, where B_l^2 > 1e-3
     bool converged = true;
     std::size_t intensity_skeletons = 0, polarized_skeletons = 0;  ///< inverse transforms of each kind
     double rank_error = 0;  ///< of the worst channel's combination of skeletons, relative rms
@@ -74,6 +75,9 @@ class HarmonicRoute {
   private:
     void make_bases(const SkyModel& sky, double tolerance);
     void transform_components(const SkyModel& sky, Progress& progress);
+    template <class Coefficients, class MakeMaps>
+    std::vector<Coefficients> analyse_components(const TransformPlan& plan, const SpectralBasis& basis,
+                                                 const MakeMaps& make_maps);
     void turn_components(Progress& progress);
     void find_skeletons(double tolerance);
     [[nodiscard]] Angle narrowest_beam() const;

@@ -104,6 +104,7 @@ ConvergenceReport refine(Coefficients& alm, const Correct& correct, double usual
         const bool has_ratio = report.iterations > 1 && report.relative_correction > 0;
         report.contraction = has_ratio ? relative / report.relative_correction : 0.0;
         report.relative_correction = relative;
+        if (report.iterations == 1) report.first_correction = relative;
         // The first ratios are too good: smooth parts converge at once and the slow ones are still hidden
         // behind them.
         const double ratio = std::max(report.contraction, usual);
@@ -116,23 +117,33 @@ ConvergenceReport refine(Coefficients& alm, const Correct& correct, double usual
 
 }  // namespace
 
+ConvergedAlm refine_analysis(Alm start, const HealpixGrid& grid, std::span<const double> map,
+                             const ConvergenceOptions& options) {
+    const double usual = usual_contraction(grid.nside(), start.lmax());
+    ConvergedAlm out{std::move(start), {}};
+    out.report = refine(
+        out.alm, [&](const Alm& alm) { return correction_of(alm, grid, map); }, usual, options);
+    return out;
+}
+
+ConvergedAlmEB refine_analysis_spin2(AlmEB start, const HealpixGrid& grid, std::span<const double> q,
+                                     std::span<const double> u, const ConvergenceOptions& options) {
+    const double usual = usual_contraction(grid.nside(), start.e.lmax());
+    ConvergedAlmEB out{std::move(start), {}};
+    out.report = refine(
+        out.alm, [&](const AlmEB& alm) { return correction_of(alm, grid, q, u); }, usual, options);
+    return out;
+}
+
 ConvergedAlm analyse_converged(const HealpixGrid& grid, std::span<const double> map, int lmax,
                                const ConvergenceOptions& options) {
-    ConvergedAlm out{analyse(grid, map, lmax, options.start_weights), {}};
-    out.report = refine(
-        out.alm, [&](const Alm& alm) { return correction_of(alm, grid, map); },
-        usual_contraction(grid.nside(), lmax), options);
-    return out;
+    return refine_analysis(analyse(grid, map, lmax, options.start_weights), grid, map, options);
 }
 
 ConvergedAlmEB analyse_converged_spin2(const HealpixGrid& grid, std::span<const double> q,
                                        std::span<const double> u, int lmax,
                                        const ConvergenceOptions& options) {
-    ConvergedAlmEB out{analyse_spin2(grid, q, u, lmax, options.start_weights), {}};
-    out.report = refine(
-        out.alm, [&](const AlmEB& alm) { return correction_of(alm, grid, q, u); },
-        usual_contraction(grid.nside(), lmax), options);
-    return out;
+    return refine_analysis_spin2(analyse_spin2(grid, q, u, lmax, options.start_weights), grid, q, u, options);
 }
 
 }  // namespace foreglow

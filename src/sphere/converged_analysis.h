@@ -24,6 +24,7 @@ struct ConvergenceReport {
     int iterations = 0;
     bool reached = false;            ///< the tolerance
     double relative_correction = 0;  ///< of the last iteration
+    double first_correction = 0;     ///< of the first iteration
     double contraction = 0;     ///< last correction over the one before; 0 with fewer than two iterations
     double relative_error = 0;  ///< estimated to remain; see analyse_converged
     std::vector<double> correction_cl;  ///< [lmax + 1], without the window; spin 2: EE + BB
@@ -56,5 +57,12 @@ struct ConvergedAlmEB {
 [[nodiscard]] ConvergedAlmEB analyse_converged_spin2(const HealpixGrid& grid, std::span<const double> q,
                                                      std::span<const double> u, int lmax,
                                                      const ConvergenceOptions& options = {});
+
+/// The same from a first analysis that is there already.
+[[nodiscard]] ConvergedAlm refine_analysis(Alm start, const HealpixGrid& grid, std::span<const double> map,
+                                           const ConvergenceOptions& options = {});
+[[nodiscard]] ConvergedAlmEB refine_analysis_spin2(AlmEB start, const HealpixGrid& grid,
+                                                   std::span<const double> q, std::span<const double> u,
+                                                   const ConvergenceOptions& options = {});
 
 }  // namespace foreglow

@@ -360,9 +360,10 @@ TEST(HarmonicRoute, NeedsADefinedPixel) {
 
 TEST(HarmonicReport, KeepsTheWorst) {
     HarmonicReport report;
-    report.add({true, 3, 1e-6, 1e-5, true});
-    report.add({true, 1, 1e-5, 1e-6, false});
+    report.add({3, 2, 1e-6, 1e-5, true});
+    report.add({1, 1, 1e-5, 1e-6, false});
     EXPECT_EQ(report.iterations, 3);
+    EXPECT_EQ(report.refined, 3U);
     EXPECT_EQ(report.transform_error, 1e-5);
     EXPECT_EQ(report.worst_cl_ratio, 1e-5);
     EXPECT_FALSE(report.converged);

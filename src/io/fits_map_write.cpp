@@ -111,12 +111,13 @@ void FitsMapWriter::Impl::write_rows(std::int64_t first_row, std::int64_t rows, 
     const std::int64_t row_bytes = shape.row_bytes();
     const std::int64_t rows_at_once =
         std::clamp<std::int64_t>(rows_buffer_bytes / row_bytes, 1, std::max<std::int64_t>(rows, 1));
-    std::vector<std::byte> buffer(static_cast<std::size_t>(rows_at_once * row_bytes));
+    const auto buffer =
+        std::make_unique_for_overwrite<std::byte[]>(static_cast<std::size_t>(rows_at_once * row_bytes));
     const auto cells = static_cast<std::size_t>(shape.row_pixels);
     for (std::int64_t done = 0; done < rows;) {
         const std::int64_t now = std::min(rows_at_once, rows - done);
         CellTally tally;
-        std::byte* out = buffer.data();
+        std::byte* out = buffer.get();
         for (std::int64_t row = 0; row < now; ++row) {
             if (layout.pixels) add_index(first_row + done + row, out);
             out += shape.index_bytes;
@@ -130,7 +131,7 @@ void FitsMapWriter::Impl::write_rows(std::int64_t first_row, std::int64_t rows, 
         }
         note(tally);
         file.write_at(offset_of(first_row + done, 0, 0) - shape.index_bytes,
-                      std::span(buffer).first(static_cast<std::size_t>(now * row_bytes)));
+                      std::span<const std::byte>(buffer.get(), static_cast<std::size_t>(now * row_bytes)));
         done += now;
     }
 }

@@ -13,7 +13,7 @@ namespace foreglow {
 [[nodiscard]] std::string sha256_of_file(const std::filesystem::path& path);
 
 /// Returns the XXH3-128 of a file's bytes (canonical, big-endian), 32 lower-case hexadecimal digits; the file
-/// is streamed.
+/// is one of our own, which nobody shortens meanwhile.
 /// @throws FileError with the system's reason
 [[nodiscard]] std::string xxh3_128_of_file(const std::filesystem::path& path);
 

@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <array>
 #include <cstdint>
+#include <memory>
 #include <span>
 #include <vector>
 
@@ -16,14 +17,15 @@ namespace foreglow {
 /// The columns of one piece.
 class PieceBuffer {
   public:
-    PieceBuffer(std::size_t columns, std::size_t size) : values_(columns * size), count_(columns) {
+    PieceBuffer(std::size_t columns, std::size_t size)
+        : values_(std::make_unique_for_overwrite<double[]>(columns * size)), count_(columns) {
         for (std::size_t c = 0; c < columns; ++c)
-            columns_[c] = std::span(values_).subspan(c * size, size);
+            columns_[c] = std::span(values_.get() + c * size, size);
     }
     [[nodiscard]] std::span<const std::span<double>> columns() const { return {columns_.data(), count_}; }
 
   private:
-    std::vector<double> values_;
+    std::unique_ptr<double[]> values_;
     std::array<std::span<double>, 3> columns_;
     std::size_t count_;
 };

@@ -18,6 +18,7 @@
 #include "jobs/output_folder.h"
 #include "jobs/plan.h"
 #include "model/bundled_models.h"
+#include "model/detailed_sky.h"
 #include "model/filled_share.h"
 #include "model/load_sky.h"
 #include "model/study_file.h"
@@ -222,11 +223,13 @@ GradeSource make_run(const GradeOptions& options, Progress& progress) {
     progress.notice("graded at nside " + std::to_string(study.nside) +
                     ", up to l = " + std::to_string(study.lmax) + " where there are beams");
     progress.begin("loading the sky");
-    const SkyModel sky = load_sky(plan.model, HealpixGrid(study.nside), study.lmax, false, progress);
+    SkyModel loaded = load_sky(plan.model, HealpixGrid(study.nside), study.lmax, false, progress);
     progress.end();
+    const DetailedSky detailed(plan.model, std::move(loaded), study.seed, false, progress);
+    const SkyModel sky = detailed.realize(plan.realizations.front());
     OutputFolder folder(source.folder, false);
     MakeResult result;
-    write_channel_maps(plan, sky, folder, progress, result);
+    write_channel_maps(plan, sky, {plan.realizations.data(), 1}, folder, progress, result);
     folder.keep();
     for (const Channel& channel : plan.channels)
         source.channels.push_back({channel, source.folder / "maps" / (channel.name + ".fits"), std::nullopt});

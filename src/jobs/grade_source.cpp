@@ -226,10 +226,10 @@ GradeSource make_run(const GradeOptions& options, Progress& progress) {
     SkyModel loaded = load_sky(plan.model, HealpixGrid(study.nside), study.lmax, false, progress);
     progress.end();
     const DetailedSky detailed(plan.model, std::move(loaded), study.seed, false, progress);
-    const SkyModel sky = detailed.realize(plan.realizations.front());
+    const SkyModel sky = detailed.realize(options.realization.value_or(0));
     OutputFolder folder(source.folder, false);
     MakeResult result;
-    write_channel_maps(plan, sky, {plan.realizations.data(), 1}, folder, progress, result);
+    write_channel_maps(plan, sky, plan.realizations, folder, progress, result);
     folder.keep();
     for (const Channel& channel : plan.channels)
         source.channels.push_back({channel, source.folder / "maps" / (channel.name + ".fits"), std::nullopt});

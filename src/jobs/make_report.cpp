@@ -6,6 +6,7 @@
 
 #include "base/build_info.h"
 #include "base/text.h"
+#include "jobs/detail_summary.h"
 #include "picture/report_page.h"
 #include "picture/sky_picture.h"
 
@@ -183,6 +184,7 @@ std::string make_report(const Plan& plan, const SkyModel& sky, const MakeResult&
     page.warnings = progress.warnings();
     add_facts(plan, sky, page);
     add_pictures(plan, result, page);
+    add_detail(plan, result, page);
     add_chart(plan, result, page);
     add_accuracy(plan, result, page);
     add_tables(plan, result, page);

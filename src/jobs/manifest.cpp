@@ -7,6 +7,7 @@
 #include "base/error.h"
 #include "base/parallel.h"
 #include "io/json_value.h"
+#include "jobs/detail_summary.h"
 #include "jobs/manifest_parts.h"
 
 namespace foreglow {
@@ -98,6 +99,7 @@ std::vector<fs::path> list_plan_inputs(const Plan& plan) {
         if (model.polarization->fraction) add_value(*model.polarization->fraction, inputs);
         if (model.polarization->index) add_value(*model.polarization->index, inputs);
     }
+    if (model.detail && model.detail->spectrum) inputs.push_back(*model.detail->spectrum);
     for (const ChannelSpec& channel : plan.study.channels) {
         if (channel.response) inputs.push_back(*channel.response);
         if (channel.beam_window) inputs.push_back(*channel.beam_window);
@@ -114,7 +116,7 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
     JsonValue::Array realizations;
     for (const int r : plan.realizations)
         realizations.emplace_back(r);
-    const JsonValue::Object manifest{
+    JsonValue::Object manifest{
         {"program", "Foreglow"},
         {"version", version()},
         {"build", build_description()},
@@ -136,6 +138,7 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
         {"timings", describe_timings(progress)},
         {"study", without_absolute_paths(plan.study.source)},
         {"model", without_absolute_paths(plan.model.source)}};
+    if (result.detail) manifest.emplace_back("detail", describe_detail(plan, result));
     return write_json(manifest);
 }
 

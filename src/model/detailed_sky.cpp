@@ -65,7 +65,6 @@ PixelField add_scatter(const PixelField& field, const ScatterSpec& scatter, Draw
 
 // T(nu_pol) / T(nu0) of a pixel of the intensity.
 double carry(const SkyStrip& values, std::size_t i, double log_ratio) {
-    if (log_ratio == 0) return 1;
     return std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
 }
 
@@ -230,22 +229,36 @@ class DetailedSky::Impl {
     // Counts, and scales back where the model says so, pixels more polarized than electrons can make them.
     void check_fraction(const SkyModel& sky, StokesMaps& maps, DetailCounts& counts) const {
         const double log_ratio = log_frequency_ratio(sky.polarization->reference, sky.reference);
+        if (log_ratio == 0) {
+            const auto intensity = sky.intensity.map();
+            const std::span<const double> values = intensity->values;
+            counts.too_polarized +=
+                cap_pixels({0, base_.grid.npix(), 0}, maps, [&](std::size_t at) { return values[at]; });
+            return;
+        }
         for (const RingStrip& strip : cut_into_strips(sky.grid, std::int64_t{1} << 22)) {
             const SkyStrip values = make_sky_strip(sky, strip, false);
             for (const PixelRange& range : pixel_ranges(sky.grid, strip))
-                counts.too_polarized += static_cast<std::int64_t>(
-                    parallel_sum(range.count, block, [&](std::int64_t begin, std::int64_t end) {
-                        double found = 0;
-                        for (std::int64_t i = begin; i < end; ++i) {
-                            const auto at = static_cast<std::size_t>(range.offset + i);
-                            const auto pixel = static_cast<std::size_t>(range.first_pixel + i);
-                            if (cap_pixel(values.intensity[at] * carry(values, at, log_ratio), maps.q[pixel],
-                                          maps.u[pixel]))
-                                found += 1;
-                        }
-                        return found;
-                    }));
+                counts.too_polarized += cap_pixels(range, maps, [&](std::size_t at) {
+                    return values.intensity[at] * carry(values, at, log_ratio);
+                });
         }
+    }
+
+    template <class Intensity>
+    [[nodiscard]] std::int64_t cap_pixels(const PixelRange& range, StokesMaps& maps,
+                                          const Intensity& intensity_at) const {
+        return static_cast<std::int64_t>(
+            parallel_sum(range.count, block, [&](std::int64_t begin, std::int64_t end) {
+                double found = 0;
+                for (std::int64_t i = begin; i < end; ++i) {
+                    const auto pixel = static_cast<std::size_t>(range.first_pixel + i);
+                    if (cap_pixel(intensity_at(static_cast<std::size_t>(range.offset + i)), maps.q[pixel],
+                                  maps.u[pixel]))
+                        found += 1;
+                }
+                return found;
+            }));
     }
 
     [[nodiscard]] bool cap_pixel(double intensity, double& q, double& u) const {

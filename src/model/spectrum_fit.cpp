@@ -17,6 +17,8 @@ namespace {
 
 constexpr int usual_bin = 10;
 constexpr std::size_t fewest_bins = 4;
+// Taken out within a bin, whose mean would else lie above a steep law at its middle.
+constexpr double usual_steepness = 2.5;
 constexpr double smallest_beam_power = 0.3;
 constexpr double flattest_slope = -1;
 constexpr double analysis_tolerance = 1e-4;  // of a_lm; the bins' own errors are some per cent
@@ -26,15 +28,16 @@ std::vector<SpectrumBin> make_bins(std::span<const double> cl, const LRange& lra
     const int width = std::clamp(count / 6, 1, usual_bin);
     std::vector<SpectrumBin> bins;
     for (int first = lrange.first; first + width - 1 <= lrange.last; first += width) {
-        double modes = 0, mean_l = 0, mean_cl = 0;
+        double modes = 0, mean_l = 0, mean = 0;
         for (int l = first; l < first + width; ++l) {
             const double n = 2.0 * l + 1;
             modes += n;
             mean_l += n * l;
-            mean_cl += n * cl[static_cast<std::size_t>(l)];
+            mean += n * cl[static_cast<std::size_t>(l)] * std::pow(static_cast<double>(l), usual_steepness);
         }
-        if (mean_cl > 0)
-            bins.push_back({mean_l / modes, mean_cl / modes, std::sqrt(2 / (modes * sky_fraction))});
+        mean_l /= modes;
+        const double mean_cl = mean / modes * std::pow(mean_l, -usual_steepness);
+        if (mean_cl > 0) bins.push_back({mean_l, mean_cl, std::sqrt(2 / (modes * sky_fraction))});
     }
     return bins;
 }

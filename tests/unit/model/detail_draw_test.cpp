@@ -56,7 +56,7 @@ Sums draw_many(const DetailSpectra& asked, std::uint64_t seed, int realizations)
 }
 
 // The issue's own measure: two seeds fixed beforehand, 200 realizations, every l from 2 on as a bin. Of 2 x 4
-// x 95 = 760 pulls 0.27 % lie beyond 3 sigma: 2.1, and with odds of 99.9 % at most 7 (binomial).
+// x 95 = 760 pulls 0.27 % lie beyond 3 sigma: 2.1, and with odds of 99.9 % at most 8 (binomial).
 TEST(DetailDraw, HasTheSpectraAskedFor) {
     constexpr int realizations = 200;
     const DetailSpectra asked = spectra(lmax);
@@ -81,7 +81,7 @@ TEST(DetailDraw, HasTheSpectraAskedFor) {
         // l, a little worse: their mean to 0.4 %; five times that.
         EXPECT_NEAR(relative_variance / (4 * (lmax - 1)), 1, 0.02) << seed;
     }
-    EXPECT_LE(beyond3, 7);
+    EXPECT_LE(beyond3, 8);
     EXPECT_LT(worst, 5);
 }
 

@@ -19,6 +19,7 @@ struct IndexMap {
     explicit IndexMap(const FitsMapRequest& request) : reader(request) {}
 
     FitsPixelReader reader;
+    std::optional<FitsPixelReader> amplitude_file;    ///< where it is a file of its own
     std::optional<std::size_t> curvature, amplitude;  ///< places among the columns read
     std::optional<Frequency> reference;
     struct Law {
@@ -40,6 +41,9 @@ void IndexMap::load(std::span<const std::int64_t> pixels) {
     for (std::vector<double>& column : columns)
         out.emplace_back(column);
     reader.read(pixels, out);
+    if (!amplitude_file) return;
+    const std::array<std::span<double>, 1> amplitudes{columns.emplace_back(pixels.size())};
+    amplitude_file->read(pixels, amplitudes);
 }
 
 PointValues IndexMap::values(std::size_t k) const {
@@ -134,6 +138,24 @@ std::shared_ptr<IndexMap> open_index_map(const AtOptions& options) {
     return map;
 }
 
+// The amplitude that `foreglow index` leaves beside its index map.
+void open_amplitude_beside(IndexMap& map, const std::filesystem::path& folder) {
+    FitsMapRequest request;
+    request.path = folder / "amplitude.fits";
+    request.columns.emplace_back("AMPLITUDE");
+    std::error_code code;
+    if (map.amplitude || !map.reference || !std::filesystem::exists(request.path, code)) return;
+    FitsPixelReader reader(request);
+    const FitsMapHeader& header = reader.header();
+    const auto unit =
+        find_brightness_unit(header.columns.at(static_cast<std::size_t>(header.requested.front() - 1)).unit);
+    if (!unit || !(header.grid == map.reader.header().grid) || header.frame != map.reader.header().frame)
+        return;
+    map.amplitude = map.reader.header().requested.size();
+    map.amplitude_factor = rayleigh_jeans_per_unit(*unit, *map.reference, header.grid.pixel_area());
+    map.amplitude_file.emplace(std::move(reader));
+}
+
 void add_laws(const AtOptions& options, IndexMap& map, AtSource& source) {
     const auto unit = find_brightness_unit(options.unit.value_or("K_RJ"));
     if (!unit)
@@ -157,8 +179,13 @@ void add_laws(const AtOptions& options, IndexMap& map, AtSource& source) {
 
 }  // namespace
 
-AtSource open_index_map_at(const AtOptions& options) {
+AtSource open_index_map_at(const AtOptions& request) {
+    std::error_code code;
+    AtOptions options = request;
+    const bool is_folder = std::filesystem::is_directory(request.source, code);
+    if (is_folder) options.source = (std::filesystem::path(request.source) / "index.fits").string();
     const auto map = open_index_map(options);
+    if (is_folder) open_amplitude_beside(*map, request.source);
     const FitsMapHeader& header = map->reader.header();
     AtSource source;
     source.grid = header.grid;

@@ -154,6 +154,15 @@ fs::path find_map(const fs::path& folder, const std::string& name, std::optional
     return numbered;
 }
 
+// A number of a manifest, however it is written.
+std::optional<double> number_of(const JsonValue* value) {
+    if (value == nullptr) return std::nullopt;
+    if (const auto* real = std::get_if<double>(&value->storage())) return *real;
+    if (const auto* whole = std::get_if<std::int64_t>(&value->storage())) return static_cast<double>(*whole);
+    if (const auto* whole = std::get_if<std::uint64_t>(&value->storage())) return static_cast<double>(*whole);
+    return std::nullopt;
+}
+
 void read_channels(const AtOptions& options, RunMaps& run) {
     const fs::path manifest = run.folder / "run.json";
     std::error_code code;
@@ -167,13 +176,11 @@ void read_channels(const AtOptions& options, RunMaps& run) {
     for (const JsonValue& channel : *channels->array()) {
         const JsonValue* name = channel.find("name");
         const JsonValue* hz = channel.find("frequency_Hz");
-        const double* real = hz == nullptr ? nullptr : std::get_if<double>(&hz->storage());
-        const auto* whole = hz == nullptr ? nullptr : std::get_if<std::int64_t>(&hz->storage());
-        if (name == nullptr || name->text() == nullptr || (real == nullptr && whole == nullptr))
+        const std::optional<double> frequency = number_of(hz);
+        if (name == nullptr || name->text() == nullptr || !frequency)
             throw DataError(manifest.string() + ": a channel lacks its name or frequency_Hz");
         run.channels.push_back({find_map(run.folder, *name->text(), options.realization),
-                                Frequency::from_hz(real != nullptr ? *real : static_cast<double>(*whole)),
-                                nullptr});
+                                Frequency::from_hz(*frequency), nullptr});
     }
 }
 
@@ -217,6 +224,11 @@ void open_law(const AtOptions& options, RunMaps& run, AtSource& source,
 }  // namespace
 
 AtSource open_run_at(const AtOptions& options) {
+    std::error_code code;
+    const fs::path folder = options.source;
+    if (fs::exists(folder / "run.json", code) && fs::exists(folder / "index.fits", code) &&
+        !fs::exists(folder / "maps", code))
+        return open_index_map_at(options);  // what `foreglow index` left
     const auto frequencies = read_at_frequencies(options.frequencies);
     const auto run = std::make_shared<RunMaps>();
     run->folder = options.source;

@@ -43,7 +43,8 @@ struct AtSource {
 [[nodiscard]] AtSource open_model_at(const AtOptions& options);
 [[nodiscard]] AtSource open_study_at(const AtOptions& options);
 [[nodiscard]] AtSource open_run_at(const AtOptions& options);
-[[nodiscard]] AtSource open_index_map_at(const AtOptions& options);
+/// Takes an index map, or the folder with index.fits and amplitude.fits that `foreglow index` left.
+[[nodiscard]] AtSource open_index_map_at(const AtOptions& request);
 
 /// Reads --frequency: single ones and log grids.
 /// @throws InputError where one is wrong or outside 1 Hz to 10 THz

@@ -232,6 +232,22 @@ class AnswersAtPositions(harness.Case):
         self.assertEqual(rows[0]["pixels"], len(inside))
         numpy.testing.assert_allclose([rows[0]["index"], rows[0]["scatter"]], [values.mean(), values.std()], rtol=1e-11)
 
+    def test_the_folder_that_index_leaves(self):
+        text = 'reference_frequency = "1 GHz"\nnside = 16\nbeam_fwhm = "20 deg"\n'
+        for name, hz in (("a", 408e6), ("b", 1.4e9)):
+            self.write_map(f"{name}.fits", [20 * (hz / 1e9) ** -2.7 * numpy.ones(3072)], unit="K_RJ")
+            text += f'[[survey]]\nmap = "{name}.fits"\nfrequency = "{hz} Hz"\nnoise = "0.001 K_RJ"\nbeam_fwhm = "20 deg"\n'
+        self.write("surveys.toml", text)
+        self.foreglow("index", "surveys.toml", "--out", "fit", "--quiet")
+        for source in ("fit", "fit/index.fits"):
+            rows, _ = self.rows(source, "--position", "10,20", "--frequency", "2 GHz")
+            # Two uniform maps without noise in them: float32 files and the fit's own rounding.
+            self.assertAlmostEqual(rows[0]["index"], -2.7, delta=1e-4)
+            if source == "fit":
+                self.assertAlmostEqual(rows[0]["brightness"] / (20 * 2 ** -2.7), 1, delta=1e-4)
+            else:
+                self.assertIsNone(rows[0]["brightness"])
+
     def test_partial_and_bare_index_maps(self):
         listed = numpy.sort(numpy.random.default_rng(1).permutation(3072)[:500])
         self.write_map("part.fits", [self.sky["index"]], names=["INDEX"], pixels=listed, frame=None)

@@ -235,6 +235,9 @@ void run_at(const AtOptions& options, const std::function<bool(std::string_view)
             const std::function<void(const std::string&)>& note) {
     check_options(options);
     AtSource source = open_at_source(options);
+    if (options.nside && !source.takes_nside && options.pixels.empty() && !options.positions_file)
+        throw InputError("--nside is the grid of pixel numbers: give them with --pixel, or leave it out (" +
+                         options.source + " has nside " + std::to_string(source.grid.nside()) + ")");
     const std::vector<std::string> notices = source.notices;
     Answer answer(options, std::move(source), write);
     answer.prepare();

@@ -15,12 +15,8 @@ struct ModelRows {
     explicit ModelRows(PointSky sky_in) : sky(std::move(sky_in)) {}
 
     PointSky sky;
-    struct Row {
-        BandSum band;
-        Frequency at;
-    };
-    std::vector<Row> rows;
-    SkyStrip strip;
+    std::vector<PointRow> rows;
+    std::vector<PointValues> values;  ///< of the pixels loaded last
 };
 
 BrightnessUnit read_asked_unit(const AtOptions& options, const BrightnessUnit& otherwise) {
@@ -44,11 +40,10 @@ AtSource make_source(const std::shared_ptr<ModelRows>& rows) {
     source.frame = rows->sky.frame();
     source.polarized = rows->sky.is_polarized();
     source.notices = rows->sky.notices();
-    source.load = [rows](std::span<const std::int64_t> pixels) { rows->strip = rows->sky.evaluate(pixels); };
-    source.values = [rows](std::size_t k) {
-        return make_point_values(rows->strip, rows->sky.reference(), rows->sky.polarized_reference(),
-                                 rows->rows[k].band, rows->rows[k].at);
+    source.load = [rows](std::span<const std::int64_t> pixels) {
+        rows->values = rows->sky.answer(pixels, rows->rows);
     };
+    source.values = [rows](std::size_t k) { return std::move(rows->values[k]); };
     return source;
 }
 
@@ -107,6 +102,7 @@ AtSource open_model_at(const AtOptions& options) {
     if (model.sketch && options.nside) grid = HealpixGrid(*options.nside);
     const auto rows = std::make_shared<ModelRows>(PointSky(model, grid, polarized));
     AtSource source = make_source(rows);
+    source.takes_nside = model.sketch.has_value();
     if (!model.sketch)
         source.notices.push_back("each position is answered by the intensity template's own pixel, nside " +
                                  std::to_string(source.grid.nside()));

@@ -3,6 +3,7 @@
 #include <cstdio>
 
 #include "base/error.h"
+#include "base/text.h"
 #include "io/fits_pixel_reader.h"
 #include "io/json_value.h"
 #include "jobs/at_source.h"
@@ -52,6 +53,7 @@ struct RunMaps {
     std::vector<Channel> channels;
     std::optional<FitsPixelReader> index, curvature, amplitude, own_index;
     Frequency reference;
+    bool is_curved_law = true;  ///< else truth says what the spectrum is at its own frequency only
     std::vector<std::int64_t> pixels;
     SkyStrip truth;  ///< of the pixels loaded last
     struct Law {
@@ -116,8 +118,9 @@ PointValues RunMaps::channel_values(std::size_t k) {
         for (double& value : values.u)
             value = -value;
     if (truth.index.empty()) return values;
-    values.curvature = truth.curvature;
     values.index_reference = truth.index;
+    if (!is_curved_law && !(channel.at == reference)) return values;
+    values.curvature = truth.curvature;
     const double log_ratio = log_frequency_ratio(channel.at, reference);
     for (std::size_t i = 0; i < pixels.size(); ++i) {
         values.index.push_back(local_index({truth.index[i], truth.curvature[i]}, log_ratio));
@@ -163,6 +166,14 @@ std::optional<double> number_of(const JsonValue* value) {
     return std::nullopt;
 }
 
+// Whether a model's text has a section whose spectra are no curved power laws.
+bool names_another_law(const std::string& model) {
+    for (const std::string& line : split(model, '\n'))
+        for (const char* section : {"[electrons", "[galaxy"})
+            if (trim(line).starts_with(section)) return true;
+    return false;
+}
+
 void read_channels(const AtOptions& options, RunMaps& run) {
     const fs::path manifest = run.folder / "run.json";
     std::error_code code;
@@ -170,6 +181,8 @@ void read_channels(const AtOptions& options, RunMaps& run) {
         throw InputError(run.folder.string() +
                          " has no run.json, so it is no finished run: name the folder that make left");
     const JsonValue json = read_json(manifest);
+    if (const JsonValue* model = json.find("model"); model != nullptr && model->text() != nullptr)
+        run.is_curved_law = !names_another_law(*model->text());
     const JsonValue* channels = json.find("channels");
     if (channels == nullptr || channels->array() == nullptr || channels->array()->empty())
         throw DataError(manifest.string() + ": there is no list of channels in it; the file is damaged");
@@ -205,6 +218,11 @@ void open_law(const AtOptions& options, RunMaps& run, AtSource& source,
             "the run " + run.folder.string() +
             " has no truth maps to answer at --frequency: leave it out for the channels' maps, or "
             "ask the study itself");
+    if (!run.is_curved_law)
+        throw InputError(
+            "the spectra of the run " + run.folder.string() +
+            " are no curved power laws, so its truth maps do not say what is at --frequency: ask "
+            "the study itself");
     run.amplitude.emplace(open_columns(run.folder / "truth/amplitude.fits", run.stokes));
     if (run.polarized && has_column(run.folder / "truth/index.fits", "INDEX_POLARIZED"))
         run.own_index.emplace(open_columns(run.folder / "truth/index.fits", {"INDEX_POLARIZED"}));
@@ -268,6 +286,11 @@ AtSource open_run_at(const AtOptions& options) {
                      "are its truth, before beams"
                    : "brightness, Q and U are the run's maps as written; the run has no truth "
                      "maps, so there is no index");
+    if (run->index && !run->is_curved_law)
+        source.notices.emplace_back(
+            "the model's spectra are no curved power laws: truth has the index at the reference frequency "
+            "only, "
+            "and the study itself answers with those at the channels' frequencies");
     source.values = [run](std::size_t k) { return run->channel_values(k); };
     return source;
 }

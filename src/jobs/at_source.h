@@ -26,12 +26,14 @@ struct AtSource {
     Frame frame = Frame::Galactic;
     PolarizationConvention convention = PolarizationConvention::Cosmo;  ///< where none is asked for
     bool polarized = false;
+    bool takes_nside = false;  ///< made of formulas, on any grid that is asked for
     bool has_index = true, has_curvature = true, has_brightness = true;
     std::vector<AtColumn> columns;
     std::vector<std::string> notices;
     /// Reads what all columns share at RING pixels of the grid.
     std::function<void(std::span<const std::int64_t>)> load;
-    /// Makes one column at the pixels loaded last, COSMO, against the meridians of the source's frame.
+    /// Makes one column at the pixels loaded last, to be called once for each: COSMO, against the meridians
+    /// of the source's frame.
     std::function<PointValues(std::size_t)> values;
 };
 

@@ -247,4 +247,15 @@ SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
     return values;
 }
 
+std::vector<PointValues> PointSky::answer(std::span<const std::int64_t> pixels,
+                                          std::span<const PointRow> rows) const {
+    const SkyStrip strip = evaluate(pixels);
+    std::vector<PointValues> out;
+    out.reserve(rows.size());
+    for (const PointRow& row : rows)
+        out.push_back(
+            make_point_values(strip, impl_->reference, impl_->polarized_reference, row.band, row.at));
+    return out;
+}
+
 }  // namespace foreglow

@@ -9,9 +9,16 @@
 #include <vector>
 
 #include "model/model_spec.h"
+#include "model/point_values.h"
 #include "model/sky_model.h"
 
 namespace foreglow {
+
+/// A frequency or a channel that is asked of a sky.
+struct PointRow {
+    BandSum band;  ///< in the unit asked for
+    Frequency at;  ///< where index and curvature are local
+};
 
 /// A model's sky of which only single pixels are wanted: nothing of the size of a map is made or read, but
 /// where random structure is asked for. Without a seed [detail] and scatter are off, and a notice says so.
@@ -43,6 +50,10 @@ class PointSky {
 
     /// Makes the values at RING pixels, with threads where they are many.
     [[nodiscard]] SkyStrip evaluate(std::span<const std::int64_t> pixels) const;
+
+    /// Returns what pixels are in each row, [rows], with threads where they are many.
+    [[nodiscard]] std::vector<PointValues> answer(std::span<const std::int64_t> pixels,
+                                                  std::span<const PointRow> rows) const;
 
   private:
     struct Impl;

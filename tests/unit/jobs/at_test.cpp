@@ -141,6 +141,9 @@ TEST_F(AtTest, RefusesContradictions) {
     options_.disc = Angle::from_degrees(-3);
     EXPECT_NE(refusal().find("--disc"), std::string::npos);
     options_.disc.reset();
+    options_.nside = 16;
+    EXPECT_NE(refusal().find("has nside 8"), std::string::npos);
+    options_.nside.reset();
     options_.column = "INDEX";
     EXPECT_NE(refusal().find("index map"), std::string::npos);
     options_.column.reset();

@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/error.h"
+#include "math/small_cholesky.h"
 #include "sphere/sky_map.h"
 
 namespace foreglow {
@@ -19,43 +20,6 @@ using Small = std::array<Parameters, most_parameters>;
 using Column = std::array<double, most_surveys>;
 using Square = std::array<Column, most_surveys>;
 using Response = std::array<Column, most_parameters>;  // [parameters][surveys]
-
-// Replaces the lower triangle of a positive matrix by its Cholesky factor; false where it is not positive.
-template <class Rows>
-bool factorize(Rows& a, std::size_t n) {
-    for (std::size_t j = 0; j < n; ++j) {
-        for (std::size_t i = j; i < n; ++i) {
-            double sum = a[i][j];
-            for (std::size_t k = 0; k < j; ++k)
-                sum -= a[i][k] * a[j][k];
-            if (i == j) {
-                if (!(sum > 0)) return false;
-                a[j][j] = std::sqrt(sum);
-            } else {
-                a[i][j] = sum / a[j][j];
-            }
-        }
-    }
-    return true;
-}
-
-template <class Rows, class Vector>
-void solve_lower(const Rows& factor, std::size_t n, Vector& b) {
-    for (std::size_t i = 0; i < n; ++i) {
-        for (std::size_t k = 0; k < i; ++k)
-            b[i] -= factor[i][k] * b[k];
-        b[i] /= factor[i][i];
-    }
-}
-
-template <class Rows, class Vector>
-void solve_upper(const Rows& factor, std::size_t n, Vector& b) {
-    for (std::size_t i = n; i-- > 0;) {
-        for (std::size_t k = i + 1; k < n; ++k)
-            b[i] -= factor[k][i] * b[k];
-        b[i] /= factor[i][i];
-    }
-}
 
 /// The fit of one pixel: its defined surveys, and the current model.
 class PixelFit {

@@ -178,6 +178,7 @@ SmoothedSurveys smooth_surveys(const SurveysSpec& spec, Progress& progress) {
     out.report.lmax = common_lmax(spec, surveys);
     const Target target{HealpixGrid(spec.nside), spec.frame, out.report.lmax};
     if (!out.report.pixel_for_pixel) warn_about_cut(spec, out.report, progress);
+    out.surveys.reserve(surveys.size());
     progress.begin("smoothing to the common beam", static_cast<std::int64_t>(surveys.size()));
     for (std::size_t i = 0; i < surveys.size(); ++i) {
         const SurveySpec& one = spec.surveys[i];

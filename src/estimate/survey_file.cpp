@@ -139,7 +139,7 @@ SurveysSpec make_surveys(const std::string& text, const std::filesystem::path& f
     spec.curvature = top.boolean("curvature").value_or(false);
     spec.fit_zero_levels = top.boolean("fit_zero_levels").value_or(false);
     spec.scatter_nside = read_nside(top, "scatter_nside", spec.nside > 0 ? spec.nside : 1);
-    for (TomlReader& reader : top.tables("survey"))
+    for (const TomlReader& reader : top.tables("survey"))
         spec.surveys.push_back(read_survey(reader, file.parent_path()));
     top.check_no_other_keys();
     if (!reference) top.fail_missing("reference_frequency", "reference_frequency = \"1 GHz\"");

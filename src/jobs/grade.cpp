@@ -79,6 +79,7 @@ void check_room(const GradeOptions& options, const GradeSource& source, const He
 std::vector<std::vector<double>> read_maps(const GradeOptions& options, const GradeSource& source,
                                            const HealpixGrid& grid, Progress& progress) {
     std::vector<std::vector<double>> maps;
+    maps.reserve(source.channels.size());
     progress.begin("reading the channels", static_cast<std::int64_t>(source.channels.size()));
     for (std::size_t c = 0; c < source.channels.size(); ++c) {
         maps.push_back(read_grade_channel(source, options, c, grid));

@@ -5,7 +5,6 @@
 #include <array>
 #include <cmath>
 #include <cstdio>
-#include <cstdlib>
 
 #include "base/constants.h"
 #include "base/error.h"
@@ -215,6 +214,8 @@ GradeSource make_run(const GradeOptions& options, Progress& progress) {
             channel.beam_window.reset();
             channel.beam_fwhm = options.common_beam;
         }
+    if (study.unit.kind == BrightnessUnit::Kind::JanskyPerPixel)
+        progress.notice("Jy/pixel is that of pixels of nside " + std::to_string(study.nside));
     source.temporary = std::make_unique<TemporaryRun>();
     source.folder = source.temporary->path() / "run";
     const Plan plan = make_plan({study, source.folder, std::nullopt, false});
@@ -260,19 +261,6 @@ std::vector<double> smooth_to_common(const SkyMap& map, const Channel& channel, 
 
 }  // namespace
 
-TemporaryRun::TemporaryRun() {
-    std::string name = (fs::temp_directory_path() / "foreglow-grade-XXXXXX").string();
-    if (::mkdtemp(name.data()) == nullptr)
-        throw FileError("cannot make a folder in " + fs::temp_directory_path().string() +
-                        ": set TMPDIR to one that can be written to");
-    path_ = name;
-}
-
-TemporaryRun::~TemporaryRun() {
-    std::error_code ignored;
-    fs::remove_all(path_, ignored);
-}
-
 GradeSource open_grade_source(const GradeOptions& options, Progress& progress) {
     std::error_code code;
     if (!fs::exists(options.source, code))
@@ -288,6 +276,9 @@ GradeSource open_grade_source(const GradeOptions& options, Progress& progress) {
     if (is_run && options.nside && *options.nside > source.study.nside)
         throw InputError("--nside " + std::to_string(*options.nside) + " is finer than the run's " +
                          std::to_string(source.study.nside) + ": grade on its own grid or a coarser one");
+    if (source.study.remove_monopole && options.recovered.empty())
+        progress.warn(
+            "the maps have their monopoles removed, so that what is left of a channel is no power law");
     add_noise(source);
     return source;
 }

@@ -10,6 +10,7 @@
 #include "base/progress.h"
 #include "base/quantity.h"
 #include "jobs/grade.h"
+#include "jobs/temporary_run.h"
 #include "model/channel.h"
 #include "model/study_spec.h"
 #include "sphere/sky_map.h"
@@ -21,20 +22,6 @@ struct GradeChannel {
     Channel channel;
     std::filesystem::path map;
     std::optional<double> noise;  ///< rms per pixel of the study's grid, in the study's unit
-};
-
-/// A folder of its own among the temporary ones, taken away with all that is in it.
-class TemporaryRun {
-  public:
-    /// @throws FileError where none can be made
-    TemporaryRun();
-    ~TemporaryRun();
-    TemporaryRun(const TemporaryRun&) = delete;
-    TemporaryRun& operator=(const TemporaryRun&) = delete;
-    [[nodiscard]] const std::filesystem::path& path() const { return path_; }
-
-  private:
-    std::filesystem::path path_;
 };
 
 /// The maps that are graded, and what they mean.

@@ -35,6 +35,8 @@ void check_inputs_stay(const SurveysSpec& spec, const fs::path& out) {
 
 IndexFitSetup make_setup(const IndexResult& result) {
     IndexFitSetup setup;
+    setup.log_ratios.reserve(result.smoothed.surveys.size());
+    setup.calibration_errors.reserve(result.smoothed.surveys.size());
     for (const SmoothedSurvey& survey : result.smoothed.surveys) {
         setup.log_ratios.push_back(log_frequency_ratio(survey.frequency, result.spec.reference_frequency));
         setup.calibration_errors.push_back(survey.calibration_error);

@@ -237,8 +237,7 @@ void add_format(CLI::App& command, RowFormat& format) {
     command.add_option_function<std::string>("--format", choose, "of the rows: table, csv or json");
 }
 
-constexpr const char* index_examples = R"(
-Examples:
+constexpr const char* index_examples = R"(Examples:
   foreglow index surveys.toml --out index
       reads the surveys that the file names, and leaves index/index.fits, ready to be an
       [index] map, amplitude.fits, scatter.csv (the T-T estimate by cell) and run.json.
@@ -261,8 +260,7 @@ Examples:
       the same values; errors of the noise alone, as wanted for the scatter between pixels.
 index is beta of T ~ nu^beta (brightness temperature); errors are one sigma.)";
 
-constexpr const char* grade_examples = R"(
-Examples:
+constexpr const char* grade_examples = R"(Examples:
   foreglow grade array-out --terms 4
       what remains of each channel of that run after the best smooth fit of 1, 2, 3, 4 terms
       in ln(nu) in every pixel: rows here, residual maps and spectra in array-out/grade.

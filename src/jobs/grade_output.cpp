@@ -55,7 +55,7 @@ void GradeOutput::add_spectrum(const std::string& map, const std::string& column
         spectra_.add({map, column, cut, static_cast<std::int64_t>(l), residual[l], truth[l]});
 }
 
-void GradeOutput::finish(const ResultRows& rows, const std::string& kind, const Progress& progress) {
+void GradeOutput::finish(const ResultRows& rows, const std::string& kind, Progress& progress) {
     if (!folder_) return;
     write_text_file(folder_->prepare("rows.csv"), rows.text(RowFormat::Csv));
     write_text_file(folder_->prepare("spectra.csv"), spectra_.text(RowFormat::Csv));
@@ -85,6 +85,7 @@ void GradeOutput::finish(const ResultRows& rows, const std::string& kind, const 
         {"timings", describe_timings(progress)}};
     write_text_file(folder_->prepare("run.json"), write_json(manifest));
     folder_->keep();
+    progress.notice("residual maps, spectra.csv, rows.csv and run.json are in " + folder_->path().string());
 }
 
 PixelSelection read_grade_mask(const fs::path& path, const HealpixGrid& grid, Frame frame,

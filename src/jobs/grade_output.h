@@ -32,7 +32,7 @@ class GradeOutput {
     void add_spectrum(const std::string& map, const std::string& column, double cut,
                       std::span<const double> residual, std::span<const double> truth);
     /// Writes rows.csv, spectra.csv and, last, run.json.
-    void finish(const ResultRows& rows, const std::string& kind, const Progress& progress);
+    void finish(const ResultRows& rows, const std::string& kind, Progress& progress);
 
   private:
     const GradeOptions& options_;

@@ -121,6 +121,7 @@ IndexSummary run_index(const IndexOptions& options, Progress& progress) {
     progress.end();
     write_text_file(folder.prepare("run.json"), make_index_manifest(result, outputs, folder, progress));
     folder.keep();
+    progress.notice("index.fits, amplitude.fits, scatter.csv and run.json are in " + out.string());
     return {out, make_rows(result, options.format)};
 }
 

@@ -19,6 +19,12 @@ constexpr double degree = 3.141592653589793238462643383279502884 / 180.0;
 constexpr std::array<UnitScale, 4> angle_units{
     {{"deg", degree}, {"arcmin", degree / 60.0}, {"arcsec", degree / 3600.0}, {"rad", 1.0}}};
 
+constexpr std::array<UnitScale, 5> energy_units{
+    {{"GeV", 1.0}, {"TeV", 1e3}, {"MeV", 1e-3}, {"keV", 1e-6}, {"eV", 1e-9}}};
+constexpr std::array<UnitScale, 6> field_units{
+    {{"uG", 1.0}, {"nG", 1e-3}, {"mG", 1e3}, {"G", 1e6}, {"nT", 10.0}, {"T", 1e10}}};
+constexpr std::array<UnitScale, 4> time_units{{{"Myr", 1.0}, {"Gyr", 1e3}, {"kyr", 1e-3}, {"yr", 1e-6}}};
+
 template <std::size_t N>
 double scale_of(const std::array<UnitScale, N>& units, const NumberWithUnit& quantity,
                 const std::string& example) {
@@ -57,6 +63,30 @@ Frequency parse_frequency(std::string_view text) {
 Angle parse_angle(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     return Angle::from_radians(quantity.value * scale_of(angle_units, quantity, "40 arcmin"));
+}
+
+double parse_energy_GeV(std::string_view text) {
+    const NumberWithUnit quantity = parse_number_with_unit(text);
+    const double value = quantity.value * scale_of(energy_units, quantity, "10 GeV");
+    if (!(value >= 1e-3 && value <= 1e9))
+        throw InputError("must be from 1 MeV to 1e6 TeV, but is '" + std::string(text) + "'");
+    return value;
+}
+
+double parse_field_uG(std::string_view text) {
+    const NumberWithUnit quantity = parse_number_with_unit(text);
+    const double value = quantity.value * scale_of(field_units, quantity, "5 uG");
+    if (!(value >= 1e-3 && value <= 1e6))
+        throw InputError("must be from 1 nG to 1 G, but is '" + std::string(text) + "'");
+    return value;
+}
+
+double parse_time_Myr(std::string_view text) {
+    const NumberWithUnit quantity = parse_number_with_unit(text);
+    const double value = quantity.value * scale_of(time_units, quantity, "50 Myr");
+    if (!(value >= 0 && value <= 1e5))
+        throw InputError("must be from 0 to 100 Gyr, but is '" + std::string(text) + "'");
+    return value;
 }
 
 std::string to_text(Frequency frequency) {

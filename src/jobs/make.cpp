@@ -13,6 +13,7 @@
 #include "jobs/manifest.h"
 #include "jobs/output_folder.h"
 #include "model/detailed_sky.h"
+#include "model/electron_sky.h"
 #include "model/load_sky.h"
 
 namespace foreglow {
@@ -129,6 +130,8 @@ MakeSummary run_make(MakeOptions options, Progress& progress) {
     OutputFolder folder(plan.out, replace);
     MakeResult result;
     const SkyModel first = make_realizations(plan, sky, folder, progress, result);
+    result.electrons = first.electrons;
+    if (const std::string clamped = describe_clamped_pixels(first); !clamped.empty()) progress.warn(clamped);
     warn_about_result(plan, result, progress);
     warn_about_ringing(plan, first, result, progress);
     progress.begin("writing the report");

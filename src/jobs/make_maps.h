@@ -37,10 +37,11 @@ struct MakeResult {
     std::vector<Preview> previews;         ///< of a few channels
     HarmonicReport harmonic;               ///< of the channels with beams
     bool has_harmonic = false;
-    std::vector<std::string> outputs;    ///< names within the output folder, in order
-    std::vector<std::string> labels;     ///< the sky's own cautions
-    std::optional<DetailReport> detail;  ///< where the model has one
-    DetailCounts detail_counts;          ///< of the first realization
+    std::vector<std::string> outputs;      ///< names within the output folder, in order
+    std::vector<std::string> labels;       ///< the sky's own cautions
+    std::optional<DetailReport> detail;    ///< where the model has one
+    DetailCounts detail_counts;            ///< of the first realization
+    std::optional<ElectronSky> electrons;  ///< likewise, where the model has them
 };
 
 /// Makes and writes the maps of all channels for some of the plan's realizations, which are the same sky.

@@ -11,7 +11,6 @@
 #include "jobs/map_cards.h"
 #include "jobs/map_pieces.h"
 #include "model/pixel_route.h"
-#include "physics/spectral_law.h"
 #include "sphere/regrid.h"
 #include "sphere/rotation.h"
 
@@ -33,17 +32,37 @@ void write_pieces(const HealpixGrid& grid, const RingStrip& strip, MapFile& file
     });
 }
 
-// Q and U as the same law gives them at the intensity's reference frequency.
-void carry_to_reference(const SkyModel& sky, SkyStrip& values) {
-    const double log_ratio = log_frequency_ratio(sky.reference, sky.polarization->reference);
-    if (log_ratio == 0) return;
-    for (std::size_t i = 0; i < values.q.size(); ++i) {
-        const double factor = std::exp(
-            log_brightness_ratio({values.polarized_index[i], values.polarized_curvature[i]}, log_ratio));
-        values.q[i] *= factor;
-        values.u[i] *= factor;
+/// Brings strips to what the truth files show: Q and U as their law gives them at the intensity's reference
+/// frequency, the law's local index and curvature there.
+class TruthAtReference {
+  public:
+    TruthAtReference(const SkyModel& sky, bool polarized) : sky_(sky) {
+        if (polarized && !(sky.polarization->reference == sky.reference))
+            carry_.emplace(polarized_law(sky), BandSum{{sky.reference.hz()}, {1.0}}, truth_tolerance);
     }
-}
+    void apply(SkyStrip& values) const {
+        if (carry_) {
+            parallel_for_blocks(
+                static_cast<std::int64_t>(values.q.size()), 65536, [&](std::int64_t begin, std::int64_t end) {
+                    carry(values, static_cast<std::size_t>(begin), static_cast<std::size_t>(end - begin));
+                });
+        }
+        add_local_spectrum(sky_, values);
+    }
+
+  private:
+    void carry(SkyStrip& values, std::size_t first, std::size_t count) const {
+        std::vector<double> factor(count);
+        carry_->evaluate(values.polarized_columns().part(first, count), factor);
+        for (std::size_t i = 0; i < count; ++i) {
+            values.q[first + i] *= factor[i];
+            values.u[first + i] *= factor[i];
+        }
+    }
+
+    const SkyModel& sky_;
+    std::optional<BandFactor> carry_;
+};
 
 std::string truth_name(const Plan& plan, const std::string& what, std::optional<int> realization) {
     return "truth/" + (realization ? map_stem(plan, what, *realization) : what) + ".fits";
@@ -103,7 +122,7 @@ SkyStrip turn_sky(const Plan& plan, const SkyModel& sky) {
     const StudySpec& study = plan.study;
     const RingStrip whole{0, sky.grid.ring_count(), false};
     SkyStrip values = make_sky_strip(sky, whole, study.polarized);
-    if (study.polarized) carry_to_reference(sky, values);
+    TruthAtReference(sky, study.polarized).apply(values);
     const auto turn_plain = [&](std::vector<double>& column) {
         if (column.empty()) return;
         column = interpolate({sky.grid, sky.frame, "", std::move(column)}, sky.grid, study.frame).values;
@@ -199,10 +218,11 @@ void write_truth_maps(const Plan& plan, const SkyModel& sky, std::optional<int> 
         SkyStrip turned = turn_sky(plan, sky);
         files.write(sky.grid, {0, sky.grid.ring_count(), false}, turned);
     } else {
+        const TruthAtReference at_reference(sky, plan.study.polarized);
         for (const RingStrip& strip : cut_into_strips(sky.grid, strip_pixels)) {
             check_interrupt();
             SkyStrip values = make_sky_strip(sky, strip, plan.study.polarized);
-            if (plan.study.polarized) carry_to_reference(sky, values);
+            at_reference.apply(values);
             files.write(sky.grid, strip, values);
         }
     }

@@ -23,6 +23,14 @@ void add_value(const ValueOrMap& value, std::vector<fs::path>& inputs) {
     if (const auto* source = std::get_if<MapSource>(&value)) inputs.push_back(source->path);
 }
 
+// Over which slopes the sky's electrons range, and how many indices were out of reach.
+JsonValue describe_electrons(const ElectronSky& electrons) {
+    const Interval& slope = electrons.shape->range().slope;
+    return JsonValue::Object{{"lowest_slope", slope.low},
+                             {"highest_slope", slope.high},
+                             {"clamped_pixels", electrons.clamped_pixels}};
+}
+
 JsonValue describe_channels(const Plan& plan, const MakeResult& result) {
     JsonValue::Array array;
     for (std::size_t c = 0; c < plan.channels.size(); ++c) {
@@ -93,6 +101,11 @@ std::vector<fs::path> list_plan_inputs(const Plan& plan) {
     if (model.intensity) inputs.push_back(model.intensity->map.path);
     add_value(model.index.value, inputs);
     add_value(model.curvature, inputs);
+    if (model.electrons) {
+        add_source(model.electrons->field_map, inputs);
+        add_source(model.electrons->break_energy_map, inputs);
+        add_source(model.electrons->cutoff_energy_map, inputs);
+    }
     if (model.polarization && plan.study.polarized) {
         add_source(model.polarization->map, inputs);
         add_source(model.polarization->angle_map, inputs);
@@ -116,29 +129,29 @@ std::string make_manifest(const Plan& plan, const MakeResult& result, const Prog
     JsonValue::Array realizations;
     for (const int r : plan.realizations)
         realizations.emplace_back(r);
-    JsonValue::Object manifest{
-        {"program", "Foreglow"},
-        {"version", version()},
-        {"build", build_description()},
-        {"title", plan.study.title},
-        {"sky_notes", describe_texts(result.labels)},
-        {"seed", plan.study.seed},
-        {"realizations", std::move(realizations)},
-        {"nside", plan.study.nside},
-        {"lmax", plan.study.lmax},
-        {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
-        {"conventions", describe_conventions(plan.study)},
-        {"accuracy", describe_accuracy(plan, result)},
-        {"channels", describe_channels(plan, result)},
-        {"warnings", describe_texts_without_folders(progress.warnings(), inputs)},
-        {"notices", describe_texts_without_folders(progress.notices(), inputs)},
-        {"inputs", describe_input_files(inputs)},
-        {"outputs", describe_output_files(plan.out, result.outputs, with_sha256)},
-        {"threads", thread_count()},
-        {"timings", describe_timings(progress)},
-        {"study", without_absolute_paths(plan.study.source)},
-        {"model", without_absolute_paths(plan.model.source)}};
+    JsonValue::Object manifest{{"program", "Foreglow"},
+                               {"version", version()},
+                               {"build", build_description()},
+                               {"title", plan.study.title},
+                               {"sky_notes", describe_texts(result.labels)},
+                               {"seed", plan.study.seed},
+                               {"realizations", std::move(realizations)},
+                               {"nside", plan.study.nside},
+                               {"lmax", plan.study.lmax},
+                               {"reference_frequency_Hz", plan.model.reference_frequency.hz()},
+                               {"conventions", describe_conventions(plan.study)},
+                               {"accuracy", describe_accuracy(plan, result)},
+                               {"channels", describe_channels(plan, result)},
+                               {"warnings", describe_texts_without_folders(progress.warnings(), inputs)},
+                               {"notices", describe_texts_without_folders(progress.notices(), inputs)},
+                               {"inputs", describe_input_files(inputs)},
+                               {"outputs", describe_output_files(plan.out, result.outputs, with_sha256)},
+                               {"threads", thread_count()},
+                               {"timings", describe_timings(progress)},
+                               {"study", without_absolute_paths(plan.study.source)},
+                               {"model", without_absolute_paths(plan.model.source)}};
     if (result.detail) manifest.emplace_back("detail", describe_detail(plan, result));
+    if (result.electrons) manifest.emplace_back("electrons", describe_electrons(*result.electrons));
     return write_json(manifest);
 }
 

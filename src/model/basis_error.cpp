@@ -48,17 +48,7 @@ struct Sampled {
     LawPoints points;
     std::vector<double> first, second;  // I and nothing, or Q and U
     std::vector<std::array<double, 4>> functions;
-
-    void add(const LawColumns& columns, std::size_t p) {
-        if (!columns.index.empty()) points.index.push_back(columns.index[p]);
-        if (!columns.curvature.empty()) points.curvature.push_back(columns.curvature[p]);
-    }
 };
-
-bool is_defined_at(const LawColumns& columns, std::size_t p) {
-    const auto good = [p](std::span<const double> column) { return column.empty() || is_defined(column[p]); };
-    return good(columns.index) && good(columns.curvature);
-}
 
 // error[p] and truth[p] of one channel for unit amplitude.
 struct Compared {
@@ -108,16 +98,16 @@ BasisErrors measure_basis_errors(const SkyModel& sky, const std::vector<Channel>
     Sampled of_intensity;
     Sampled of_polarization;
     for (std::size_t p = 0; p < values.intensity.size(); ++p) {
-        if (is_defined(values.intensity[p]) && is_defined_at(columns, p)) {
-            of_intensity.add(columns, p);
+        if (is_defined(values.intensity[p]) && columns.is_defined_at(p)) {
+            of_intensity.points.add(columns, p);
             of_intensity.first.push_back(values.intensity[p]);
             const Vector3& n = sample.directions[p];
             of_intensity.functions.push_back({1.0, n[0], n[1], n[2]});
         }
         if (polarized == nullptr) continue;
         const LawColumns own = values.polarized_columns();
-        if (!is_defined(values.q[p] + values.u[p]) || !is_defined_at(own, p)) continue;
-        of_polarization.add(own, p);
+        if (!is_defined(values.q[p] + values.u[p]) || !own.is_defined_at(p)) continue;
+        of_polarization.points.add(own, p);
         of_polarization.first.push_back(values.q[p]);
         of_polarization.second.push_back(values.u[p]);
     }

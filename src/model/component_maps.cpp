@@ -95,6 +95,10 @@ SkySample make_sky_sample(const SkyModel& sky, std::int64_t count, bool with_pol
         append_every(sample.values.intensity, values.intensity, places);
         append_every(sample.values.index, values.index, places);
         append_every(sample.values.curvature, values.curvature, places);
+        append_every(sample.values.slope, values.slope, places);
+        append_every(sample.values.field, values.field, places);
+        append_every(sample.values.break_energy, values.break_energy, places);
+        append_every(sample.values.cutoff_energy, values.cutoff_energy, places);
         append_every(sample.values.q, values.q, places);
         append_every(sample.values.u, values.u, places);
         append_every(sample.values.polarized_index, values.polarized_index, places);

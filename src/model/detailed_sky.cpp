@@ -11,9 +11,9 @@
 #include "base/text.h"
 #include "model/detail_intensity.h"
 #include "model/detail_modulation.h"
+#include "model/electron_sky.h"
 #include "model/sketch_sky.h"
 #include "model/sky_region.h"
-#include "physics/spectral_law.h"
 #include "sphere/harmonics.h"
 
 namespace foreglow {
@@ -63,11 +63,6 @@ PixelField add_scatter(const PixelField& field, const ScatterSpec& scatter, Draw
     return PixelField::of_map(std::move(map));
 }
 
-// T(nu_pol) / T(nu0) of a pixel of the intensity.
-double carry(const SkyStrip& values, std::size_t i, double log_ratio) {
-    return std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
-}
-
 }  // namespace
 
 class DetailedSky::Impl {
@@ -102,6 +97,7 @@ class DetailedSky::Impl {
         if (curvature_scatter_)
             sky.curvature = add_scatter(base_.curvature, *curvature_scatter_, DrawnField::Curvature,
                                         report_.lmax, base_, key);
+        if (index_scatter_ && sky.electrons) find_electron_slopes(sky);
         if (!spec_) return sky;
         DetailCounts found;
         sky.intensity = PixelField::of_map(intensity_->realize(key, found.not_positive));
@@ -228,8 +224,7 @@ class DetailedSky::Impl {
 
     // Counts, and scales back where the model says so, pixels more polarized than electrons can make them.
     void check_fraction(const SkyModel& sky, StokesMaps& maps, DetailCounts& counts) const {
-        const double log_ratio = log_frequency_ratio(sky.polarization->reference, sky.reference);
-        if (log_ratio == 0) {
+        if (sky.polarization->reference == sky.reference) {
             const auto intensity = sky.intensity.map();
             const std::span<const double> values = intensity->values;
             counts.too_polarized +=
@@ -238,10 +233,11 @@ class DetailedSky::Impl {
         }
         for (const RingStrip& strip : cut_into_strips(sky.grid, std::int64_t{1} << 22)) {
             const SkyStrip values = make_sky_strip(sky, strip, false);
+            const std::vector<double> there =
+                make_brightness_ratios(sky, values, sky.polarization->reference);
             for (const PixelRange& range : pixel_ranges(sky.grid, strip))
-                counts.too_polarized += cap_pixels(range, maps, [&](std::size_t at) {
-                    return values.intensity[at] * carry(values, at, log_ratio);
-                });
+                counts.too_polarized +=
+                    cap_pixels(range, maps, [&](std::size_t at) { return values.intensity[at] * there[at]; });
         }
     }
 

@@ -7,6 +7,7 @@
 #include "base/error.h"
 #include "base/text.h"
 #include "model/detailed_sky.h"
+#include "model/electron_sky.h"
 #include "model/map_source.h"
 #include "model/sketch_sky.h"
 #include "physics/spectral_law.h"
@@ -121,6 +122,34 @@ PolarizedSky load_polarization(const ModelSpec& model, SkyModel& sky, int lmax, 
     return polarized;
 }
 
+void check_polarization_of(const ModelSpec& model, bool with_polarization) {
+    if (with_polarization && model.electrons && model.electrons->law.geometry == FieldGeometry::Tangled)
+        throw InputError("the study asks for IQU but the field of [electrons] in the model " + model.name +
+                         " is tangled, which leaves no polarization: set `stokes = \"I\"` or geometry = "
+                         "\"ordered\"");
+}
+
+// Maps of field and energies on a finer grid are coarsened by means weighted with the brightness, as indices.
+void add_electrons(const ModelSpec& model, SkyModel& sky, const SkyMap* brightness, Progress& progress) {
+    const ElectronsSpec& spec = *model.electrons;
+    ElectronSky& electrons = sky.electrons.emplace();
+    electrons.law = spec.law;
+    electrons.definition = model.index.frequency.value_or(sky.reference);
+    if (model.index.between) electrons.definition = *model.index.between;
+    const SkyMap level{
+        sky.grid, sky.frame, "",
+        std::vector<double>(brightness != nullptr ? 0 : static_cast<std::size_t>(sky.grid.npix()), 1.0)};
+    const auto bring = [&](const std::optional<MapSource>& source, std::optional<PixelField>& field) {
+        if (source)
+            field = bring_plain(read_plain_map(*source, progress), sky.grid, sky.frame,
+                                brightness != nullptr ? *brightness : level);
+    };
+    bring(spec.field_map, electrons.field);
+    bring(spec.break_energy_map, electrons.break_energy);
+    bring(spec.cutoff_energy_map, electrons.cutoff_energy);
+    find_electron_slopes(sky);
+}
+
 void check_units(const MapSource& source, const FitsMapHeader& header, std::size_t columns) {
     FOREGLOW_EXPECTS(!header.requested.empty());
     for (std::size_t i = 0; i < std::min(columns, header.requested.size()); ++i)
@@ -153,6 +182,11 @@ class HeaderCheck {
         static_cast<void>(resolve_convention(source, header.convention));
         add(header, header.grid == grid_ && frame == maps_.frame, 2);
     }
+    void electrons(const ElectronsSpec& spec) {
+        add_held(grid_.npix());  // slopes
+        for (const auto* map : {&spec.field_map, &spec.break_energy_map, &spec.cutoff_energy_map})
+            if (*map) plain(**map);
+    }
     void add_held(std::int64_t values) { maps_.held_values += values; }
     [[nodiscard]] ModelMaps result() const { return maps_; }
 
@@ -176,10 +210,15 @@ class HeaderCheck {
 
 ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax,
                            bool with_polarization) {
+    check_polarization_of(model, with_polarization);
     const std::int64_t random = detail_held_values(model, grid, with_polarization);
-    if (model.sketch) return {Frame::Galactic, (with_polarization ? 5 : 3) * grid.npix() + random, 0};
-    FOREGLOW_EXPECTS(model.intensity.has_value());
     HeaderCheck check(grid, lmax);
+    if (model.electrons) check.electrons(*model.electrons);
+    if (model.sketch) {
+        check.add_held((with_polarization ? 5 : 3) * grid.npix() + random);
+        return check.result();
+    }
+    FOREGLOW_EXPECTS(model.intensity.has_value());
     check.intensity(model.intensity->map);
     check.plain(model.index.value);
     check.plain(model.curvature);
@@ -195,8 +234,12 @@ ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int 
 
 SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization,
                   Progress& progress) {
-    if (model.sketch)
-        return make_sketch_sky(*model.sketch, model.reference_frequency, grid, with_polarization);
+    check_polarization_of(model, with_polarization);
+    if (model.sketch) {
+        SkyModel sky = make_sketch_sky(*model.sketch, model.reference_frequency, grid, with_polarization);
+        if (model.electrons) add_electrons(model, sky, nullptr, progress);
+        return sky;
+    }
     SkyModel sky;
     sky.grid = grid;
     sky.reference = model.reference_frequency;
@@ -216,6 +259,7 @@ SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, boo
                              " has no [polarization]: add one, or set `stokes = \"I\"`");
         sky.polarization = load_polarization(model, sky, lmax, intensity, progress);
     }
+    if (model.electrons) add_electrons(model, sky, &intensity, progress);
     sky.intensity = bring_intensity(std::move(intensity), grid, lmax, progress);
     return sky;
 }

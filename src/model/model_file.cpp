@@ -7,6 +7,7 @@
 #include "io/toml_reader.h"
 #include "model/bundled_models.h"
 #include "model/detail_section.h"
+#include "model/electrons_section.h"
 #include "model/model_sections.h"
 #include "model/typed_keys.h"
 
@@ -39,8 +40,26 @@ void add_index_warning(ModelSpec& model) {
 }
 
 struct Sections {
-    std::optional<TomlReader> sketch, intensity, polarization, index, curvature, detail;
+    std::optional<TomlReader> sketch, intensity, polarization, index, curvature, detail, electrons;
 };
+
+/// Refuses what the electrons themselves bring.
+void check_electrons(TomlReader& top, Sections& sections, ModelSpec& model) {
+    if (sections.curvature)
+        top.fail("curvature", "contradicts [electrons], whose spectrum brings its own: keep one of the two");
+    const bool tangled = model.electrons->law.geometry == FieldGeometry::Tangled;
+    if (tangled && sections.polarization)
+        top.fail(
+            "polarization",
+            "contradicts geometry = \"tangled\" in [electrons], a field of all directions that leaves no "
+            "polarization: take one of the two out");
+    if (!model.sketch) return;
+    for (const char* key : {"curvature", "curvature_rms"})
+        if (sections.sketch->has(key))
+            sections.sketch->fail(key, "contradicts [electrons], whose spectrum brings its own: take it out");
+    model.sketch->curvature = 0;
+    model.sketch->curvature_rms = 0;
+}
 
 void check_sections(TomlReader& top, const Sections& sections) {
     if (sections.sketch) {
@@ -101,9 +120,10 @@ ModelSpec make_model(const std::string& text, const std::filesystem::path& file,
     model.source = text;
     model.title = top.text("title", "title = \"Survey at 408 MHz\"").value_or(name);
     const std::optional<Frequency> reference = read_frequency(top, "reference_frequency");
-    Sections sections{top.table("sketch"), top.table("intensity"), top.table("polarization"),
-                      top.table("index"),  top.table("curvature"), top.table("detail")};
-    for (const char* later : {"electrons", "galaxy", "faraday"})
+    Sections sections{top.table("sketch"),   top.table("intensity"), top.table("polarization"),
+                      top.table("index"),    top.table("curvature"), top.table("detail"),
+                      top.table("electrons")};
+    for (const char* later : {"galaxy", "faraday"})
         refuse_for_now(top, later);
     top.check_no_other_keys();
     if (!reference) top.fail_missing("reference_frequency", "reference_frequency = \"408 MHz\"");
@@ -115,6 +135,10 @@ ModelSpec make_model(const std::string& text, const std::filesystem::path& file,
     if (sections.index) model.index = read_index(*sections.index, folder);
     if (sections.curvature)
         model.curvature = read_curvature(*sections.curvature, folder, model.curvature_scatter);
+    if (sections.electrons) {
+        model.electrons = read_electrons(*sections.electrons, folder);
+        check_electrons(top, sections, model);
+    }
     if (sections.detail) {
         model.detail = read_detail(*sections.detail, folder);
         check_detail(*sections.detail, model);

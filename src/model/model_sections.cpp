@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #include "model/model_sections.h"
 
+#include <algorithm>
 #include <cmath>
 #include <limits>
 
@@ -63,28 +64,6 @@ void check_no_map_keys(TomlReader& reader, std::initializer_list<const char*> ke
             reader.fail(key, "says something about a map, but there is no " + without + " here: take it out");
 }
 
-/// Reads `NAME_map`: a path, or an inline table with map, column, hdu, ordering and frame.
-std::optional<MapSource> read_named_map(TomlReader& reader, const std::string& key,
-                                        const std::string& section, const std::filesystem::path& folder) {
-    const TomlValue* value = reader.find(key);
-    if (value == nullptr) return std::nullopt;
-    MapSource source;
-    source.section = section + "." + key;
-    source.place = value->place;
-    if (value->type != TomlValue::Type::Table) {
-        source.path = *read_path(reader, key, folder);
-        return source;
-    }
-    TomlReader inner(*value, key + " of [" + section + "]");
-    const auto path = read_path(inner, "map", folder);
-    source.columns = read_column(inner);
-    add_layout_keys(source, inner);
-    inner.check_no_other_keys();
-    if (!path) inner.fail_missing("map", "map = \"" + key + ".fits\"");
-    source.path = *path;
-    return source;
-}
-
 /// Reads `NAME` (a number) or `NAME_map`; both together contradict each other.
 std::optional<ValueOrMap> read_value_or_map(TomlReader& reader, const std::string& name, double low,
                                             double high, const std::string& example,
@@ -130,8 +109,8 @@ void read_kelvin(TomlReader& reader, const std::string& key, double& kelvin) {
     if (!(kelvin >= 0 && kelvin < 1e12)) reader.fail(key, "must be at least 0 and below 1e12 K_RJ");
 }
 
-/// Turns `between` into the geometric mean: on the curved law the chord's index is the local one there.
-std::optional<Frequency> read_between(TomlReader& reader) {
+/// Reads the two frequencies of `between`, low first.
+std::optional<std::pair<Frequency, Frequency>> read_between(TomlReader& reader) {
     const TomlValue* value = reader.find("between");
     if (value == nullptr) return std::nullopt;
     const std::string wanted = "must be two frequencies, for example between = [\"408 MHz\", \"23 GHz\"]";
@@ -149,10 +128,31 @@ std::optional<Frequency> read_between(TomlReader& reader) {
         ends.push_back(*read_frequency(inner, "between"));
     }
     if (ends[0] == ends[1]) reader.fail("between", "must be two different frequencies");
-    return Frequency::from_hz(std::sqrt(ends[0].hz()) * std::sqrt(ends[1].hz()));
+    return std::pair(std::min(ends[0], ends[1]), std::max(ends[0], ends[1]));
 }
 
 }  // namespace
+
+std::optional<MapSource> read_named_map(TomlReader& reader, const std::string& key,
+                                        const std::string& section, const std::filesystem::path& folder) {
+    const TomlValue* value = reader.find(key);
+    if (value == nullptr) return std::nullopt;
+    MapSource source;
+    source.section = section + "." + key;
+    source.place = value->place;
+    if (value->type != TomlValue::Type::Table) {
+        source.path = *read_path(reader, key, folder);
+        return source;
+    }
+    TomlReader inner(*value, key + " of [" + section + "]");
+    const auto path = read_path(inner, "map", folder);
+    source.columns = read_column(inner);
+    add_layout_keys(source, inner);
+    inner.check_no_other_keys();
+    if (!path) inner.fail_missing("map", "map = \"" + key + ".fits\"");
+    source.path = *path;
+    return source;
+}
 
 SketchSpec read_sketch(TomlReader reader) {
     SketchSpec sketch;
@@ -254,7 +254,12 @@ IndexSpec read_index(TomlReader reader, const std::filesystem::path& folder) {
     const auto between = read_between(reader);
     index.value = read_value_section(reader, "index", -10, 10, "-2.9", folder);
     if (frequency && between) reader.fail("between", "contradicts 'frequency': keep one of the two");
-    index.frequency = frequency ? frequency : between;
+    index.between = between;
+    index.frequency = frequency;
+    // On the curved law the chord's index is the local one at the geometric mean.
+    if (between)
+        index.frequency =
+            Frequency::from_hz(std::sqrt(between->first.hz()) * std::sqrt(between->second.hz()));
     return index;
 }
 

@@ -23,4 +23,9 @@ namespace foreglow {
 /// unit.
 void read_map_layout(TomlReader& reader, MapSource& source);
 
+/// Reads `NAME_map`: a path, or an inline table with map, column, hdu, ordering and frame.
+[[nodiscard]] std::optional<MapSource> read_named_map(TomlReader& reader, const std::string& key,
+                                                      const std::string& section,
+                                                      const std::filesystem::path& folder);
+
 }  // namespace foreglow

@@ -11,6 +11,7 @@
 #include "base/quantity.h"
 #include "model/detail_spec.h"
 #include "physics/brightness_unit.h"
+#include "physics/electron_law.h"
 #include "sphere/frame.h"
 #include "sphere/grid.h"
 
@@ -68,7 +69,14 @@ struct IndexSpec {
     ValueOrMap value = -3.0;
     std::optional<Frequency> frequency;  ///< where it holds, if not at the reference frequency;
                                          ///< `between` is turned into the geometric mean
-    std::optional<ScatterSpec> scatter;  ///< added to it, at the frequency where it holds
+    std::optional<std::pair<Frequency, Frequency>> between;  ///< the chord's ends, low first
+    std::optional<ScatterSpec> scatter;                      ///< added to it, at the frequency where it holds
+};
+
+/// The electrons behind the indices; a map stands for the law's one value.
+struct ElectronsSpec {
+    ElectronLaw law;
+    std::optional<MapSource> field_map, break_energy_map, cutoff_energy_map;  ///< in uG and GeV
 };
 
 /// A model as written, every key checked by itself and against the others.
@@ -84,8 +92,9 @@ struct ModelSpec {
     IndexSpec index;
     ValueOrMap curvature = 0.0;
     std::optional<ScatterSpec> curvature_scatter;
-    std::optional<DetailSpec> detail;   ///< structure below the template's beam
-    std::vector<std::string> warnings;  ///< e.g. an index that looks like one of flux
+    std::optional<ElectronsSpec> electrons;  ///< instead of a curvature
+    std::optional<DetailSpec> detail;        ///< structure below the template's beam
+    std::vector<std::string> warnings;       ///< e.g. an index that looks like one of flux
 };
 
 /// Tells whether a study's seed and realizations matter to a model.

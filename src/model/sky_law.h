@@ -7,6 +7,7 @@
 
 #include "math/least_squares.h"
 #include "physics/band_law.h"
+#include "physics/electron_band.h"
 #include "physics/response.h"
 
 // The seam between skies and channels. A sky's pixels follow a law (SkyLaw), whose numbers in each pixel are
@@ -28,21 +29,38 @@ struct CurvedSkyLaw {
     ParameterRange range;
 };
 
-using SkyLaw = std::variant<CurvedSkyLaw>;
+/// The exact spectrum of an electron distribution, with the bounds of what its pixels differ in.
+struct ElectronSkyLaw {
+    Frequency reference;
+    ElectronLaw law;
+    ElectronRange range;
+    EmissionPart part = EmissionPart::Total;  ///< Polarized for Q and U
+};
+
+using SkyLaw = std::variant<CurvedSkyLaw, ElectronSkyLaw>;
 
 /// What the law of some pixels is made of, [n] each; NaN where undefined.
 struct LawColumns {
-    std::span<const double> index, curvature;
+    std::span<const double> index, curvature;  ///< of the curved law
+    ElectronColumns electrons;                 ///< of the electron law
 
-    [[nodiscard]] std::size_t size() const { return index.size(); }
+    [[nodiscard]] std::size_t size() const {
+        return electrons.slope.empty() ? index.size() : electrons.slope.size();
+    }
+    /// Tells whether no column of a pixel is undefined.
+    [[nodiscard]] bool is_defined_at(std::size_t pixel) const;
     [[nodiscard]] LawColumns part(std::size_t first, std::size_t count) const;
 };
 
 /// Columns that own their numbers.
 struct LawPoints {
-    std::vector<double> index, curvature;
+    std::vector<double> index, curvature, slope, field, break_energy, cutoff_energy;
 
-    [[nodiscard]] LawColumns columns() const { return {index, curvature}; }
+    [[nodiscard]] LawColumns columns() const {
+        return {index, curvature, {slope, field, break_energy, cutoff_energy}};
+    }
+    /// Appends one pixel's numbers.
+    void add(const LawColumns& columns, std::size_t pixel);
 };
 
 /// A band's number per unit amplitude as a fast function of a law's columns.
@@ -61,10 +79,11 @@ class BandFactor {
                   ExpPrecision precision = ExpPrecision::Double) const;
 
   private:
-    std::variant<BandLaw> fast_;
+    std::variant<BandLaw, ElectronBandLaw> fast_;
 };
 
-/// Computes bands of some pixels of unit amplitude by the sums themselves, slowly.
+/// Computes bands of some pixels of unit amplitude: of the curved law by the sums themselves, slowly; of
+/// electrons by an ElectronBandLaw of tolerance 1e-10, which its tests hold against the sums.
 /// @return [pixels][bands]
 [[nodiscard]] Matrix exact_band_values(const SkyLaw& law, const std::vector<BandSum>& bands,
                                        const LawColumns& pixels);

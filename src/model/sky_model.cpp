@@ -40,12 +40,10 @@ void scale_to_fraction(const SkyModel& sky, const RingStrip& strip, SkyStrip& va
     const PolarizedSky& polarized = *sky.polarization;
     std::vector<double> fraction(values.q.size());
     polarized.fraction->evaluate(sky.grid, strip, fraction);
-    const double log_ratio = log_frequency_ratio(polarized.reference, sky.reference);
+    const std::vector<double> there = make_brightness_ratios(sky, values, polarized.reference);
     for (std::size_t i = 0; i < fraction.size(); ++i) {
-        const double there =
-            std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
         const double length = std::hypot(values.q[i], values.u[i]);
-        const double factor = fraction[i] * values.intensity[i] * there / length;
+        const double factor = fraction[i] * values.intensity[i] * there[i] / length;
         values.q[i] *= factor;
         values.u[i] *= factor;
     }
@@ -53,6 +51,7 @@ void scale_to_fraction(const SkyModel& sky, const RingStrip& strip, SkyStrip& va
 
 void add_polarized_law(const SkyModel& sky, const RingStrip& strip, SkyStrip& values) {
     const PolarizedSky& polarized = *sky.polarization;
+    if (sky.electrons && !polarized.index) return;  // the same electrons
     const std::size_t n = values.q.size();
     values.polarized_index.resize(n);
     values.polarized_curvature.assign(n, 0.0);
@@ -65,6 +64,23 @@ void add_polarized_law(const SkyModel& sky, const RingStrip& strip, SkyStrip& va
         values.polarized_index[i] = local_index({values.index[i], values.curvature[i]}, log_ratio);
         values.polarized_curvature[i] = values.curvature[i];
     }
+}
+
+void add_electrons(const SkyModel& sky, const RingStrip& strip, SkyStrip& values) {
+    const ElectronSky& electrons = *sky.electrons;
+    values.slope.resize(values.intensity.size());
+    electrons.slope.evaluate(sky.grid, strip, values.slope);
+    for (const auto& [map, column] : {std::pair(&electrons.field, &values.field),
+                                      {&electrons.break_energy, &values.break_energy},
+                                      {&electrons.cutoff_energy, &values.cutoff_energy}}) {
+        if (!*map) continue;
+        column->resize(values.slope.size());
+        (*map)->evaluate(sky.grid, strip, *column);
+    }
+}
+
+SkyLaw electron_law(const SkyModel& sky, Frequency reference, EmissionPart part) {
+    return ElectronSkyLaw{reference, sky.electrons->law, sky.electrons->shape->range(), part};
 }
 
 // Bounds of beta + f c over beta and c in their own bounds.
@@ -80,12 +96,16 @@ SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_p
     const auto n = static_cast<std::size_t>(pixel_count(sky.grid, strip));
     SkyStrip values;
     values.intensity.resize(n);
-    values.index.resize(n);
-    values.curvature.resize(n);
     sky.intensity.evaluate(sky.grid, strip, values.intensity);
-    sky.index.evaluate(sky.grid, strip, values.index);
-    sky.curvature.evaluate(sky.grid, strip, values.curvature);
-    if (sky.index_log_ratio != 0)
+    if (sky.electrons) {
+        add_electrons(sky, strip, values);
+    } else {
+        values.index.resize(n);
+        values.curvature.resize(n);
+        sky.index.evaluate(sky.grid, strip, values.index);
+        sky.curvature.evaluate(sky.grid, strip, values.curvature);
+    }
+    if (sky.index_log_ratio != 0 && !sky.electrons)
         parallel_for_blocks(static_cast<std::int64_t>(n), block, [&](std::int64_t begin, std::int64_t end) {
             for (auto i = static_cast<std::size_t>(begin); i < static_cast<std::size_t>(end); ++i)
                 values.index[i] =
@@ -117,16 +137,47 @@ ParameterRange polarized_parameter_range(const SkyModel& sky) {
                    2 * (log_ratio - sky.index_log_ratio));
 }
 
+void add_local_spectrum(const SkyModel& sky, SkyStrip& strip) {
+    if (!sky.electrons) return;
+    strip.index.resize(strip.slope.size());
+    strip.curvature.resize(strip.slope.size());
+    parallel_for_blocks(
+        static_cast<std::int64_t>(strip.slope.size()), block, [&](std::int64_t begin, std::int64_t end) {
+            const auto from = static_cast<std::size_t>(begin);
+            const auto n = static_cast<std::size_t>(end - begin);
+            sky.electrons->shape->write_local(strip.intensity_columns().part(from, n).electrons,
+                                              std::span(strip.index).subspan(from, n),
+                                              std::span(strip.curvature).subspan(from, n));
+        });
+}
+
+std::vector<double> make_brightness_ratios(const SkyModel& sky, const SkyStrip& strip, Frequency frequency) {
+    std::vector<double> ratios(strip.intensity.size());
+    if (sky.electrons) {
+        BandFactor(intensity_law(sky), {{frequency.hz()}, {1.0}}, 1e-10)
+            .evaluate(strip.intensity_columns(), ratios);
+        return ratios;
+    }
+    const double log_ratio = log_frequency_ratio(frequency, sky.reference);
+    for (std::size_t i = 0; i < ratios.size(); ++i)
+        ratios[i] = std::exp(log_brightness_ratio({strip.index[i], strip.curvature[i]}, log_ratio));
+    return ratios;
+}
+
 SkyLaw intensity_law(const SkyModel& sky) {
+    if (sky.electrons) return electron_law(sky, sky.reference, EmissionPart::Total);
     return CurvedSkyLaw{sky.reference, parameter_range(sky)};
 }
 
 SkyLaw polarized_law(const SkyModel& sky) {
+    if (sky.electrons && !sky.polarization->index)
+        return electron_law(sky, sky.polarization->reference, EmissionPart::Polarized);
     return CurvedSkyLaw{sky.polarization->reference, polarized_parameter_range(sky)};
 }
 
 bool polarization_shares_law(const SkyModel& sky) {
-    return sky.polarization && !sky.polarization->index && sky.polarization->reference == sky.reference;
+    return sky.polarization && !sky.electrons && !sky.polarization->index &&
+           sky.polarization->reference == sky.reference;
 }
 
 }  // namespace foreglow

@@ -31,12 +31,23 @@ struct PolarizedSky {
     std::optional<Angle> beam_fwhm;
 };
 
-/// What one strip of a sky is made of; each [pixel_count], NaN where undefined; the last four empty without
-/// polarization.
+/// The electrons behind a sky's indices.
+struct ElectronSky {
+    ElectronLaw law;
+    IndexDefinition definition;                                    ///< where the sky's index was measured
+    PixelField slope = PixelField::uniform(2.5);                   ///< within slope_limits
+    std::optional<PixelField> field, break_energy, cutoff_energy;  ///< maps, uG and GeV, instead of the law's
+    std::shared_ptr<const ElectronShape> shape;                    ///< at the sky's reference frequency
+    std::int64_t clamped_pixels = 0;  ///< whose index no slope within slope_limits has
+};
+
+/// What one strip of a sky is made of; each [pixel_count], NaN where undefined; those of polarization and of
+/// electrons are empty without.
 struct SkyStrip {
     std::vector<double> intensity;         ///< K_RJ at the reference frequency
-    std::vector<double> index, curvature;  ///< at the reference frequency
-    std::vector<double> q, u;              ///< K_RJ at the polarization's reference frequency, COSMO
+    std::vector<double> index, curvature;  ///< at the reference frequency; empty with electrons
+    std::vector<double> slope, field, break_energy, cutoff_energy;  ///< the last three empty where uniform
+    std::vector<double> q, u;  ///< K_RJ at the polarization's reference frequency, COSMO
     /// Of Q and U, at the polarization's reference frequency; empty where they are the intensity's own.
     std::vector<double> polarized_index, polarized_curvature;
 
@@ -47,10 +58,12 @@ struct SkyStrip {
         return polarized_curvature.empty() ? curvature : polarized_curvature;
     }
     /// What the law of intensity, and that of Q and U, reads.
-    [[nodiscard]] LawColumns intensity_columns() const { return {index, curvature}; }
+    [[nodiscard]] LawColumns intensity_columns() const { return {index, curvature, electrons()}; }
     [[nodiscard]] LawColumns polarized_columns() const {
-        return {index_of_polarization(), curvature_of_polarization()};
+        if (!slope.empty() && polarized_index.empty()) return {{}, {}, electrons()};
+        return {index_of_polarization(), curvature_of_polarization(), {}};
     }
+    [[nodiscard]] ElectronColumns electrons() const { return {slope, field, break_energy, cutoff_energy}; }
 };
 
 /// A sky on one grid: what each pixel's spectrum is made of.
@@ -62,6 +75,7 @@ struct SkyModel {
     PixelField index = PixelField::uniform(-3);  ///< where it was measured
     double index_log_ratio = 0;                  ///< ln(nu1/nu0) of that frequency
     PixelField curvature = PixelField::uniform(0);
+    std::optional<ElectronSky> electrons;  ///< instead of index and curvature
     std::optional<PolarizedSky> polarization;
     std::optional<Angle> beam_fwhm;  ///< the template's own
     /// The template's spectra, measured at its own nside, where the model's detail continues them.
@@ -73,6 +87,14 @@ struct SkyModel {
 /// Makes one strip; indices are carried to the reference frequencies: beta(nu0) = beta(nu1) - 2 c
 /// ln(nu1/nu0).
 [[nodiscard]] SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization);
+
+/// Fills index and curvature of a strip with the law's local ones at the reference frequency; those of a
+/// curved law are there already.
+void add_local_spectrum(const SkyModel& sky, SkyStrip& strip);
+
+/// Returns T(nu)/T(nu0) of each pixel of a strip of intensity, NaN where undefined.
+[[nodiscard]] std::vector<double> make_brightness_ratios(const SkyModel& sky, const SkyStrip& strip,
+                                                         Frequency frequency);
 
 /// Returns bounds of index and curvature at the reference frequency over the sky's pixels.
 /// @throws DataError where no pixel of a map is defined

@@ -201,7 +201,7 @@ TEST_F(ModelFile, AsksForWhatIsMissing) {
 
 TEST_F(ModelFile, RefusesWhatIsNotThereYetByName) {
     const std::string start = std::string(head) + intensity;
-    for (const char* later : {"electrons", "galaxy", "faraday"}) {
+    for (const char* later : {"galaxy", "faraday"}) {
         const std::string message = message_of(start + index_value + "[" + later + "]\n");
         EXPECT_TRUE(has(message, std::string("'") + later + "' is not there yet")) << message;
     }

@@ -125,7 +125,7 @@ void smooth(const Survey& survey, const Target& target, SmoothedSurvey& out) {
     ConvergenceOptions options;
     options.tolerance = analysis_tolerance;
     options.max_iterations = most_refinements;
-    options.window = window.temperature;
+    options.windows = {&window.temperature, 1};
     Alm alm = analyse_converged(survey.map.grid, filled, target.lmax, options).alm;
     multiply_by_l(alm, window.temperature);
     rotate_alm(alm, survey.map.frame, target.frame);

@@ -130,7 +130,7 @@ struct Field<AlmEB> {
 }  // namespace
 
 template <class Coefficients>
-const std::vector<double>& ComponentTransforms<Coefficients>::window() const {
+const WindowSet& ComponentTransforms<Coefficients>::windows() const {
     return plan_.windows[Field<Coefficients>::spin == 0 ? 0 : 1];
 }
 
@@ -143,9 +143,10 @@ auto ComponentTransforms<Coefficients>::predicted_leak(const Columns& columns, c
         above += dot(column, column) * 4 * constants::pi / static_cast<double>(column.size());
     for (std::size_t l = 0; l < cl.size(); ++l)
         above -= (2 * static_cast<double>(l) + 1) * cl[l];
-    const auto leak = predict_leak(cl, std::max(0.0, above), plan_.grid.nside(), Field<Coefficients>::spin);
-    const double size = rms_of_spectrum(leak, window()), map = rms_of_spectrum(cl, window());
-    return {size, map > 0 ? size / map : 0.0, worst_ratio(leak, 1, cl, window())};
+    auto leak = predict_leak(cl, std::max(0.0, above), plan_.grid.nside(), Field<Coefficients>::spin);
+    const double relative = relative_rms(leak, cl, windows().all);
+    const double cl_ratio = worst_ratio(leak, 1, cl, windows().widest);
+    return {std::move(leak), relative, cl_ratio};
 }
 
 // Refines harder until the spectrum of what remains is small enough as well.
@@ -156,13 +157,14 @@ Coefficients ComponentTransforms<Coefficients>::refine_until_reached(Coefficient
     ConvergenceReport report;
     const auto refine = [&](Coefficients alm) {
         auto result = Field<Coefficients>::refine(std::move(alm), plan_, columns,
-                                                  {tolerance, most_refinements, nullptr, window()});
+                                                  {tolerance, most_refinements, nullptr, windows().all});
         report = std::move(result.report);
         state_.iterations += report.iterations;
         return std::move(result.alm);
     };
     const auto cl_ratio = [&] {
-        return worst_ratio(report.correction_cl, remaining_after(report).after_last, report.map_cl, window());
+        return worst_ratio(report.correction_cl, remaining_after(report).after_last, report.map_cl,
+                           windows().widest);
     };
     Coefficients alm = refine(std::move(start));
     first_correction_ = report.first_correction;
@@ -177,7 +179,8 @@ Coefficients ComponentTransforms<Coefficients>::refine_until_reached(Coefficient
     // stop there.
     const double before_last = remaining_after(report).before_last;
     const double without_last = before_last * report.relative_correction;
-    const double cl_without_last = worst_ratio(report.correction_cl, before_last, report.map_cl, window());
+    const double cl_without_last =
+        worst_ratio(report.correction_cl, before_last, report.map_cl, windows().widest);
     if (without_last <= tolerance && cl_without_last <= largest_cl_ratio) {
         --state_.iterations;
         state_.relative_error = without_last;
@@ -234,6 +237,20 @@ std::optional<Coefficients> ComponentTransforms<Coefficients>::add_weighted(cons
 }
 
 template <class Coefficients>
+Coefficients ComponentTransforms<Coefficients>::add_refined(const Columns& columns) {
+    const auto refine = [&](Coefficients start, double tolerance, int refinements) {
+        return Field<Coefficients>::refine(std::move(start), plan_, columns,
+                                           {tolerance, refinements, nullptr, windows().all});
+    };
+    auto result = refine(Field<Coefficients>::analyse_once(plan_, columns), 0.0, state_.iterations);
+    if (state_.converged && result.report.relative_error > plan_.tolerance)
+        result = refine(std::move(result.alm), plan_.tolerance, most_refinements);
+    state_.relative_error = std::max(state_.relative_error, result.report.relative_error);
+    ++state_.refined;
+    return std::move(result.alm);
+}
+
+template <class Coefficients>
 std::optional<Coefficients> ComponentTransforms<Coefficients>::add_difference(Columns columns) {
     std::vector<double> factors;
     for (const Base& base : bases_) {
@@ -252,16 +269,16 @@ std::optional<Coefficients> ComponentTransforms<Coefficients>::add_difference(Co
         return alm;
     };
     Coefficients alm = with_bases(rest);
-    const double map = rms_of_spectrum(Field<Coefficients>::power(alm), window());
     const double scale = difference_allowance * measured_over_predicted_;
-    const double error = std::hypot(map > 0 ? scale * leak.size / map : 0.0, first_error_);
+    const double own = scale * relative_rms(leak.cl, Field<Coefficients>::power(alm), windows().all);
+    const double error = std::hypot(own, first_error_);
     if (error <= plan_.tolerance) {
         state_.relative_error = std::max(state_.relative_error, error);
         return alm;
     }
     if (bases_.size() == most_bases) return std::nullopt;
     auto refined = Field<Coefficients>::refine(std::move(rest), plan_, columns,
-                                               {0.0, state_.iterations, nullptr, window()});
+                                               {0.0, state_.iterations, nullptr, windows().all});
     first_correction_ = refined.report.first_correction;
     ++state_.refined;
     alm = with_bases(refined.alm);
@@ -289,10 +306,7 @@ std::optional<Coefficients> ComponentTransforms<Coefficients>::add(Columns colum
             alm = add_weighted(columns);
             break;
         case Way::RefineAll:
-            alm = Field<Coefficients>::refine(Field<Coefficients>::analyse_once(plan_, columns), plan_,
-                                              columns, {0.0, state_.iterations, nullptr, window()})
-                      .alm;
-            ++state_.refined;
+            alm = add_refined(columns);
             break;
     }
     if constexpr (Field<Coefficients>::spin == 0)

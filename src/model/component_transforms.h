@@ -24,7 +24,7 @@ struct TransformState {
 ///
 /// Every analysis begins with ring weights. Where what such an analysis leaves (predict_leak, with its
 /// allowance) is below the tolerance, that is all. Else the first component is refined until the estimated
-/// error under the widest beam is below the tolerance and the error's C_l is below 1e-4 of the map's wherever
+/// error under every beam is below the tolerance and the error's C_l is below 1e-4 of the map's wherever
 /// B_l^2 > 1e-3; of the others only what is not proportional to it is analysed, without refinement:
 /// transforms are linear, so that their error shrinks with the map (the error of the proportional part is
 /// that of the first). What remains is predict_leak's figure times what the refined maps measured of it,
@@ -48,14 +48,16 @@ class ComponentTransforms {
   private:
     enum class Way { Undecided, Weights, Differences, RefineAll };
     struct Leak {
-        double size = 0, relative = 0, worst_cl_ratio = 0;
+        std::vector<double> cl;  ///< of the error
+        double relative = 0, worst_cl_ratio = 0;
     };
     Coefficients add_first(Columns columns);
+    Coefficients add_refined(const Columns& columns);
     std::optional<Coefficients> add_weighted(const Columns& columns);
     std::optional<Coefficients> add_difference(Columns columns);
     Coefficients refine_until_reached(Coefficients start, const Columns& columns);
     [[nodiscard]] Leak predicted_leak(const Columns& columns, const Coefficients& alm) const;
-    [[nodiscard]] const std::vector<double>& window() const;
+    [[nodiscard]] const WindowSet& windows() const;
 
     const TransformPlan& plan_;
     bool refine_all_;

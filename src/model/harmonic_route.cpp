@@ -110,9 +110,7 @@ void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
 }
 
 void HarmonicRoute::transform_components(const SkyModel& sky, Progress& progress) {
-    const auto widest = widest_window(channels_, options_);
-    const TransformPlan plan(grid_, options_.lmax, 0.5 * options_.accuracy, widest.temperature,
-                             widest.polarization);
+    const TransformPlan plan(grid_, options_.lmax, 0.5 * options_.accuracy, collect_windows(windows_));
     const auto total = static_cast<std::int64_t>(report_.intensity_components + report_.polarized_components);
     progress.begin("transforming component maps", total);
     std::int64_t done = 0;

@@ -25,18 +25,23 @@ struct HarmonicOptions {
 /// Returns the beam times the pixel window of a channel, 1 where it has neither; [lmax + 1].
 [[nodiscard]] BeamWindow channel_window(const Channel& channel, const HarmonicOptions& options);
 
-/// Returns the largest window of any channel at each l.
-[[nodiscard]] BeamWindow widest_window(std::span<const Channel> channels, const HarmonicOptions& options);
+/// The windows of a study's channels, of intensity or of polarization.
+struct WindowSet {
+    std::vector<std::vector<double>> all;  ///< [windows][lmax + 1]: each different one, or 32 of more
+    std::vector<double> widest;            ///< the largest of any at each l, [lmax + 1]
+};
+
+/// Returns the windows of some channels: intensity, polarization.
+[[nodiscard]] std::array<WindowSet, 2> collect_windows(std::span<const BeamWindow> windows);
 
 /// The grid, weights and tolerance that all component maps of a study are analysed with.
 struct TransformPlan {
-    TransformPlan(const HealpixGrid& grid, int lmax, double tolerance, std::vector<double> temperature_window,
-                  std::vector<double> polarization_window);
+    TransformPlan(const HealpixGrid& grid, int lmax, double tolerance, std::array<WindowSet, 2> windows);
 
     HealpixGrid grid;
     int lmax;
     double tolerance;
-    std::array<std::vector<double>, 2> windows;  ///< of the widest beam: intensity, polarization
+    std::array<WindowSet, 2> windows;  ///< intensity, polarization
     RingWeights weights;
 };
 

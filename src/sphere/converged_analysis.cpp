@@ -98,9 +98,7 @@ ConvergenceReport refine(Coefficients& alm, const Correct& correct, double usual
         add(alm, correction);
         ++report.iterations;
         report.correction_cl = total_power(correction);
-        const double map_rms = rms_of_spectrum(total_power(alm), options.window);
-        const double size = rms_of_spectrum(report.correction_cl, options.window);
-        const double relative = map_rms > 0 ? size / map_rms : 0.0;
+        const double relative = relative_rms(report.correction_cl, total_power(alm), options.windows);
         const bool has_ratio = report.iterations > 1 && report.relative_correction > 0;
         report.contraction = has_ratio ? relative / report.relative_correction : 0.0;
         report.relative_correction = relative;

@@ -16,10 +16,12 @@ struct ConvergenceOptions {
     double tolerance = 1e-7;  ///< of the estimated relative error; 0 does exactly max_iterations
     int max_iterations = 20;
     const RingWeights* start_weights = nullptr;  ///< of the first analysis; none: uniform
-    std::span<const double> window = {};  ///< B_l of the widest beam that matters, [l]; empty: 1 at all l
+    /// B_l of the beams that matter, [beams][l]; none: one that is 1 at all l.
+    std::span<const std::vector<double>> windows = {};
 };
 
-/// How far it went. Relative means: rms over l >= 2, weighted with the window, over that of the map.
+/// How far it went. Relative means: rms over l >= 2 over that of the map, both under a window, the largest of
+/// all windows.
 struct ConvergenceReport {
     int iterations = 0;
     bool reached = false;            ///< the tolerance

@@ -53,4 +53,16 @@ double rms_of_spectrum(std::span<const double> cl, std::span<const double> windo
     return std::sqrt(sum / (4.0 * constants::pi));
 }
 
+double relative_rms(std::span<const double> error_cl, std::span<const double> map_cl,
+                    std::span<const std::vector<double>> windows) {
+    const auto ratio = [&](std::span<const double> window) {
+        const double map = rms_of_spectrum(map_cl, window);
+        return map > 0 ? rms_of_spectrum(error_cl, window) / map : 0.0;
+    };
+    double worst = windows.empty() ? ratio({}) : 0.0;
+    for (const std::vector<double>& window : windows)
+        worst = std::max(worst, ratio(window));
+    return worst;
+}
+
 }  // namespace foreglow

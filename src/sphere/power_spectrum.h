@@ -22,4 +22,10 @@ namespace foreglow {
 [[nodiscard]] double rms_of_spectrum(std::span<const double> cl, std::span<const double> window = {},
                                      int first_l = 2);
 
+/// Returns the largest ratio, over some windows, of the rms (l >= 2) of an error's spectrum to that of the
+/// map's; 0 for a map without power.
+/// @param windows  [beams][l]; none: one that is 1 at all l
+[[nodiscard]] double relative_rms(std::span<const double> error_cl, std::span<const double> map_cl,
+                                  std::span<const std::vector<double>> windows);
+
 }  // namespace foreglow

@@ -53,7 +53,7 @@ TEST(ComponentTransforms, ErrorStaysBelowWhatItSaysForFirstAndLaterComponents) {
         for (const double tolerance : {1e-1, 1e-2, 1e-3, 1e-5, 1e-7}) {
             SCOPED_TRACE(tolerance);
             const BeamWindow window = make_gaussian_beam(Angle::from_degrees(kind.fwhm_deg), lmax);
-            const TransformPlan plan(grid, lmax, tolerance, window.temperature, window.polarization);
+            const TransformPlan plan(grid, lmax, tolerance, collect_windows(std::span(&window, 1)));
             ComponentTransforms<Alm> transforms(plan);
             const Alm a = transforms.add({first}).value();
             const int after_first = transforms.state().iterations;
@@ -105,7 +105,7 @@ TEST(ComponentTransforms, RefinesFewComponentsAndKeepsEveryErrorBelowWhatItSays)
     std::vector<std::size_t> refined;
     for (const double tolerance : {1e-3, 1e-5, 3e-6, 1e-7}) {
         SCOPED_TRACE(tolerance);
-        const TransformPlan plan(grid, lmax, tolerance, window.temperature, window.polarization);
+        const TransformPlan plan(grid, lmax, tolerance, collect_windows(std::span(&window, 1)));
         for (const bool refine_all : {false, true}) {
             ComponentTransforms<Alm> transforms(plan, refine_all);
             std::vector<Alm> found;
@@ -135,7 +135,7 @@ TEST(ComponentTransforms, WeightsAloneServeAWideBeam) {
     const HealpixGrid grid(64);
     const auto maps = six_components(grid);
     const BeamWindow window = make_gaussian_beam(Angle::from_degrees(10), 128);
-    const TransformPlan plan(grid, 128, 1e-4, window.temperature, window.polarization);
+    const TransformPlan plan(grid, 128, 1e-4, collect_windows(std::span(&window, 1)));
     ComponentTransforms<Alm> transforms(plan);
     for (const auto& map : maps) {
         const Alm found = transforms.add({map}).value();
@@ -151,7 +151,7 @@ TEST(ComponentTransforms, PolarizationLikewise) {
     const int lmax = 64;
     const BeamWindow window = make_gaussian_beam(Angle::from_degrees(5), lmax);
     for (const double tolerance : {1e-3, 1e-5, 1e-7}) {
-        const TransformPlan plan(grid, lmax, tolerance, window.temperature, window.polarization);
+        const TransformPlan plan(grid, lmax, tolerance, collect_windows(std::span(&window, 1)));
         ComponentTransforms<AlmEB> transforms(plan);
         const auto q =
             sample(grid, [](const Vector3& n) { return testing::test_q(n) / (std::abs(n[2]) + 0.1); });

@@ -36,19 +36,30 @@ TEST(ChannelWindow, IsBeamTimesPixelWindow) {
     }
 }
 
-TEST(WidestWindow, IsTheLargestInSizeAtEachL) {
-    auto channels = three_channels();
-    HarmonicOptions options;
-    options.lmax = 16;
-    const std::vector<Channel> beams(channels.begin(), channels.begin() + 2);
-    EXPECT_EQ(widest_window(beams, options).temperature, channels[1].beam->temperature);
+TEST(CollectWindows, KeepsEachWindowOnceAndTheLargestAtEachL) {
+    const std::vector<BeamWindow> beams{make_gaussian_beam(Angle::from_degrees(5), 16),
+                                        make_gaussian_beam(Angle::from_degrees(10), 16),
+                                        make_gaussian_beam(Angle::from_degrees(5), 16)};
+    const auto sets = collect_windows(beams);
+    EXPECT_EQ(sets[0].all.size(), 2U);
+    EXPECT_EQ(sets[0].widest, beams[0].temperature);
+    EXPECT_EQ(sets[1].widest, beams[0].polarization);
     // A tabulated window may change its sign; a channel's place in the list must not matter.
-    std::vector<Channel> signs(2, channels[0]);
-    signs[0].beam = make_tabulated_beam(std::vector<double>(17, -0.5));
-    signs[1].beam = make_tabulated_beam(std::vector<double>(17, 0.2));
-    EXPECT_EQ(widest_window(signs, options).temperature, std::vector<double>(17, 0.5));
+    std::vector<BeamWindow> signs{make_tabulated_beam(std::vector<double>(17, -0.5)),
+                                  make_tabulated_beam(std::vector<double>(17, 0.2))};
+    EXPECT_EQ(collect_windows(signs)[0].widest, std::vector<double>(17, 0.5));
     std::swap(signs[0], signs[1]);
-    EXPECT_EQ(widest_window(signs, options).temperature, std::vector<double>(17, 0.5));
+    EXPECT_EQ(collect_windows(signs)[0].widest, std::vector<double>(17, 0.5));
+}
+
+TEST(CollectWindows, ThinsALongListButKeepsItsEnds) {
+    std::vector<BeamWindow> beams;
+    for (int k = 0; k < 100; ++k)
+        beams.push_back(make_gaussian_beam(Angle::from_degrees(1 + 0.1 * k), 16));
+    const auto set = collect_windows(beams)[0];
+    EXPECT_EQ(set.all.size(), 32U);
+    EXPECT_EQ(set.all.back(), beams.front().temperature);
+    EXPECT_EQ(set.all.front(), beams.back().temperature);
 }
 
 }  // namespace

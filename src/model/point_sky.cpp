@@ -6,6 +6,7 @@
 #include "base/error.h"
 #include "model/detailed_sky.h"
 #include "model/load_sky.h"
+#include "model/point_electrons.h"
 #include "model/point_field.h"
 #include "model/sketch_points.h"
 #include "model/strip_points.h"
@@ -79,7 +80,10 @@ struct PointSky::Impl {
     Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization);
     Impl(const ModelSpec& model, SkyModel sky, bool with_polarization);
     void open_templates(const ModelSpec& model, std::optional<HealpixGrid> grid_in);
+    void open_electrons(const ModelSpec& model);
     void open_polarization(const PolarizationSpec& spec);
+    void add_electrons(std::span<const std::int64_t> pixels, SkyStrip& values) const;
+    [[nodiscard]] std::vector<double> ratios_at_polarization(const SkyStrip& values) const;
     [[nodiscard]] PointField open_value(const ValueOrMap& value);
     void add_polarization(std::span<const std::int64_t> pixels, SkyStrip& values) const;
     void scale_to_fraction(std::span<const std::int64_t> pixels, SkyStrip& values) const;
@@ -92,6 +96,9 @@ struct PointSky::Impl {
     std::optional<PointField> intensity, index, curvature;
     std::optional<PolarizedPoints> polarization;
     std::optional<SketchPoints> sketch;
+    std::optional<ElectronLaw> electrons;  // instead of index and curvature
+    IndexDefinition definition;            // where the index holds that their slopes come from
+    std::optional<PointField> field, break_energy, cutoff_energy;
     std::optional<SkyModel> whole;  // made with its random structure
     bool whole_is_polarized = false;
     std::vector<std::string> notices;
@@ -105,6 +112,7 @@ PointSky::Impl::Impl(const ModelSpec& model, SkyModel sky, bool with_polarizatio
       whole(std::move(sky)),
       whole_is_polarized(with_polarization) {
     if (with_polarization) polarized_reference = whole->polarization->reference;
+    if (whole->electrons) electrons = whole->electrons->law;
 }
 
 PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization) {
@@ -119,6 +127,7 @@ PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in,
         sketch.emplace(*model.sketch, grid, with_polarization);
         if (with_polarization) polarization.emplace();
         notices.emplace_back("invented sky from closed formulas: not a measurement of the Galaxy");
+        if (model.electrons) open_electrons(model);
         return;
     }
     open_templates(model, grid_in);
@@ -126,6 +135,7 @@ PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in,
         notices.emplace_back(
             "a model by itself has no seed: [detail] and scatter of the index are off here, and are there in "
             "the rows of a study");
+    if (model.electrons) open_electrons(model);
     if (!with_polarization) return;
     if (!model.polarization)
         throw InputError("the model " + model.name + " has no [polarization]: add one, or ask for I alone");
@@ -152,6 +162,35 @@ PointField PointSky::Impl::open_value(const ValueOrMap& value) {
     return PointField::of_map(std::move(map), brightness, grid, frame);
 }
 
+void PointSky::Impl::open_electrons(const ModelSpec& model) {
+    const ElectronsSpec& spec = *model.electrons;
+    electrons = spec.law;
+    definition = model.index.frequency.value_or(reference);
+    if (model.index.between) definition = *model.index.between;
+    if (spec.field_map) field = open_value(*spec.field_map);
+    if (spec.break_energy_map) break_energy = open_value(*spec.break_energy_map);
+    if (spec.cutoff_energy_map) cutoff_energy = open_value(*spec.cutoff_energy_map);
+}
+
+// The indices become slopes, as load_sky does it for whole maps.
+void PointSky::Impl::add_electrons(std::span<const std::int64_t> pixels, SkyStrip& values) const {
+    for (const auto& [map, column] : {std::pair(&field, &values.field),
+                                      {&break_energy, &values.break_energy},
+                                      {&cutoff_energy, &values.cutoff_energy}}) {
+        if (!*map) continue;
+        column->resize(pixels.size());
+        (*map)->evaluate(pixels, *column);
+    }
+    find_point_slopes(*electrons, definition, reference, values);
+}
+
+// T at the polarization's reference frequency over that at the intensity's.
+std::vector<double> PointSky::Impl::ratios_at_polarization(const SkyStrip& values) const {
+    const BandSum there{{polarized_reference.hz()}, {1.0}};
+    if (electrons) return make_electron_factors(*electrons, EmissionPart::Total, values, reference, there);
+    return make_curved_factors(values.index, values.curvature, reference, there);
+}
+
 void PointSky::Impl::open_polarization(const PolarizationSpec& spec) {
     polarized_reference = spec.reference_frequency.value_or(reference);
     PolarizedPoints& points = polarization.emplace();
@@ -171,12 +210,10 @@ void PointSky::Impl::open_polarization(const PolarizationSpec& spec) {
 void PointSky::Impl::scale_to_fraction(std::span<const std::int64_t> pixels, SkyStrip& values) const {
     std::vector<double> fraction(pixels.size());
     polarization->fraction->evaluate(pixels, fraction);
-    const double log_ratio = log_frequency_ratio(polarized_reference, reference);
+    const std::vector<double> there = ratios_at_polarization(values);
     for (std::size_t i = 0; i < fraction.size(); ++i) {
-        const double there =
-            std::exp(log_brightness_ratio({values.index[i], values.curvature[i]}, log_ratio));
         const double length = std::hypot(values.q[i], values.u[i]);
-        const double factor = fraction[i] * values.intensity[i] * there / length;
+        const double factor = fraction[i] * values.intensity[i] * there[i] / length;
         values.q[i] *= factor;
         values.u[i] *= factor;
     }
@@ -188,7 +225,7 @@ void PointSky::Impl::add_polarization(std::span<const std::int64_t> pixels, SkyS
     values.u.resize(n);
     polarization->stokes->evaluate(pixels, values.q, values.u);
     if (polarization->fraction) scale_to_fraction(pixels, values);
-    if (!polarization->index && polarized_reference == reference) return;
+    if (!polarization->index && (electrons || polarized_reference == reference)) return;
     values.polarized_index.resize(n);
     values.polarized_curvature.assign(n, 0.0);
     if (polarization->index) return polarization->index->evaluate(pixels, values.polarized_index);
@@ -235,7 +272,11 @@ const std::vector<std::string>& PointSky::notices() const {
 }
 
 SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
-    if (impl_->sketch) return impl_->sketch->evaluate(pixels);
+    if (impl_->sketch) {
+        SkyStrip values = impl_->sketch->evaluate(pixels);
+        if (impl_->electrons) impl_->add_electrons(pixels, values);
+        return values;
+    }
     if (impl_->whole) return make_sky_points(*impl_->whole, pixels, impl_->whole_is_polarized);
     SkyStrip values;
     values.intensity.resize(pixels.size());
@@ -244,7 +285,9 @@ SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
     impl_->intensity->evaluate(pixels, values.intensity);
     impl_->index->evaluate(pixels, values.index);
     impl_->curvature->evaluate(pixels, values.curvature);
-    if (impl_->index_log_ratio != 0)
+    if (impl_->electrons)
+        impl_->add_electrons(pixels, values);
+    else if (impl_->index_log_ratio != 0)
         for (std::size_t i = 0; i < pixels.size(); ++i)
             values.index[i] =
                 index_at_reference(values.index[i], values.curvature[i], impl_->index_log_ratio);
@@ -255,11 +298,16 @@ SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
 std::vector<PointValues> PointSky::answer(std::span<const std::int64_t> pixels,
                                           std::span<const PointRow> rows) const {
     const SkyStrip strip = evaluate(pixels);
+    const auto& electrons = impl_->electrons;
+    std::vector<double> reference_index;
+    if (electrons) reference_index = make_local_electron_columns(*electrons, strip, impl_->reference).index;
     std::vector<PointValues> out;
     out.reserve(rows.size());
     for (const PointRow& row : rows)
-        out.push_back(
-            make_point_values(strip, impl_->reference, impl_->polarized_reference, row.band, row.at));
+        out.push_back(electrons ? make_electron_values(*electrons, strip, reference_index, impl_->reference,
+                                                       impl_->polarized_reference, row.band, row.at)
+                                : make_point_values(strip, impl_->reference, impl_->polarized_reference,
+                                                    row.band, row.at));
     return out;
 }
 

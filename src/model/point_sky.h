@@ -14,12 +14,6 @@
 
 namespace foreglow {
 
-/// A frequency or a channel that is asked of a sky.
-struct PointRow {
-    BandSum band;  ///< in the unit asked for
-    Frequency at;  ///< where index and curvature are local
-};
-
 /// A model's sky of which only single pixels are wanted: nothing of the size of a map is made or read, but
 /// where random structure is asked for. Without a seed [detail] and scatter are off, and a notice says so.
 ///

@@ -70,7 +70,7 @@ class Piece {
 struct Sums {
     double origin = 0;  // the first value: sums of differences from it lose fewer digits
     double weight = 0, brightness = 0, squares = 0;
-    double by_brightness = 0, index = 0, second = 0;
+    double by_brightness = 0, index = 0, second = 0, slope = 0;
     double amplitude = 0, reference = 0;
     double stokes_weight = 0, q = 0, u = 0;
     std::int64_t defined = 0;
@@ -95,6 +95,7 @@ void add_pixel(Sums& sums, const PointValues& values, std::size_t i, double w) {
         const double beta = values.index[i];
         sums.by_brightness += t;
         sums.index += t * beta;
+        sums.slope += t * value_of(values.electron_slope, i, 0);
         sums.second += t * (value_of(values.curvature, i, 0) + (has_brightness ? 0.5 * beta * beta : 0.0));
     }
     if (!values.index_reference.empty() && is_defined(values.index_reference[i])) {
@@ -127,7 +128,7 @@ void finish_row(const Sums& sums, std::size_t row, GroupedValues& out) {
     const double square = has_brightness ? 0.5 * index * index : 0.0;
     set(values.index, row, index);
     set(values.curvature, row, has_index ? sums.second / sums.by_brightness - square : undefined_pixel);
-    set(values.electron_slope, row, electron_slope(index));
+    set(values.electron_slope, row, has_index ? sums.slope / sums.by_brightness : undefined_pixel);
     set(values.index_reference, row, sums.amplitude > 0 ? sums.reference / sums.amplitude : undefined_pixel);
     set(values.q, row, sums.stokes_weight > 0 ? sums.q / sums.stokes_weight : undefined_pixel);
     set(values.u, row, sums.stokes_weight > 0 ? sums.u / sums.stokes_weight : undefined_pixel);
@@ -177,6 +178,13 @@ PointValues make_point_values(const SkyStrip& strip, Frequency reference, Freque
         multiply(piece.of(strip.u), factor, piece.of(out.u));
     });
     return out;
+}
+
+std::vector<double> make_curved_factors(ConstSpan index, ConstSpan curvature, Frequency reference,
+                                        const BandSum& band) {
+    std::vector<double> factors(index.size());
+    evaluate_band(band, reference, index, curvature, factors);
+    return factors;
 }
 
 GroupedValues take_means(PointValues values, const PixelGroups& groups) {

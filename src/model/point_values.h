@@ -2,6 +2,7 @@
 #pragma once
 
 #include <cstdint>
+#include <functional>
 #include <span>
 #include <vector>
 
@@ -19,8 +20,17 @@ struct PointValues {
     std::vector<double> index;            ///< d ln T/d ln nu at the frequency
     std::vector<double> curvature;        ///< half the second derivative there
     std::vector<double> index_reference;  ///< at nu0
-    std::vector<double> electron_slope;   ///< s = -3 - 2 index
+    std::vector<double> electron_slope;   ///< the law's own s, else -3 - 2 index
     std::vector<double> q, u;             ///< in the unit asked for, COSMO
+};
+
+/// A frequency or a channel that is asked of a sky.
+struct PointRow {
+    BandSum band;  ///< in the unit asked for
+    Frequency at;  ///< where index and curvature are local
+    /// Returns the band with steps of lambda^2 no longer than that [m^2], for Q and U that rotate within it;
+    /// empty for a single frequency.
+    std::function<BandSum(double)> refine;
 };
 
 /// Applies the spectral law to pixels of a sky: brightness over the band, index and curvature at `at`.
@@ -29,6 +39,11 @@ struct PointValues {
 /// @param band        in the unit asked for; with one frequency the law itself, else its exact sum
 [[nodiscard]] PointValues make_point_values(const SkyStrip& strip, Frequency reference,
                                             Frequency polarized_reference, const BandSum& band, Frequency at);
+
+/// Returns a band's number per unit amplitude of curved power laws, [n], as make_point_values has it.
+[[nodiscard]] std::vector<double> make_curved_factors(std::span<const double> index,
+                                                      std::span<const double> curvature, Frequency reference,
+                                                      const BandSum& band);
 
 /// Tells which pixels, with which weights, each row is made of.
 struct PixelGroups {

@@ -171,6 +171,39 @@ class AnswersAtPositions(harness.Case):
             numpy.testing.assert_allclose([rows[0]["brightness"], rows[0]["Q"], rows[0]["U"]], maps[:, 42], rtol=1e-12)
             self.assertIn("whole sky", notes)
 
+    def test_electrons(self):
+        self.write_map("field.fits", [5 + 2 * numpy.cos(numpy.arange(3072.0))], names=["FIELD"])
+        head = MODEL[:MODEL.index("[curvature]")].replace("1.4 GHz", "22.8 GHz")
+        for electrons in ('field = "5 uG"\nbreak_energy = "10 GeV"\ncutoff_energy = "300 GeV"\n',
+                          'field_map = "field.fits"\ncutoff_energy = "200 GeV"\ncutoff = "sharp"\n'):
+            self.write("model.toml", head + "[electrons]\n" + electrons)
+            self.write("study.toml", STUDY.format(convention="COSMO", precision="float64", realizations=1))
+            self.foreglow("make", "study.toml", "--out", "out", "--quiet", "--replace")
+            index, _ = harness.read_maps(self.folder / "out/truth/index.fits")
+            pixels = [3, 105, 1500]
+            asked = [word for p in pixels for word in ("--pixel", p)] + ["--nside", NSIDE]
+            rows, _ = self.rows("study.toml", *asked)
+            ran, notes = self.rows("out", *asked)
+            self.assertIn("no curved power laws", notes)
+            for k, name in enumerate(("low", "band")):
+                maps, _ = harness.read_maps(self.folder / f"out/maps/{name}.fits")
+                for n, pixel in enumerate(pixels):
+                    row = rows[2 * n + k]
+                    got = [numpy.nan if row[key] is None else row[key] for key in ("brightness", "Q", "U")]
+                    # make promises accuracy / 10 = 1e-9 of each pixel here, at is ten times better.
+                    numpy.testing.assert_allclose(got, maps[:, pixel], rtol=3e-9)
+                    self.assertIsNone(ran[2 * n + k]["index"])
+                    if not numpy.isnan(index[0][pixel]):
+                        # truth and stencil are good to 1e-7 and some 1e-7 of a fifth derivative
+                        self.assertAlmostEqual(row["index_reference"], index[0][pixel], delta=1e-6)
+                        self.assertEqual(ran[2 * n + k]["index_reference"], index[0][pixel])
+            near, _ = self.rows("model.toml", "--pixel", 3, "--nside", NSIDE, "--frequency", "29.97 GHz", "--frequency",
+                                "30 GHz", "--frequency", "30.03 GHz")
+            slope = numpy.log(near[2]["brightness"] / near[0]["brightness"]) / numpy.log(30.03 / 29.97)
+            self.assertAlmostEqual(near[1]["index"], slope, delta=3e-6)  # h^2/6 of the third derivative, h = 1e-3
+            self.assertEqual(near[0]["electron_slope"], near[2]["electron_slope"])
+            self.assertGreater(abs(near[0]["electron_slope"] - (-3 - 2 * near[0]["index"])), 0.1)
+
     def test_discs_and_interpolation(self):
         lon, lat = 213.7, -41.2
         rows, _ = self.rows("model.toml", "--position", f"{lon},{lat}", "--frequency", "5 GHz", "--disc", "12 deg")

@@ -52,7 +52,9 @@ void add_frequencies(AtSource& source, ModelRows& rows, const std::vector<Freque
     for (const Frequency frequency : frequencies) {
         const Calibration calibration{unit, frequency, 0, source.grid.pixel_area()};
         rows.rows.push_back(
-            {make_band_sum(Response::at(frequency), ResponseWeights::Temperature, calibration), frequency});
+            {make_band_sum(Response::at(frequency), ResponseWeights::Temperature, calibration),
+             frequency,
+             {}});
         source.columns.push_back({"", frequency, to_text(unit)});
     }
 }
@@ -97,7 +99,8 @@ AtSource open_model_at(const AtOptions& options) {
     if (frequencies.empty())
         throw InputError("a model by itself has no channels: say where to look with --frequency \"70 MHz\"");
     const ModelSpec model = read_model_of(options.source, find_bundled_model(options.source) != nullptr);
-    const bool polarized = model.sketch.has_value() || model.polarization.has_value();
+    const bool tangled = model.electrons && model.electrons->law.geometry == FieldGeometry::Tangled;
+    const bool polarized = !tangled && (model.sketch.has_value() || model.polarization.has_value());
     std::optional<HealpixGrid> grid;
     if (model.sketch && options.nside) grid = HealpixGrid(*options.nside);
     const auto rows = std::make_shared<ModelRows>(PointSky(model, grid, polarized));
@@ -131,7 +134,7 @@ AtSource open_study_at(const AtOptions& options) {
     }
     const std::vector<Channel> channels = make_channels(study);
     for (const Channel& channel : channels) {
-        rows->rows.push_back({channel.band, channel.reference});
+        rows->rows.push_back({channel.band, channel.reference, {}});
         source.columns.push_back({channel.name, channel.reference, to_text(study.unit)});
     }
     add_study_notices(source, study, channels);

@@ -117,11 +117,6 @@ PointSky::Impl::Impl(const ModelSpec& model, SkyModel sky, bool with_polarizatio
 
 PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization) {
     reference = polarized_reference = model.reference_frequency;
-    if (model.electrons)
-        throw InputError(
-            "the model " + model.name +
-            " has [electrons], whose single pixels are answered from a finished run: make one and "
-            "ask its folder");
     if (model.sketch) {
         grid = grid_in.value_or(HealpixGrid(SketchPoints::usual_nside));
         sketch.emplace(*model.sketch, grid, with_polarization);

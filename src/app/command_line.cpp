@@ -17,6 +17,7 @@
 #include "base/text.h"
 #include "jobs/at.h"
 #include "jobs/draw.h"
+#include "jobs/electrons.h"
 #include "jobs/grade.h"
 #include "jobs/index.h"
 #include "jobs/make.h"
@@ -302,6 +303,50 @@ void add_grade_options(CLI::App& command, GradeOptions& grade, std::string& beam
     command.add_flag("--replace", grade.replace, "replace an earlier grading");
 }
 
+constexpr const char* electrons_examples =
+    R"(Examples:
+  foreglow electrons --slope 2.5 --field "4 uG" --cutoff-energy "30 GeV" --frequency "45 MHz" --frequency "4.8 GHz"
+      brightness against 408 MHz, index, curvature, polarization and energies at two frequencies
+  foreglow electrons --index -2.7 --field "5 uG" --geometry tangled --aging isotropized --age "30 Myr" \
+      --frequency "30 MHz:30 GHz:13" --format csv > aged.csv
+      the electrons that have this index at 408 MHz, on a log grid of thirteen frequencies)";
+
+void add_electrons_options(CLI::App& command, ElectronsOptions& electrons) {
+    command.footer(electrons_examples);
+    command.add_option("--slope", electrons.slope, "s of N(E) ~ E^-s below break and cut-off, positive");
+    command.add_option("--index", electrons.index,
+                       "or: of brightness temperature at --reference, T ~ nu^index");
+    command.add_option("--flux-index", electrons.flux_index, "or: of flux there, S ~ nu^flux-index");
+    command.add_option("--field", electrons.field,
+                       "\"4 uG\": across the line of sight (ordered), or total (tangled)");
+    ElectronRequest& request = electrons.request;
+    add_choice<FieldGeometry>(command, "--geometry", request.geometry,
+                              {{"ordered", FieldGeometry::Ordered}, {"tangled", FieldGeometry::Tangled}},
+                              "default ordered");
+    command.add_option("--break-energy", electrons.break_energy, "\"5 GeV\": where the slope rises");
+    command.add_option("--break-step", request.break_step, "by so much (default 1)");
+    command.add_option("--cutoff-energy", electrons.cutoff_energy, "\"30 GeV\": where the spectrum ends");
+    const std::vector<std::pair<std::string, CutoffShape>> shapes{{"exponential", CutoffShape::Exponential},
+                                                                  {"sharp", CutoffShape::Sharp}};
+    add_choice<CutoffShape>(command, "--cutoff", request.cutoff, shapes, "default exponential");
+    add_choice<AgingWord>(command, "--aging", request.aging,
+                          {{"none", AgingWord::None},
+                           {"continuous", AgingWord::Continuous},
+                           {"isotropized", AgingWord::Isotropized},
+                           {"fixed-pitch", AgingWord::FixedPitch}},
+                          "losses to the field and the microwave background");
+    command.add_option("--age", electrons.age, "\"50 Myr\"");
+    add_choice<CutoffShape>(command, "--edge", request.edge, shapes, "of isotropized ageing, default sharp");
+    command.add_option("--redshift", request.redshift, "frequencies are observed ones (default 0)");
+    command.add_option("--reference", electrons.reference,
+                       "where ratio is 1 and --index holds (default 408 MHz)");
+    command
+        .add_option("--frequency", electrons.frequencies,
+                    "\"45 MHz\", or a log grid \"30 MHz:30 GHz:13\"; repeatable (default: the reference)")
+        ->take_all()
+        ->expected(1);
+}
+
 /// All that the command line can ask for.
 struct Request {
     CommonOptions common;
@@ -309,6 +354,7 @@ struct Request {
     bool sha256 = false;
     StartRequest start;
     AtRequest at;
+    ElectronsOptions electrons;
     std::string model_name;
     DrawOptions draw;
     std::vector<double> draw_center;
@@ -426,6 +472,13 @@ void define_commands(CLI::App& app, Request& request) {
     add_common(*at, request.common);
     at->callback([&request] { run_at_command(request); });
 
+    CLI::App* electrons = app.add_subcommand(
+        "electrons", "works out a spectrum: index, curvature, polarization, energies and lifetimes");
+    add_electrons_options(*electrons, request.electrons);
+    add_format(*electrons, request.electrons.format);
+    add_common(*electrons, request.common);
+    electrons->callback([&request] { run_electrons(request.electrons, write_rows_out); });
+
     CLI::App* index = app.add_subcommand(
         "index", "makes a spectral-index map with its errors from survey maps at two or more frequencies");
     add_index_options(*index, request.index);
@@ -445,7 +498,7 @@ void define_commands(CLI::App& app, Request& request) {
     add_common(*grade, request.common);
     grade->callback([&request] { run_grade_command(request); });
 
-    for (CLI::App* command : {make, plan, start, at, index, grade, models, draw})
+    for (CLI::App* command : {make, plan, start, at, electrons, index, grade, models, draw})
         command->parse_complete_callback([&request] {
             set_thread_count(request.common.threads > 0 ? request.common.threads : available_processors());
         });

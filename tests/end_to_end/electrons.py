@@ -169,5 +169,67 @@ class Electrons(harness.Case):
             self.assertIn(words, done.stderr)
 
 
+KEYS = ["frequency_Hz", "ratio", "index", "curvature", "flux_index", "polarized_fraction", "intrinsic_fraction", "energy_GeV",
+        "lifetime_Myr"]
+
+
+class ElectronsCommand(harness.Case):
+    def rows(self, *arguments):
+        return json.loads(self.foreglow("electrons", *arguments, "--format", "json").stdout)
+
+    def test_rows_are_those_of_the_oracle(self):
+        law = electron_oracle.Law(4.0, break_energy=5.0, break_step=1.0, cutoff_energy=30.0, aging="isotropized", age=12.0,
+                                  redshift=0.5)
+        rows = self.rows("--slope", 2.2, "--field", "4 uG", "--break-energy", "5 GeV", "--break-step", 1, "--cutoff-energy",
+                         "30 GeV", "--aging", "isotropized", "--age", "12 Myr", "--redshift", 0.5, "--frequency", "45 MHz",
+                         "--frequency", "4.8 GHz")
+        self.assertEqual([list(row) for row in rows], [KEYS, KEYS])
+        for row, hz in zip(rows, (45e6, 4.8e9)):
+            self.assertEqual(row["frequency_Hz"], hz)
+            self.assertAlmostEqual(row["ratio"] / law.ratio(2.2, [hz], 408e6)[0], 1, delta=1e-7)  # the oracle's end in ln E
+            self.assertAlmostEqual(row["index"], law.index(2.2, hz), delta=1e-6)  # its difference
+            self.assertEqual(row["flux_index"], row["index"] + 2)
+            fraction = law.emissivity(2.2, hz, polarized=True)[0] / law.emissivity(2.2, hz)[0]
+            self.assertAlmostEqual(row["polarized_fraction"], fraction, delta=1e-7)
+            energy = numpy.sqrt(1.5 * hz / (electron_oracle.C1 * 4))
+            self.assertAlmostEqual(row["energy_GeV"] / energy, 1, delta=1e-9)
+            self.assertAlmostEqual(row["lifetime_Myr"] * law.loss(1) * energy, 1, delta=1e-9)
+
+    def test_tangled_fields_have_no_net_polarization(self):
+        row, = self.rows("--slope", 2.5, "--field", "5 uG", "--geometry", "tangled")
+        self.assertEqual(row["polarized_fraction"], 0)
+        self.assertAlmostEqual(row["intrinsic_fraction"], 3.5 / (2.5 + 7 / 3), delta=1e-10)  # Ginzburg & Syrovatskii 1965
+
+    def test_slope_index_and_flux_index_say_the_same(self):
+        for option, value in (("--slope", 2.4), ("--index", -2.7), ("--flux-index", -0.7)):
+            row, = self.rows(option, value, "--field", "3 uG")
+            self.assertAlmostEqual(row["index"], -2.7, delta=1e-10)
+
+    def test_formats_agree_and_a_table_names_its_conventions(self):
+        arguments = ["electrons", "--slope", 2.5, "--field", "5 uG", "--frequency", "30 MHz:30 GHz:4"]
+        table = self.foreglow(*arguments).stdout
+        for words in ("N ~ E^-2.5", "Rayleigh-Jeans", "flux_index = index + 2", "408 MHz", "GeV", "Myr"):
+            self.assertIn(words, table)
+        self.assertEqual(len(table.splitlines()), 5 + 4)
+        csv = self.foreglow(*arguments, "--format", "csv").stdout.splitlines()
+        self.assertEqual(csv[0], ",".join(KEYS))
+        rows = self.rows(*arguments[1:])
+        for line, row in zip(csv[1:], rows, strict=True):
+            self.assertEqual([float(cell) for cell in line.split(",")], list(row.values()))
+
+    def test_impossible_requests_are_refused_in_one_line(self):
+        for arguments, words in ((["--field", "5 uG"], "--slope"), (["--slope", 2.5], "--field"),
+                                 (["--slope", 2.5, "--index", -2.7, "--field", "5 uG"], "say the same"),
+                                 (["--slope", 2.5, "--field", "5"], "unit"), (["--slope", 8, "--field", "5 uG"], "from 1 to 7"),
+                                 (["--index", -1.5, "--field", "5 uG"], "at 408 MHz"),
+                                 (["--slope", 2, "--field", "5 uG", "--break-step", 1], "--break-energy"),
+                                 (["--slope", 2, "--field", "5 uG", "--aging", "old"], "continuous"),
+                                 (["--slope", 2, "--field", "5 uG", "--frequency", "3"], "--frequency")):
+            done = self.foreglow("electrons", *arguments, status=2)
+            self.assertEqual(done.stdout, "")
+            self.assertEqual(done.stderr.count("\n"), 1)
+            self.assertIn(words, done.stderr)
+
+
 if __name__ == "__main__":
     harness.main()

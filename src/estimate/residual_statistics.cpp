@@ -81,8 +81,12 @@ ResidualStatistics make_residual_statistics(std::span<const double> values, cons
     return out;
 }
 
-std::vector<double> make_masked_spectrum(const HealpixGrid& grid, std::span<const double> values,
-                                         const PixelSelection& selection, int lmax) {
+MaskedSpectra::MaskedSpectra(const HealpixGrid& grid, int lmax)
+    : grid_(grid),
+      lmax_(lmax),
+      weights_(make_ring_weights(grid.nside(), std::min(2 * lmax, 3 * grid.nside()))) {}
+
+std::vector<double> MaskedSpectra::of(std::span<const double> values, const PixelSelection& selection) const {
     std::vector<double> map(values.begin(), values.end());
     double sum = 0, count = 0;
     for (std::size_t p = 0; p < map.size(); ++p)
@@ -90,15 +94,16 @@ std::vector<double> make_masked_spectrum(const HealpixGrid& grid, std::span<cons
             sum += map[p];
             ++count;
         }
-    if (count == 0) return std::vector<double>(static_cast<std::size_t>(lmax) + 1);
+    if (count == 0) return std::vector<double>(static_cast<std::size_t>(lmax_) + 1);
     for (std::size_t p = 0; p < map.size(); ++p)
         map[p] = counts(selection, values, p) ? map[p] - sum / count : 0.0;
     ConvergenceOptions options;
     options.tolerance = 0;
-    options.max_iterations = 3;
-    std::vector<double> cl = power_spectrum(analyse_converged(grid, map, lmax, options).alm);
+    options.max_iterations = 1;
+    options.start_weights = &weights_;
+    std::vector<double> cl = power_spectrum(analyse_converged(grid_, map, lmax_, options).alm);
     for (double& value : cl)
-        value *= static_cast<double>(grid.npix()) / count;
+        value *= static_cast<double>(grid_.npix()) / count;
     return cl;
 }
 

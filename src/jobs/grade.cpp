@@ -5,6 +5,7 @@
 #include <cmath>
 
 #include "base/error.h"
+#include "base/parallel.h"
 #include "base/text.h"
 #include "estimate/floor_fit.h"
 #include "jobs/grade_output.h"
@@ -140,8 +141,14 @@ class FloorGrade {
 
     void add_rows() {
         const std::string unit = to_text(source_.study.unit);
+        std::vector<ResidualStatistics> statistics(maps_.size());
+        parallel_for_blocks(static_cast<std::int64_t>(maps_.size()), 1,
+                            [&](std::int64_t begin, std::int64_t) {
+                                const auto c = static_cast<std::size_t>(begin);
+                                statistics[c] = make_residual_statistics(residuals_[c], selection_);
+                            });
         for (std::size_t c = 0; c < maps_.size(); ++c) {
-            const ResidualStatistics s = make_residual_statistics(residuals_[c], selection_);
+            const ResidualStatistics& s = statistics[c];
             // What the reference power law has in K_RJ at the frequency, for one of the channel's own units.
             const double kelvin = std::exp(options_.tilt * setup_.log_ratios[c]) / setup_.responses[c];
             rows_.add({source_.channels[c].channel.name, source_.channels[c].channel.reference.hz(),
@@ -152,7 +159,7 @@ class FloorGrade {
     void keep_residuals() {
         if (!output_.is_kept()) return;
         const std::string unit = to_text(source_.study.unit);
-        const int lmax = std::min(source_.study.lmax, 2 * grid_.nside());
+        const MaskedSpectra spectra(grid_, std::min(source_.study.lmax, 2 * grid_.nside()));
         for (std::size_t c = 0; c < maps_.size(); ++c) {
             const Channel& channel = source_.channels[c].channel;
             output_.write_residual(
@@ -165,9 +172,8 @@ class FloorGrade {
             if (fitted.empty()) fitted.assign(maps_[c].size(), 1);
             for (std::size_t p = 0; p < fitted.size(); ++p)
                 if (!is_defined(residuals_[c][p])) fitted[p] = 0;
-            output_.add_spectrum(channel.name, "I_STOKES", 0,
-                                 make_masked_spectrum(grid_, residuals_[c], fitted, lmax),
-                                 make_masked_spectrum(grid_, maps_[c], fitted, lmax));
+            output_.add_spectrum(channel.name, "I_STOKES", 0, spectra.of(residuals_[c], fitted),
+                                 spectra.of(maps_[c], fitted));
         }
     }
 

@@ -131,7 +131,8 @@ class RecoveredGrade {
           output_(output),
           progress_(progress),
           grid_(source.study.nside),
-          lmax_(std::min(source.study.lmax, 2 * source.study.nside)) {
+          lmax_(std::min(source.study.lmax, 2 * source.study.nside)),
+          spectra_(grid_, lmax_) {
         const PixelSelection mask = options.mask
                                         ? read_grade_mask(*options.mask, grid_, source.study.frame, progress)
                                         : PixelSelection();
@@ -258,8 +259,8 @@ class RecoveredGrade {
                                  format_number(cut, 6) + " deg: nothing is left to compare");
             rows_.add({stem, column, frequency.hz(), cut, JsonValue(), JsonValue(), s.pixels, s.mean, s.rms,
                        s.p5, s.p50, s.p95, t.rms, t.rms > 0 ? JsonValue(s.rms / t.rms) : JsonValue(), unit});
-            const auto residual_cl = make_masked_spectrum(grid_, residual, selections_[k], lmax_);
-            const auto truth_cl = make_masked_spectrum(grid_, reference, selections_[k], lmax_);
+            const auto residual_cl = spectra_.of(residual, selections_[k]);
+            const auto truth_cl = spectra_.of(reference, selections_[k]);
             output_.add_spectrum(stem, column, cut, residual_cl, truth_cl);
             for (const LBand& band : make_l_bands(lmax_)) {
                 const double left = rms_in_band(residual_cl, band), all = rms_in_band(truth_cl, band);
@@ -276,6 +277,7 @@ class RecoveredGrade {
     Progress& progress_;
     HealpixGrid grid_;
     int lmax_;
+    MaskedSpectra spectra_;
     Frequency frequency_;
     std::vector<PixelSelection> selections_;
     ResultRows rows_{{"map", "column", "frequency_Hz", "cut_deg", "l_low", "l_high", "pixels", "mean", "rms",

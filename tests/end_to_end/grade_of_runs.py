@@ -145,8 +145,10 @@ class Floor(GradeCase):
         with open(self.folder / "run/grade/spectra.csv", encoding="ascii") as file:
             found = numpy.array([float(r["residual_cl"]) for r in csv.DictReader(file) if r["map"] == "a"])
         cut = (residual - numpy.mean(residual[mask > 0])) * mask
-        expected = healpy.anafast(cut, lmax=2 * NSIDE, iter=3) / numpy.mean(mask)
-        numpy.testing.assert_allclose(found, expected, rtol=1e-6, atol=1e-9 * expected.max())  # the same sums in another order
+        expected = healpy.anafast(cut, lmax=2 * NSIDE, iter=12) / numpy.mean(mask)
+        # What is promised of one refinement; l = 0 holds what the subtracted mean leaves, nothing.
+        numpy.testing.assert_allclose(found[1:], expected[1:], rtol=1e-3)
+        self.assertLess(found[0], 1e-6 * expected.max())
 
     def test_study_alone_is_its_run(self):
         self.make(noise=True)
@@ -218,11 +220,11 @@ class RecoveredMaps(GradeCase):
         bands = [r for r in rows if r["l_low"] is not None and r["column"] == "I_STOKES" and r["cut_deg"] == 25]
         self.assertEqual([(b["l_low"], b["l_high"]) for b in bands], [(2, 10), (11, 30), (31, 32)])
         keep = good & (numpy.abs(latitude) >= 25)
-        cl = healpy.anafast(numpy.where(keep, error[0] - numpy.mean(error[0][keep]), 0.0), lmax=32, iter=3) / numpy.mean(keep)
+        cl = healpy.anafast(numpy.where(keep, error[0] - numpy.mean(error[0][keep]), 0.0), lmax=32, iter=12) / numpy.mean(keep)
         ell = numpy.arange(33)
         for band in bands:
             here = (ell >= band["l_low"]) & (ell <= band["l_high"])
-            self.assertAlmostEqual(band["rms"], numpy.sqrt(numpy.sum((2 * ell + 1)[here] * cl[here]) / 4 / numpy.pi), delta=1e-6)
+            self.assertAlmostEqual(band["rms"], numpy.sqrt(numpy.sum((2 * ell + 1)[here] * cl[here]) / 4 / numpy.pi), delta=1e-3 * band["rms"])
 
     def test_index_against_the_beam_smoothed_truth(self):
         self.make()

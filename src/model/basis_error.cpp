@@ -10,7 +10,7 @@
 namespace foreglow {
 namespace {
 
-constexpr double evaluations = 4e6;  // band sums in all
+constexpr double evaluations = 1e6;  // band sums in all
 
 /// Removes the best-fitting monopole and dipole; [n] each.
 class DipoleFit {

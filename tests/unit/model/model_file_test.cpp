@@ -207,6 +207,46 @@ TEST_F(ModelFile, RefusesWhatIsNotThereYetByName) {
     }
 }
 
+TEST_F(ModelFile, ReadsElectrons) {
+    const ModelSpec model =
+        make(std::string(head) + intensity +
+             "[index]\nvalue = -2.8\nbetween = [\"23 GHz\", \"408 MHz\"]\n[electrons]\nfield = \"0.4 "
+             "nT\"\ngeometry = \"tangled\"\nbreak_energy = \"800 MeV\"\nbreak_step = 0.7\n"
+             "cutoff_energy = \"2 TeV\"\ncutoff = \"sharp\"\naging = \"fixed-pitch\"\nage = \"0.05 "
+             "Gyr\"\nredshift = 0.3\n");
+    ASSERT_TRUE(model.electrons.has_value());
+    const ElectronLaw& law = model.electrons->law;
+    EXPECT_NEAR(law.field_uG, 4, 1e-14);  // 1 nT is 10 uG
+    EXPECT_EQ(law.geometry, FieldGeometry::Tangled);
+    EXPECT_NEAR(law.energy_break->energy_GeV, 0.8, 1e-15);
+    EXPECT_EQ(law.energy_break->step, 0.7);
+    EXPECT_EQ(law.cutoff->energy_GeV, 2000);
+    EXPECT_EQ(law.cutoff->shape, CutoffShape::Sharp);
+    EXPECT_NEAR(std::get<FixedPitchAging>(law.aging).age_Myr, 50, 1e-13);
+    EXPECT_EQ(law.redshift, 0.3);
+    EXPECT_EQ(model.index.between->first.hz(), 408e6);
+}
+
+TEST_F(ModelFile, RefusesElectronsThatContradictThemselvesOrTheRest) {
+    const std::string start = std::string(head) + intensity + index_value;
+    const std::string electrons = "[electrons]\nfield = \"5 uG\"\n";
+    for (const auto& [text, words] :
+         {std::pair(electrons + "[curvature]\nvalue = 0.1\n", "contradicts [electrons]"),
+          {std::string("[electrons]\n"), "'field'"},
+          {std::string("[electrons]\nfield = 5\n"), "field"},
+          {electrons + "edge = \"sharp\"\n", "isotropized"},
+          {electrons + "aging = \"isotropized\"\n", "how long"},
+          {electrons + "age = \"1 Myr\"\n", "no ageing"},
+          {electrons + "aging = \"isotropized\"\nage = \"1 Myr\"\nedge = \"exponential\"\ncutoff_energy = "
+                       "\"1 TeV\"\n",
+           "stands for the cut-off"},
+          {electrons + "break_step = 1.0\n", "break_energy"},
+          {electrons + "cutof = \"sharp\"\n", "did you mean"}}) {
+        const std::string message = message_of(start + text);
+        EXPECT_TRUE(has(message, words)) << message;
+    }
+}
+
 TEST_F(ModelFile, WarnsOfAnIndexThatLooksLikeOneOfFlux) {
     // alpha = beta + 2: a flux index of -0.75 is a temperature index of -2.75.
     const ModelSpec model = make(std::string(head) + intensity + "[index]\nvalue = -0.75\n");

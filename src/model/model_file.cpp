@@ -8,6 +8,7 @@
 #include "model/bundled_models.h"
 #include "model/detail_section.h"
 #include "model/electrons_section.h"
+#include "model/galaxy_section.h"
 #include "model/model_sections.h"
 #include "model/typed_keys.h"
 
@@ -40,7 +41,7 @@ void add_index_warning(ModelSpec& model) {
 }
 
 struct Sections {
-    std::optional<TomlReader> sketch, intensity, polarization, index, curvature, detail, electrons;
+    std::optional<TomlReader> sketch, galaxy, intensity, polarization, index, curvature, detail, electrons;
 };
 
 /// Refuses what the electrons themselves bring.
@@ -62,18 +63,25 @@ void check_electrons(TomlReader& top, Sections& sections, ModelSpec& model) {
 }
 
 void check_sections(TomlReader& top, const Sections& sections) {
-    if (sections.sketch) {
+    if (sections.sketch && sections.galaxy)
+        top.fail("galaxy", "contradicts [sketch]: a model is one sky, keep one of the two");
+    if (sections.sketch || sections.galaxy) {
+        const std::string whole = sections.sketch ? "[sketch]" : "[galaxy]";
         for (const auto& [other, name] : {std::pair(&sections.intensity, "intensity"),
                                           {&sections.polarization, "polarization"},
                                           {&sections.index, "index"},
                                           {&sections.curvature, "curvature"}})
-            if (*other) top.fail(name, "contradicts [sketch], which brings its own: keep one of the two");
+            if (*other)
+                top.fail(name, "contradicts " + whole + ", which brings its own: keep one of the two");
+        if (sections.galaxy && sections.electrons)
+            top.fail("electrons",
+                     "contradicts [galaxy], which has electrons of its own: keep one of the two");
         return;
     }
     if (!sections.intensity)
         top.fail_here(
-            "the section [intensity] is missing: add it with map = \"survey.fits\" (or [sketch] for an "
-            "invented sky)");
+            "the section [intensity] is missing: add it with map = \"survey.fits\" (or [galaxy] for the "
+            "built-in Galaxy)");
     if (!sections.index)
         top.fail_here("the section [index] is missing: add it with value = -2.9 or map = \"index.fits\"");
 }
@@ -120,16 +128,16 @@ ModelSpec make_model(const std::string& text, const std::filesystem::path& file,
     model.source = text;
     model.title = top.text("title", "title = \"Survey at 408 MHz\"").value_or(name);
     const std::optional<Frequency> reference = read_frequency(top, "reference_frequency");
-    Sections sections{top.table("sketch"),   top.table("intensity"), top.table("polarization"),
-                      top.table("index"),    top.table("curvature"), top.table("detail"),
-                      top.table("electrons")};
-    for (const char* later : {"galaxy", "faraday"})
-        refuse_for_now(top, later);
+    Sections sections{top.table("sketch"),       top.table("galaxy"),   top.table("intensity"),
+                      top.table("polarization"), top.table("index"),    top.table("curvature"),
+                      top.table("detail"),       top.table("electrons")};
+    refuse_for_now(top, "faraday");
     top.check_no_other_keys();
     if (!reference) top.fail_missing("reference_frequency", "reference_frequency = \"408 MHz\"");
     model.reference_frequency = *reference;
     check_sections(top, sections);
     if (sections.sketch) model.sketch = read_sketch(*sections.sketch);
+    if (sections.galaxy) model.galaxy = read_galaxy(*sections.galaxy);
     if (sections.intensity) model.intensity = read_intensity(*sections.intensity, folder);
     if (sections.polarization) model.polarization = read_polarization(*sections.polarization, folder);
     if (sections.index) model.index = read_index(*sections.index, folder);

@@ -10,6 +10,7 @@
 
 #include "base/quantity.h"
 #include "model/detail_spec.h"
+#include "model/galaxy_spec.h"
 #include "physics/brightness_unit.h"
 #include "physics/electron_law.h"
 #include "sphere/frame.h"
@@ -87,6 +88,7 @@ struct ModelSpec {
     std::string title;
     Frequency reference_frequency;
     std::optional<SketchSpec> sketch;  ///< instead of the four below
+    std::optional<GalaxySpec> galaxy;  ///< likewise
     std::optional<IntensitySpec> intensity;
     std::optional<PolarizationSpec> polarization;
     IndexSpec index;

@@ -16,7 +16,7 @@ int main() {
     if (foreglow_brightness_ratio(816e6, 408e6, -2.5, 0) != ratio) return 2;
 
     std::ofstream("study.toml")
-        << "model = \"disc-and-loops\"\nnside = 16\n[[channel]]\nname = \"a\"\nfrequency = \"30 GHz\"\n";
+        << "model = \"quick-sketch\"\nnside = 16\n[[channel]]\nname = \"a\"\nfrequency = \"30 GHz\"\n";
     const foreglow::api::RunResult run = foreglow::api::make_maps("study.toml");
     if (!std::filesystem::exists(run.out / "maps" / "a.fits")) return 3;
 

@@ -121,7 +121,7 @@ class Running(harness.Case):
     def test_bundled_model_is_the_same_sky_at_each_nside_and_differs_by_seed(self):
         def means(nside, seed):
             out = f"out-{nside}-{seed}"
-            self.foreglow("make", "--model", "disc-and-loops", "--frequency", "408 MHz", "--nside", nside, "--out", out,
+            self.foreglow("make", "--model", "quick-sketch", "--frequency", "408 MHz", "--nside", nside, "--out", out,
                           "--quiet", "--set", f"seed={seed}")
             path, = (self.folder / out / "maps").glob("*.fits")
             return healpy.ud_grade(harness.read_maps(path)[0][0], 8)
@@ -151,9 +151,9 @@ class Running(harness.Case):
         self.assertEqual(quiet.stderr, "")
 
     def test_realizations_have_their_names_and_the_first_is_the_single_run(self):
-        self.foreglow("make", "--model", "disc-and-loops", "--frequency", "1 GHz", "--nside", "16", "--out", "one", "--quiet")
+        self.foreglow("make", "--model", "quick-sketch", "--frequency", "1 GHz", "--nside", "16", "--out", "one", "--quiet")
         single, = (self.folder / "one/maps").glob("*.fits")
-        self.foreglow("make", "--model", "disc-and-loops", "--frequency", "1 GHz", "--nside", "16", "--out", "two", "--quiet",
+        self.foreglow("make", "--model", "quick-sketch", "--frequency", "1 GHz", "--nside", "16", "--out", "two", "--quiet",
                       "--set", "realizations=2")
         first = self.folder / f"two/maps/{single.stem}_r0000.fits"
         second = self.folder / f"two/maps/{single.stem}_r0001.fits"

@@ -51,7 +51,7 @@ class Short(harness.Case):
             self.assertLess(harness.map_error(maps, expected), 1e-5)  # the default accuracy
 
     def test_bundled_model(self):
-        self.foreglow("make", "--model", "disc-and-loops", "--frequency", "70 GHz", "--nside", "16", "--out", "out")
+        self.foreglow("make", "--model", "quick-sketch", "--frequency", "70 GHz", "--nside", "16", "--out", "out")
 
     def test_errors(self):
         self.write("study.toml", STUDY.replace("nside = 16", "nside = 17"))

@@ -28,7 +28,7 @@ TEST(CApi, ReturnsTheCommandsExitStatusAndASentence) {
     EXPECT_EQ(foreglow_make(file.c_str(), out.c_str(), 0, message.data(), message.size()), 2);
     EXPECT_TRUE(has(message.data(), "s.toml")) << message.data();
     testing::write_whole_file(
-        file, "model = \"disc-and-loops\"\nnside = 4\n[[channel]]\nname = \"low\"\nfrequency = \"70 GHz\"\n");
+        file, "model = \"quick-sketch\"\nnside = 4\n[[channel]]\nname = \"low\"\nfrequency = \"70 GHz\"\n");
     EXPECT_EQ(foreglow_make(file.c_str(), out.c_str(), 0, message.data(), message.size()), 0);
     EXPECT_STREQ(message.data(), "");
     EXPECT_EQ(foreglow_make(file.c_str(), out.c_str(), 0, message.data(), message.size()), 2)

@@ -15,7 +15,7 @@ namespace {
 using testing::has;
 using testing::message_of;
 
-constexpr const char* study = R"(model = "disc-and-loops"
+constexpr const char* study = R"(model = "quick-sketch"
 nside = 8
 lmax = 24
 [[channel]]

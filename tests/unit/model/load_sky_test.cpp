@@ -299,7 +299,7 @@ TEST_F(LoadSky, TheCheckCountsWhatStaysInMemory) {
 }
 
 TEST_F(LoadSky, TheBundledSkyNeedsNoFile) {
-    const ModelSpec bundled = read_bundled_model("disc-and-loops");
+    const ModelSpec bundled = read_bundled_model("quick-sketch");
     EXPECT_EQ(check_model_maps(bundled, HealpixGrid(8), 16, true).frame, Frame::Galactic);
     const SkyModel sky = load_sky(bundled, HealpixGrid(8), 16, true, progress_);
     EXPECT_FALSE(sky.labels.empty());

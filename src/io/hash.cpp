@@ -114,15 +114,32 @@ std::string sha256_of_file(const std::filesystem::path& path) {
     return sum.finish();
 }
 
-std::string xxh3_128_of_file(const std::filesystem::path& path) {
+namespace {
+
+// Streams into one XXH3-128: `feed` calls add(bytes) on the pieces in order.
+template <class Feed>
+std::string xxh3_128_of(const Feed& feed) {
     const std::unique_ptr<XXH3_state_t, decltype(&XXH3_freeState)> state(XXH3_createState(), XXH3_freeState);
     if (!state || XXH3_128bits_reset(state.get()) != XXH_OK) throw std::bad_alloc();
-    OpenFile(path).stream_mapped([&](std::span<const std::byte> bytes) {
+    feed([&](std::span<const std::byte> bytes) {
         XXH3_128bits_update(state.get(), bytes.data(), bytes.size());
     });
     XXH128_canonical_t canonical;
     XXH128_canonicalFromHash(&canonical, XXH3_128bits_digest(state.get()));
     return to_hex(canonical.digest);
+}
+
+}  // namespace
+
+std::string xxh3_128_of_file(const std::filesystem::path& path) {
+    return xxh3_128_of([&](const auto& add) { OpenFile(path).stream_mapped(add); });
+}
+
+std::string xxh3_128_of_pieces(std::span<const std::span<const std::byte>> pieces) {
+    return xxh3_128_of([&](const auto& add) {
+        for (const std::span<const std::byte> piece : pieces)
+            add(piece);
+    });
 }
 
 }  // namespace foreglow

@@ -20,4 +20,7 @@ namespace foreglow {
 /// Returns the SHA-256 of bytes in memory, 64 lower-case hexadecimal digits.
 [[nodiscard]] std::string sha256_of_bytes(std::span<const std::byte> bytes);
 
+/// Returns the XXH3-128 of several pieces of memory one after the other, in the same form as that of a file.
+[[nodiscard]] std::string xxh3_128_of_pieces(std::span<const std::span<const std::byte>> pieces);
+
 }  // namespace foreglow

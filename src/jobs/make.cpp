@@ -122,10 +122,12 @@ MakeSummary run_make(MakeOptions options, Progress& progress) {
     const Plan plan = make_plan(std::move(options.plan));
     for (const std::string& warning : plan.warnings)
         progress.warn(warning);
-    progress.begin("loading the sky");
+    const bool has_phases = plan.model.galaxy.has_value();  // of its own
+    if (!has_phases) progress.begin("loading the sky");
     SkyModel loaded =
-        load_sky(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized, progress);
-    progress.end();
+        load_sky(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized, progress,
+                 {plan.channels, plan.study.accuracy, plan.cache});
+    if (!has_phases) progress.end();
     const DetailedSky sky(plan.model, std::move(loaded), plan.study.seed, plan.study.polarized, progress);
     OutputFolder folder(plan.out, replace);
     MakeResult result;

@@ -109,7 +109,7 @@ class PixelSource {
     [[nodiscard]] std::size_t group_size() const { return route_.channel_count(); }
     [[nodiscard]] std::int64_t strip_pixels() const { return std::int64_t{1} << 22; }
     [[nodiscard]] SkyStrip make_strip(const RingStrip& strip, std::size_t, std::size_t) const {
-        return make_sky_strip(sky_, strip, polarized_);
+        return route_.make_strip(sky_, strip);
     }
     void make_pixels(const SkyStrip& strip, std::size_t channel, std::size_t begin, std::size_t end,
                      std::span<const std::span<double>> out) const {

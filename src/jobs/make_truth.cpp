@@ -163,7 +163,7 @@ void write_channel_skies(const Plan& plan, const SkyModel& sky, std::optional<in
         MapFile file = open_channel_sky(plan, sky, folder, c, realization, route.error_of(c), result);
         for (const RingStrip& strip : cut_into_strips(sky.grid, strip_pixels)) {
             check_interrupt();
-            const SkyStrip values = make_sky_strip(sky, strip, plan.study.polarized);
+            const SkyStrip values = route.make_strip(sky, strip);
             std::array<std::vector<double>, 3> columns;
             std::array<std::vector<double>*, 3> targets{};
             std::array<std::span<double>, 3> views;

@@ -22,7 +22,7 @@ ModelSpec read_study_model(const StudySpec& study) {
 }
 
 bool has_polarization(const ModelSpec& model) {
-    return model.sketch.has_value() || model.polarization.has_value();
+    return model.sketch.has_value() || model.galaxy.has_value() || model.polarization.has_value();
 }
 
 void check_polarization(const StudySpec& study, const ModelSpec& model) {
@@ -153,8 +153,9 @@ Plan make_plan(PlanRequest request) {
     plan.model = read_study_model(plan.study);
     check_polarization(plan.study, plan.model);
     plan.channels = make_channels(plan.study);
-    plan.model_maps =
-        check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax, plan.study.polarized);
+    plan.model_maps = check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax,
+                                       plan.study.polarized, plan.channels);
+    plan.cache = std::move(request.cache);
     for (const Channel& channel : plan.channels)
         plan.per_pixel.push_back(is_made_per_pixel(channel, plan.study, plan.model_maps.frame));
     if (plan.study.pixel_window) static_cast<void>(read_pixel_window(plan.study.nside, plan.study.lmax));

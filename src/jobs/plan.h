@@ -32,6 +32,7 @@ struct Plan {
     ModelMaps model_maps;           ///< what the headers of the model's maps say
     std::optional<Coverage> coverage;
     std::filesystem::path out;
+    std::optional<std::filesystem::path> cache;  ///< folder of integrated Galaxies
     std::vector<PlannedFile> files;
     std::int64_t disk_bytes = 0, memory_bytes = 0;
     double seconds = 0;  ///< rough, from costs measured on two cores
@@ -44,6 +45,7 @@ struct PlanRequest {
     std::optional<std::filesystem::path> out;  ///< else the study's stem + "-out" beside the caller
     std::optional<int> realization;            ///< just this one
     bool replace = false;
+    std::optional<std::filesystem::path> cache;  ///< folder of integrated Galaxies; nothing: none is kept
 };
 
 /// Checks a study against its model, its tables and maps, the output folder, the memory and the disk.

@@ -98,6 +98,14 @@ double law_error(const SkyLaw& law, const SpectralBasis& basis) {
 BasisErrors measure_basis_errors(const SkyModel& sky, const std::vector<Channel>& channels,
                                  const SpectralBasis& intensity, const SpectralBasis* polarized) {
     BasisErrors errors;
+    if (sky.nodes) {
+        std::vector<BandSum> bands;
+        bands.reserve(channels.size());
+        for (const Channel& channel : channels)
+            bands.push_back(channel.band);
+        errors.relative = measure_node_errors(*sky.nodes, bands, polarized != nullptr).rms;
+        return errors;
+    }
     double of_law = sky.electrons ? law_error(intensity_law(sky), intensity) : 0;
     if (sky.electrons && polarized != nullptr)
         of_law = std::max(of_law, law_error(polarized_law(sky), *polarized));

@@ -50,13 +50,20 @@ std::vector<Channel> make_channels(const StudySpec& study) {
         channel.reference = spec.frequency ? *spec.frequency : response.mean_frequency(spec.response_weights);
         if (!response.is_delta())
             channel.bandwidth = Frequency::from_hz(response.highest().hz() - response.lowest().hz());
-        channel.band = make_band_sum(response, spec.response_weights,
-                                     {study.unit, channel.reference, spec.reference_flux_index, area});
+        channel.response = response;
+        channel.response_weights = spec.response_weights;
+        channel.calibration = {study.unit, channel.reference, spec.reference_flux_index, area};
+        channel.band = make_band_sum(response, channel.response_weights, channel.calibration);
         channel.beam = make_beam(spec, study.lmax);
         channel.beam_fwhm = spec.beam_fwhm;
         channels.push_back(std::move(channel));
     }
     return channels;
+}
+
+BandSum refine_band(const Channel& channel, const BandRefinement& refinement) {
+    if (!channel.response) return channel.band;
+    return make_band_sum(*channel.response, channel.response_weights, channel.calibration, &refinement);
 }
 
 bool is_made_per_pixel(const Channel& channel, const StudySpec& study, Frame sky_frame) {

@@ -20,7 +20,14 @@ struct Channel {
     BandSum band;                        ///< in the study's unit
     std::optional<BeamWindow> beam;      ///< up to the study's lmax
     std::optional<Angle> beam_fwhm;      ///< where the beam is Gaussian
+    /// What the band was made from; nothing where a band was given outright.
+    std::optional<Response> response;
+    ResponseWeights response_weights = ResponseWeights::Temperature;
+    Calibration calibration;
 };
+
+/// Makes a channel's band with nodes close enough for what turns with lambda^2 inside it.
+[[nodiscard]] BandSum refine_band(const Channel& channel, const BandRefinement& refinement);
 
 /// Reads responses and beam windows and makes the channels of a study.
 /// @throws InputError or DataError with the place where a file is missing, broken, or shorter than lmax

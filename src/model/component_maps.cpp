@@ -48,15 +48,18 @@ void for_each_sky_strip(const SkyModel& sky, bool with_polarization,
 
 SpectralBasis make_intensity_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
                                    double tolerance) {
+    if (sky.nodes) return make_node_basis(*sky.nodes, channels);
     return make_spectral_basis(channels, intensity_law(sky), tolerance);
 }
 
 SpectralBasis make_polarized_basis(const SkyModel& sky, const std::vector<BandSum>& channels,
                                    double tolerance) {
+    if (sky.nodes) return make_polarized_node_basis(*sky.nodes, channels);
     return make_spectral_basis(channels, polarized_law(sky), tolerance);
 }
 
 std::vector<double> make_intensity_component(const SkyModel& sky, const BandSum& component) {
+    if (sky.nodes) return sky.nodes->i[place_of_component(*sky.nodes, component, false)];
     const BandFactor law(intensity_law(sky), component, component_tolerance);
     std::vector<double> map(static_cast<std::size_t>(sky.grid.npix()));
     for_each_sky_strip(sky, false, [&](const RingStrip& strip, const SkyStrip& values) {
@@ -68,6 +71,12 @@ std::vector<double> make_intensity_component(const SkyModel& sky, const BandSum&
 }
 
 StokesComponent make_polarized_component(const SkyModel& sky, const BandSum& component) {
+    if (sky.nodes) {
+        const NodeSky& nodes = *sky.nodes;
+        const std::size_t k = place_of_component(nodes, component, true);
+        return nodes.q.empty() ? StokesComponent{nodes.band_q[k], nodes.band_u[k]}
+                               : StokesComponent{nodes.q[k], nodes.u[k]};
+    }
     const BandFactor law(polarized_law(sky), component, component_tolerance);
     StokesComponent maps;
     maps.q.resize(static_cast<std::size_t>(sky.grid.npix()));

@@ -108,7 +108,7 @@ FOREGLOW_INLINE void add_sample(const GalaxySamples& samples, std::size_t s, con
 }
 
 struct Accumulated {
-    double depth = 0, dispersion = 0;
+    double depth = 0, largest_depth = 0, dispersion = 0;
     double emission = 0, emission_squared = 0, random = 0;  // at 408 MHz
 };
 
@@ -119,6 +119,7 @@ FOREGLOW_INLINE void add_samples(const GalaxySamples& samples, const NodeRows& n
         add_sample<polarized>(samples, s, nodes, line.depth + 0.5 * samples.depth[s],
                               line.dispersion + 0.5 * samples.dispersion[s], sums);
         line.depth += samples.depth[s];
+        line.largest_depth = std::max(line.largest_depth, std::abs(line.depth));
         line.dispersion += samples.dispersion[s];
         const double emission = sums.emission[reference];
         line.emission += emission;
@@ -174,6 +175,7 @@ GalaxySightline GalaxyIntegral::sightline(const Vector3& direction, std::size_t 
     }
     GalaxySightline out;
     out.depth = line.depth;
+    out.largest_depth = line.largest_depth;
     out.dispersion = line.dispersion;
     if (line.emission_squared > 0) {
         out.emitting_length = line.emission * line.emission / line.emission_squared;

@@ -13,8 +13,9 @@ namespace foreglow {
 /// What one line of sight through the Galaxy's disc shows; frequencies as in the integral.
 struct GalaxySightline {
     std::vector<double> i, q, u;  ///< K_RJ, COSMO, [K]; q and u empty without polarization
-    double depth = 0;       ///< rotation measure of the whole line [rad/m^2], positive towards the observer
-    double dispersion = 0;  ///< variance of the rotation measure [rad^2/m^4]
+    double depth = 0;  ///< rotation measure of the whole line [rad/m^2], positive towards the observer
+    double largest_depth = 0;    ///< largest |rotation measure| from the Sun to a place on the line [rad/m^2]
+    double dispersion = 0;       ///< variance of the rotation measure [rad^2/m^4]
     double emitting_length = 0;  ///< (integral of j)^2/integral of j^2 at 408 MHz [kpc]
     double random_share = 0;     ///< (2/3) b^2/B_eff^2, weighted with the emission at 408 MHz
 };

@@ -5,229 +5,183 @@
 #include <array>
 #include <cmath>
 
-#include "base/constants.h"
 #include "base/interrupt.h"
 #include "base/parallel.h"
-#include "model/galaxy_loops.h"
-#include "model/galaxy_turbulence.h"
+#include "model/galaxy_pixels.h"
 
 namespace foreglow {
 namespace {
 
-constexpr double degree = constants::pi / 180;
-constexpr double near_plane = 5 * degree;
-constexpr double thin_plane = 2 * degree;  // where the young disc is
-constexpr int fine_nside = 128;
-constexpr std::array<std::size_t, 14> ladder{24,  48,  64,  96,   128,  192,  256,
-                                             384, 512, 768, 1024, 1536, 2048, 4096};
+constexpr std::int64_t part_pixels = 1 << 15;
+constexpr double turn_between_nodes = 0.3;  // rad, of 2 RM lambda^2
+// Lines of sight are sorted by their largest rotation measure into those below each of these [rad/m^2].
+constexpr std::array depth_levels{30.0, 120.0, 480.0, 1920.0, 7680.0};
+constexpr std::size_t nodes_at_once = 256;  // tables of more would not stay in the cache
 
-double latitude_of(const Vector3& n) {
-    return std::asin(std::clamp(n[2], -1.0, 1.0));
-}
-
-Vector3 direction_of(double lon, double lat) {
-    return {std::cos(lat) * std::cos(lon), std::cos(lat) * std::sin(lon), std::sin(lat)};
-}
-
-// Lines of sight in rings of longitude at some latitudes.
-std::vector<Vector3> make_probes(std::span<const double> latitudes_deg, int longitudes) {
-    std::vector<Vector3> probes;
-    for (std::size_t i = 0; i < latitudes_deg.size(); ++i)
-        for (int j = 0; j < longitudes; ++j) {
-            const double shift = static_cast<double>(i) / static_cast<double>(latitudes_deg.size());
-            probes.push_back(
-                direction_of(2 * constants::pi * (j + shift) / longitudes, latitudes_deg[i] * degree));
-        }
-    return probes;
-}
-
-double difference(const GalaxySightline& coarse, const GalaxySightline& fine) {
-    double worst = 0;
-    for (std::size_t k = 0; k < fine.i.size(); ++k) {
-        if (!(fine.i[k] > 0)) continue;
-        worst = std::max(worst, std::abs(coarse.i[k] - fine.i[k]) / fine.i[k]);
-        if (fine.q.empty()) continue;
-        worst = std::max(worst, std::hypot(coarse.q[k] - fine.q[k], coarse.u[k] - fine.u[k]) / fine.i[k]);
+// Calls work(pixel) for all pixels of a list of `count`, with threads, in parts that can be stopped.
+template <class Work>
+void for_each_pixel(std::int64_t count, Progress& progress, std::int64_t done, const Work& work) {
+    for (std::int64_t first = 0; first < count; first += part_pixels) {
+        check_interrupt();
+        const std::int64_t end = std::min(first + part_pixels, count);
+        parallel_for_blocks(end - first, 64, [&](std::int64_t a, std::int64_t b) {
+            for (std::int64_t p = first + a; p < first + b; ++p)
+                work(p);
+        });
+        progress.step(done + end);
     }
-    return worst;
 }
 
-struct Steps {
-    std::size_t steps = 0;
-    double error = 0;
+void store(const GalaxySightline& line, std::size_t place, GalaxyMaps& maps) {
+    for (std::size_t k = 0; k < maps.i.size(); ++k)
+        maps.i[k][place] = line.i[k];
+    for (std::size_t k = 0; k < maps.q.size(); ++k) {
+        maps.q[k][place] = line.q[k];
+        maps.u[k][place] = line.u[k];
+    }
+}
+
+GalaxyMaps make_empty_maps(std::size_t frequencies, std::size_t pixels, bool polarized) {
+    GalaxyMaps maps;
+    maps.i.assign(frequencies, std::vector<double>(pixels));
+    if (polarized) maps.q = maps.u = maps.i;
+    return maps;
+}
+
+// Some bands that are integrated together: their nodes side by side.
+struct Batch {
+    std::size_t first_band = 0;
+    std::vector<BandSum> bands;
+    std::vector<Frequency> nodes;
 };
 
-Steps choose_steps(const GalaxyIntegral& integral, const std::vector<Vector3>& probes, std::size_t fewest,
-                   double tolerance, bool polarized) {
-    Steps result;
-    for (const std::size_t steps : ladder) {
-        if (steps < fewest) continue;
-        std::vector<double> worst(probes.size());
-        parallel_for_blocks(
-            static_cast<std::int64_t>(probes.size()), 4, [&](std::int64_t begin, std::int64_t end) {
-                for (auto p = static_cast<std::size_t>(begin); p < static_cast<std::size_t>(end); ++p)
-                    worst[p] = difference(integral.sightline(probes[p], steps, polarized),
-                                          integral.sightline(probes[p], 2 * steps, polarized));
-            });
-        // What doubling changes is three quarters of the midpoint rule's error.
-        result = {steps, *std::max_element(worst.begin(), worst.end()) * 4 / 3};
-        if (result.error <= tolerance) break;
+std::vector<Batch> make_batches(std::span<const RefinedBand> bands, double depth) {
+    std::vector<Batch> batches;
+    for (std::size_t b = 0; b < bands.size(); ++b) {
+        BandSum band = bands[b](turn_between_nodes / (2 * depth));
+        if (batches.empty() || batches.back().nodes.size() + band.hz.size() > nodes_at_once)
+            batches.push_back({b, {}, {}});
+        for (const double hz : band.hz)
+            batches.back().nodes.push_back(Frequency::from_hz(hz));
+        batches.back().bands.push_back(std::move(band));
     }
-    return result;
+    return batches;
 }
 
-/// Makes the pixels of a grid one by one.
-class PixelMaker {
-  public:
-    PixelMaker(const GalaxySpec& galaxy, const GalaxyTable& table, const GalaxyIntegral& integral,
-               const HealpixGrid& grid, bool polarized, GalaxyMaps& maps)
-        : galaxy_(galaxy),
-          integral_(integral),
-          spectra_(galaxy, table, maps.frequencies),
-          grid_(grid),
-          polarized_(polarized),
-          maps_(maps) {
-        if (galaxy.turbulence || galaxy.index_scatter > 0)
-            fields_ = make_turbulence_fields(galaxy, grid, polarized);
-    }
-
-    void make(std::int64_t pixel) const {
-        const auto p = static_cast<std::size_t>(pixel);
-        const Vector3 direction = grid_.direction(pixel);
-        GalaxySightline line;
-        if (galaxy_.disc) {
-            line = mean_line(pixel, direction);
-            add_turbulence(line, p);
-        } else {
-            line.i.assign(maps_.frequencies.size(), 0.0);
-            if (polarized_) line.q = line.u = line.i;
+void store_averages(const GalaxySightline& line, const Batch& batch, std::size_t pixel, GalaxyStokes& out) {
+    std::size_t node = 0;
+    for (std::size_t b = 0; b < batch.bands.size(); ++b) {
+        double q = 0;
+        double u = 0;
+        for (const double weight : batch.bands[b].weights) {
+            q += weight * line.q[node];
+            u += weight * line.u[node];
+            ++node;
         }
-        if (galaxy_.loops) add_loops(line, direction);
-        for (std::size_t k = 0; k < line.i.size(); ++k) {
-            const double tilt = fields_.index.empty() ? 1.0
-                                                      : std::exp(galaxy_.index_scatter * fields_.index[p] *
-                                                                 std::log(maps_.frequencies[k].hz() / 408e6));
-            maps_.i[k][p] = tilt * line.i[k];
-            if (!polarized_) continue;
-            maps_.q[k][p] = tilt * line.q[k];
-            maps_.u[k][p] = tilt * line.u[k];
-        }
-        maps_.depth[p] = line.depth;
+        out.q[batch.first_band + b][pixel] = q;
+        out.u[batch.first_band + b][pixel] = u;
     }
-
-  private:
-    [[nodiscard]] GalaxySightline line_of(const Vector3& direction) const {
-        const bool is_near = std::abs(latitude_of(direction)) < near_plane;
-        return integral_.sightline(direction,
-                                   is_near ? maps_.sampling.steps_near_plane : maps_.sampling.steps_elsewhere,
-                                   polarized_);
-    }
-
-    [[nodiscard]] GalaxySightline mean_line(std::int64_t pixel, const Vector3& direction) const {
-        const double reach = thin_plane + 0.5 * std::sqrt(grid_.pixel_area());
-        if (grid_.nside() >= fine_nside || std::abs(latitude_of(direction)) > reach)
-            return line_of(direction);
-        const HealpixGrid fine(fine_nside);
-        const std::int64_t ratio = fine_nside / grid_.nside();
-        const std::int64_t children = ratio * ratio;
-        const std::int64_t first = grid_.ring_to_nested(pixel) * children;
-        const double weight = 1 / static_cast<double>(children);
-        GalaxySightline mean;
-        mean.i.assign(maps_.frequencies.size(), 0.0);
-        if (polarized_) mean.q = mean.u = mean.i;
-        for (std::int64_t c = 0; c < children; ++c) {
-            const GalaxySightline line = line_of(fine.direction(fine.nested_to_ring(first + c)));
-            for (std::size_t k = 0; k < mean.i.size(); ++k) {
-                mean.i[k] += weight * line.i[k];
-                if (!polarized_) continue;
-                mean.q[k] += weight * line.q[k];
-                mean.u[k] += weight * line.u[k];
-            }
-            mean.depth += weight * line.depth;
-            mean.dispersion += weight * line.dispersion;
-            mean.emitting_length += weight * line.emitting_length;
-            mean.random_share += weight * line.random_share;
-        }
-        return mean;
-    }
-
-    void add_turbulence(GalaxySightline& line, std::size_t p) const {
-        if (fields_.brightness.empty()) return;
-        const TurbulencePixel turbulence =
-            turbulence_of(galaxy_, line, fields_.brightness[p], polarized_ ? fields_.q[p] : 0.0,
-                          polarized_ ? fields_.u[p] : 0.0);
-        for (std::size_t k = 0; k < line.i.size(); ++k) {
-            line.i[k] *= turbulence.factor;
-            if (!polarized_) continue;
-            const double lambda = constants::speed_of_light / maps_.frequencies[k].hz();
-            const double left = std::exp(-0.5 * line.dispersion * lambda * lambda * lambda * lambda);
-            line.q[k] = line.q[k] * turbulence.factor + line.i[k] * left * turbulence.q;
-            line.u[k] = line.u[k] * turbulence.factor + line.i[k] * left * turbulence.u;
-        }
-    }
-
-    void add_loops(GalaxySightline& line, const Vector3& direction) const {
-        const GalaxyRay ray(galaxy_, direction);
-        for (std::size_t l = 0; l < galaxy_.shells.size(); ++l) {
-            const LoopLight light = loop_light(galaxy_.shells[l], ray);
-            if (light.brightness == 0) continue;
-            for (std::size_t k = 0; k < line.i.size(); ++k) {
-                const double brightness = light.brightness * spectra_.ratio[l][k];
-                line.i[k] += brightness;
-                if (!polarized_) continue;
-                line.q[k] += brightness * spectra_.fraction[l][k] * light.q_share;
-                line.u[k] += brightness * spectra_.fraction[l][k] * light.u_share;
-            }
-        }
-    }
-
-    const GalaxySpec& galaxy_;
-    const GalaxyIntegral& integral_;
-    LoopSpectra spectra_;
-    const HealpixGrid& grid_;
-    bool polarized_;
-    TurbulenceFields fields_;
-    GalaxyMaps& maps_;
-};
+}
 
 }  // namespace
 
-GalaxySampling choose_sampling(const GalaxySpec& galaxy, const GalaxyIntegral& integral, bool polarized) {
-    const bool is_usual = galaxy.tolerance <= 1e-3;
-    constexpr std::array near{0.2, -0.9, 2.1, -4.4};
-    constexpr std::array far{6.0, -12.0, 25.0, -45.0, 80.0};
-    const Steps plane =
-        choose_steps(integral, make_probes(near, 72), is_usual ? 128 : 24, galaxy.tolerance, polarized);
-    const Steps rest =
-        choose_steps(integral, make_probes(far, 24), is_usual ? 48 : 24, galaxy.tolerance, polarized);
-    return {plane.steps, rest.steps, std::max(plane.error, rest.error)};
-}
+struct GalaxyMaker::Impl {
+    GalaxySpec galaxy;
+    std::shared_ptr<const GalaxyTable> table;
+    HealpixGrid grid;
+    TurbulenceFields fields;
 
-GalaxyMaps make_galaxy_maps(const GalaxySpec& galaxy, const HealpixGrid& grid,
-                            std::span<const Frequency> frequencies, bool polarized, Progress& progress) {
-    const auto npix = static_cast<std::size_t>(grid.npix());
-    GalaxyMaps maps;
-    maps.frequencies.assign(frequencies.begin(), frequencies.end());
-    maps.i.assign(frequencies.size(), std::vector<double>(npix));
-    if (polarized) maps.q = maps.u = maps.i;
-    maps.depth.resize(npix);
-    const GalaxyTable table(galaxy);
-    const GalaxyIntegral integral(galaxy, table, frequencies);
-    if (galaxy.disc) maps.sampling = choose_sampling(galaxy, integral, polarized);
-    const PixelMaker maker(galaxy, table, integral, grid, polarized, maps);
-    constexpr std::int64_t part = 1 << 15;
-    progress.begin("integrating the Galaxy", grid.npix());
-    for (std::int64_t first = 0; first < grid.npix(); first += part) {
-        check_interrupt();
-        const std::int64_t count = std::min(part, grid.npix() - first);
-        parallel_for_blocks(count, 64, [&](std::int64_t begin, std::int64_t end) {
-            for (std::int64_t p = begin; p < end; ++p)
-                maker.make(first + p);
-        });
-        progress.step(first + count);
+    [[nodiscard]] GalaxyPixels pixels(std::span<const Frequency> frequencies, bool polarized) const {
+        return {galaxy, *table, fields, grid, polarized, frequencies};
     }
+    // The largest rotation measure on each pixel's lines of sight.
+    [[nodiscard]] std::vector<double> largest_depths(const GalaxySampling& sampling) const {
+        const std::array one{Frequency::from_hz(408e6)};
+        const GalaxyPixels maker = pixels(one, false);
+        std::vector<double> depths(static_cast<std::size_t>(grid.npix()));
+        Progress quiet;
+        for_each_pixel(grid.npix(), quiet, 0, [&](std::int64_t p) {
+            depths[static_cast<std::size_t>(p)] = maker.pixel(p, sampling).largest_depth;
+        });
+        return depths;
+    }
+};
+
+GalaxyMaker::GalaxyMaker(const GalaxySpec& galaxy, std::shared_ptr<const GalaxyTable> table,
+                         const HealpixGrid& grid, bool polarized)
+    : impl_(std::make_unique<Impl>(
+          Impl{galaxy, std::move(table), grid, make_turbulence_fields(galaxy, grid, polarized)})) {}
+
+GalaxyMaker::~GalaxyMaker() = default;
+
+GalaxyMaps GalaxyMaker::make_maps(std::span<const Frequency> frequencies, bool polarized,
+                                  Progress& progress) const {
+    const std::int64_t npix = impl_->grid.npix();
+    GalaxyMaps maps = make_empty_maps(frequencies.size(), static_cast<std::size_t>(npix), polarized);
+    const GalaxyPixels maker = impl_->pixels(frequencies, polarized);
+    if (impl_->galaxy.disc) maps.sampling = choose_sampling(impl_->galaxy, maker.integral(), polarized);
+    progress.begin("integrating the Galaxy", npix);
+    for_each_pixel(npix, progress, 0, [&](std::int64_t p) {
+        store(maker.pixel(p, maps.sampling), static_cast<std::size_t>(p), maps);
+    });
     progress.end();
     return maps;
+}
+
+GalaxyMaps GalaxyMaker::make_pixels(std::span<const std::int64_t> pixels,
+                                    std::span<const Frequency> frequencies, bool polarized) const {
+    GalaxyMaps maps = make_empty_maps(frequencies.size(), pixels.size(), polarized);
+    const GalaxyPixels maker = impl_->pixels(frequencies, polarized);
+    parallel_for_blocks(
+        static_cast<std::int64_t>(pixels.size()), 4, [&](std::int64_t begin, std::int64_t end) {
+            for (auto p = static_cast<std::size_t>(begin); p < static_cast<std::size_t>(end); ++p)
+                store(maker.pixel(pixels[p], maps.sampling), p, maps);
+        });
+    return maps;
+}
+
+GalaxyStokes GalaxyMaker::make_band_stokes(std::span<const RefinedBand> bands, Progress& progress) const {
+    const auto npix = static_cast<std::size_t>(impl_->grid.npix());
+    GalaxyStokes out;
+    out.q.assign(bands.size(), std::vector<double>(npix));
+    out.u = out.q;
+    GalaxySampling sampling;
+    if (impl_->galaxy.disc) {
+        std::vector<Frequency> middles;
+        for (const RefinedBand& band : bands) {
+            const BandSum nodes = band(1e30);
+            middles.push_back(Frequency::from_hz(nodes.hz[nodes.hz.size() / 2]));
+        }
+        middles.resize(std::min<std::size_t>(middles.size(), 32));
+        const GalaxyIntegral probes(impl_->galaxy, *impl_->table, middles);
+        sampling = choose_sampling(impl_->galaxy, probes, true);
+    }
+    progress.begin("integrating the Galaxy's polarization band by band", impl_->grid.npix());
+    const std::vector<double> depths = impl_->largest_depths(sampling);
+    std::int64_t done = 0;
+    for (std::size_t level = 0; level < depth_levels.size(); ++level) {
+        const bool is_last = level + 1 == depth_levels.size();
+        std::vector<std::int64_t> pixels;
+        for (std::size_t p = 0; p < npix; ++p)
+            if ((is_last || depths[p] <= depth_levels[level]) &&
+                (level == 0 || depths[p] > depth_levels[level - 1]))
+                pixels.push_back(static_cast<std::int64_t>(p));
+        if (pixels.empty()) continue;
+        bool is_coarse = false;
+        for (const Batch& batch : make_batches(bands, depth_levels[level])) {
+            const GalaxyPixels maker = impl_->pixels(batch.nodes, true);
+            for_each_pixel(static_cast<std::int64_t>(pixels.size()), progress, done, [&](std::int64_t p) {
+                const std::int64_t pixel = pixels[static_cast<std::size_t>(p)];
+                store_averages(maker.pixel(pixel, sampling), batch, static_cast<std::size_t>(pixel), out);
+            });
+            for (const BandSum& band : batch.bands)
+                is_coarse = is_coarse || band.hz.size() >= most_band_nodes;
+        }
+        done += static_cast<std::int64_t>(pixels.size());
+        if (is_coarse) out.coarse_pixels += static_cast<std::int64_t>(pixels.size());
+    }
+    progress.end();
+    return out;
 }
 
 }  // namespace foreglow

@@ -208,9 +208,10 @@ class HeaderCheck {
 
 }  // namespace
 
-ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax,
-                           bool with_polarization) {
+ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization,
+                           std::span<const Channel> channels) {
     check_polarization_of(model, with_polarization);
+    if (model.galaxy) return {Frame::Galactic, count_galaxy_values(grid, with_polarization, channels), 0};
     const std::int64_t random = detail_held_values(model, grid, with_polarization);
     HeaderCheck check(grid, lmax);
     if (model.electrons) check.electrons(*model.electrons);
@@ -233,8 +234,11 @@ ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int 
 }
 
 SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax, bool with_polarization,
-                  Progress& progress) {
+                  Progress& progress, const SkyUse& use) {
     check_polarization_of(model, with_polarization);
+    if (model.galaxy)
+        return make_galaxy_sky(*model.galaxy, model.reference_frequency, grid, with_polarization, use,
+                               progress);
     if (model.sketch) {
         SkyModel sky = make_sketch_sky(*model.sketch, model.reference_frequency, grid, with_polarization);
         if (model.electrons) add_electrons(model, sky, nullptr, progress);

@@ -4,6 +4,7 @@
 #include <cstdint>
 
 #include "base/progress.h"
+#include "model/galaxy_sky.h"
 #include "model/model_spec.h"
 #include "model/sky_model.h"
 
@@ -22,8 +23,9 @@ struct ModelMaps {
 /// A missing or unknown unit, frame or polarization convention is a question to the user: the message names
 /// the line to add.
 /// @throws InputError where something is left open or contradicts; DataError where a file is broken
+/// @param channels  that the built-in Galaxy would be integrated for
 [[nodiscard]] ModelMaps check_model_maps(const ModelSpec& model, const HealpixGrid& grid, int lmax,
-                                         bool with_polarization);
+                                         bool with_polarization, std::span<const Channel> channels = {});
 
 /// Reads a model's maps and makes the sky on a grid, in the frame of the intensity map.
 ///
@@ -32,8 +34,9 @@ struct ModelMaps {
 /// is analysed up to 2.5 lmax, so that what lies above lmax is not pressed into what lies below); indices,
 /// curvatures and fractions by bilinear interpolation, or, from a finer grid, by the mean weighted with the
 /// brightness.
+/// @param use  what the sky will be asked for; only the built-in Galaxy wants it
 /// @throws InputError, DataError, FileError as above and as the reader of maps
 [[nodiscard]] SkyModel load_sky(const ModelSpec& model, const HealpixGrid& grid, int lmax,
-                                bool with_polarization, Progress& progress);
+                                bool with_polarization, Progress& progress, const SkyUse& use = {});
 
 }  // namespace foreglow

@@ -17,7 +17,7 @@ class PixelRoute {
     /// @throws NumericError where a band is too wide for the range of indices
     PixelRoute(const SkyModel& sky, std::span<const BandSum> bands, bool polarized, double tolerance);
 
-    [[nodiscard]] std::size_t channel_count() const { return intensity_laws_.size(); }
+    [[nodiscard]] std::size_t channel_count() const { return channel_count_; }
     /// Returns the largest relative error of a pixel of I, or of P, that this channel's average makes.
     [[nodiscard]] double error_of(std::size_t channel) const;
 
@@ -28,7 +28,17 @@ class PixelRoute {
                      std::span<const std::span<double>> out,
                      ExpPrecision precision = ExpPrecision::Double) const;
 
+    /// Makes the strip that make_pixels wants.
+    [[nodiscard]] SkyStrip make_strip(const SkyModel& sky, const RingStrip& strip) const;
+
   private:
+    void make_node_pixels(const SkyStrip& strip, std::size_t channel, std::size_t begin, std::size_t end,
+                          std::span<const std::span<double>> out) const;
+
+    std::size_t channel_count_;
+    bool polarized_;
+    Matrix node_weights_, polarized_weights_;  ///< [channels][K] of a sky given at nodes
+    std::vector<double> node_errors_;          ///< [channels]
     std::vector<BandFactor> intensity_laws_;
     std::vector<BandFactor> polarized_laws_;  ///< empty where Q and U share the intensity's
 };

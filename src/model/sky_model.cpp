@@ -92,6 +92,33 @@ ParameterRange shifted(const PixelField::Range& index, const PixelField::Range& 
 
 }  // namespace
 
+namespace {
+
+std::vector<std::vector<double>> copy_strip(const SkyModel& sky, const RingStrip& strip,
+                                            const std::vector<std::vector<double>>& maps) {
+    std::vector<std::vector<double>> out;
+    out.reserve(maps.size());
+    for (const auto& map : maps) {
+        out.emplace_back(static_cast<std::size_t>(pixel_count(sky.grid, strip)));
+        for (const PixelRange& range : pixel_ranges(sky.grid, strip))
+            copy_range(map, range, out.back());
+    }
+    return out;
+}
+
+}  // namespace
+
+SkyStrip make_node_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization) {
+    FOREGLOW_EXPECTS(sky.nodes != nullptr);
+    const NodeSky& nodes = *sky.nodes;
+    SkyStrip values = make_sky_strip(sky, strip, with_polarization);
+    values.node_i = copy_strip(sky, strip, nodes.i);
+    if (!with_polarization) return values;
+    values.node_q = copy_strip(sky, strip, nodes.q.empty() ? nodes.band_q : nodes.q);
+    values.node_u = copy_strip(sky, strip, nodes.u.empty() ? nodes.band_u : nodes.u);
+    return values;
+}
+
 SkyStrip make_sky_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization) {
     const auto n = static_cast<std::size_t>(pixel_count(sky.grid, strip));
     SkyStrip values;

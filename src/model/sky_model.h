@@ -9,6 +9,7 @@
 #include <vector>
 
 #include "base/quantity.h"
+#include "model/node_sky.h"
 #include "model/pixel_field.h"
 #include "model/sky_law.h"
 #include "model/spectrum_fit.h"
@@ -50,6 +51,8 @@ struct SkyStrip {
     std::vector<double> q, u;  ///< K_RJ at the polarization's reference frequency, COSMO
     /// Of Q and U, at the polarization's reference frequency; empty where they are the intensity's own.
     std::vector<double> polarized_index, polarized_curvature;
+    /// Of a sky given at nodes: maps at the nodes, and of Q and U in the channels where these are their own.
+    std::vector<std::vector<double>> node_i, node_q, node_u;
 
     [[nodiscard]] const std::vector<double>& index_of_polarization() const {
         return polarized_index.empty() ? index : polarized_index;
@@ -80,6 +83,9 @@ struct SkyModel {
     std::optional<Angle> beam_fwhm;  ///< the template's own
     /// The template's spectra, measured at its own nside, where the model's detail continues them.
     std::optional<SpectrumFit> intensity_fit, polarization_fit;
+    /// Where the sky follows no law but is given at node frequencies; intensity, index, curvature and
+    /// polarization above are then what it is at the reference frequency.
+    std::shared_ptr<const NodeSky> nodes;
     std::vector<std::string>
         labels;  ///< sentences a reader of the maps must see, e.g. that the sky is invented
 };
@@ -95,6 +101,9 @@ void add_local_spectrum(const SkyModel& sky, SkyStrip& strip);
 /// Returns T(nu)/T(nu0) of each pixel of a strip of intensity, NaN where undefined.
 [[nodiscard]] std::vector<double> make_brightness_ratios(const SkyModel& sky, const SkyStrip& strip,
                                                          Frequency frequency);
+
+/// Makes a strip of a sky given at nodes, with its node maps.
+[[nodiscard]] SkyStrip make_node_strip(const SkyModel& sky, const RingStrip& strip, bool with_polarization);
 
 /// Returns bounds of index and curvature at the reference frequency over the sky's pixels.
 /// @throws DataError where no pixel of a map is defined

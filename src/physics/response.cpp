@@ -3,7 +3,9 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 
+#include "base/constants.h"
 #include "base/error.h"
 #include "math/gauss_legendre.h"
 
@@ -35,6 +37,12 @@ double weight_power(double hz, double scale, ResponseWeights weights) {
             return x * x;
     }
     return 1.0;
+}
+
+// How far lambda^2 runs between two frequencies [m^2].
+double lambda2_between(double low, double high) {
+    const double c = constants::speed_of_light;
+    return c * c * (1 / (low * low) - 1 / (high * high));
 }
 
 double calibration_temperature(const Calibration& calibration, double hz) {
@@ -72,8 +80,13 @@ Response Response::table(std::vector<ResponseRow> rows) {
     return Response(std::move(rows));
 }
 
-std::vector<Response::Node> Response::nodes(ResponseWeights weights) const {
+std::vector<Response::Node> Response::nodes(ResponseWeights weights, const BandRefinement* refinement) const {
     if (is_delta()) return {{rows_.front().frequency.hz(), 1.0}};
+    const double lambda2_step =
+        refinement == nullptr
+            ? std::numeric_limits<double>::infinity()
+            : std::max(refinement->lambda2_step, lambda2_between(lowest().hz(), highest().hz()) /
+                                                     static_cast<double>(refinement->most_nodes));
     std::vector<Node> all;
     const double scale = rows_.back().frequency.hz();
     for (std::size_t i = 1; i < rows_.size(); ++i) {
@@ -82,10 +95,11 @@ std::vector<Response::Node> Response::nodes(ResponseWeights weights) const {
         const double t_low = rows_[i - 1].transmission;
         const double t_high = rows_[i].transmission;
         if (!(high > low) || (t_low == 0 && t_high == 0)) continue;
-        const int cuts =
-            std::max(1, static_cast<int>(std::ceil(std::log(high / low) / std::log(widest_ratio))));
+        int cuts = std::max(1, static_cast<int>(std::ceil(std::log(high / low) / std::log(widest_ratio))));
+        const QuadratureRule rule = make_gauss_legendre(points_for(std::pow(high / low, 1.0 / cuts)));
+        const double wanted = lambda2_between(low, high) / lambda2_step;
+        cuts = std::max(cuts, static_cast<int>(std::ceil(wanted / static_cast<double>(rule.nodes.size()))));
         const double step_ratio = std::pow(high / low, 1.0 / cuts);
-        const QuadratureRule rule = make_gauss_legendre(points_for(step_ratio));
         for (int cut = 0; cut < cuts; ++cut) {
             const double a = low * std::pow(step_ratio, cut);
             const double b = cut + 1 == cuts ? high : low * std::pow(step_ratio, cut + 1);
@@ -110,8 +124,9 @@ Frequency Response::mean_frequency(ResponseWeights weights) const {
     return Frequency::from_hz(moment / sum);
 }
 
-BandSum make_band_sum(const Response& response, ResponseWeights weights, const Calibration& calibration) {
-    const auto nodes = response.nodes(weights);
+BandSum make_band_sum(const Response& response, ResponseWeights weights, const Calibration& calibration,
+                      const BandRefinement* refinement) {
+    const auto nodes = response.nodes(weights, refinement);
     double denominator = 0;
     for (const auto& node : nodes)
         denominator += node.weight * calibration_temperature(calibration, node.hz);

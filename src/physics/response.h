@@ -16,6 +16,12 @@ struct ResponseRow {
     double transmission = 0;
 };
 
+/// How close a band's nodes must lie for what turns with lambda^2 inside it.
+struct BandRefinement {
+    double lambda2_step = 0;     ///< mean distance between nodes at most [m^2] ...
+    std::size_t most_nodes = 0;  ///< ... unless the band would take more than about so many
+};
+
 /// What a channel lets through: one frequency, or a transmission tau(nu) that is linear between rows and zero
 /// outside them.
 class Response {
@@ -42,7 +48,9 @@ class Response {
     };
     /// Returns Gauss-Legendre nodes on each linear piece, dense enough that integrals of laws nu^p, |p| < 8,
     /// are good to 1e-13.
-    [[nodiscard]] std::vector<Node> nodes(ResponseWeights weights) const;
+    /// @param refinement  where given, nodes lie closer still: see there
+    [[nodiscard]] std::vector<Node> nodes(ResponseWeights weights,
+                                          const BandRefinement* refinement = nullptr) const;
 
   private:
     explicit Response(std::vector<ResponseRow> rows) : rows_(std::move(rows)) {}
@@ -67,7 +75,9 @@ struct Calibration {
 /// calibration source: 1 for K_RJ, x^2 e^x/(e^x-1)^2 for K_CMB, c^2 I/(2 k nu^2) of 1 MJy/sr
 /// (nu/reference)^reference_flux_index (Planck 2013 IX, sec. 2).
 /// @return relative error of the sum below 1e-12 for laws T ~ nu^p, |p| < 6
+/// @param refinement  as in Response::nodes
 [[nodiscard]] BandSum make_band_sum(const Response& response, ResponseWeights weights,
-                                    const Calibration& calibration);
+                                    const Calibration& calibration,
+                                    const BandRefinement* refinement = nullptr);
 
 }  // namespace foreglow

@@ -4,6 +4,7 @@
 #include <gtest/gtest.h>
 #include <xxhash.h>
 
+#include <array>
 #include <cstdio>
 
 #include "base/error.h"
@@ -86,6 +87,15 @@ TEST(Hash, OfAFileThatIsNotThereIsAFileErrorWithTheReason) {
         }
         EXPECT_THROW(static_cast<void>(hash(folder.path())), FileError);  // a folder opens, but does not read
     }
+}
+
+TEST(Xxh3, OfPiecesIsThatOfTheFileTheyMake) {
+    const TemporaryFolder folder;
+    const std::string text = "one two three";
+    write_whole_file(folder.path() / "whole", text);
+    const auto bytes = std::as_bytes(std::span(text));
+    const std::array pieces{bytes.first(4), bytes.subspan(4)};
+    EXPECT_EQ(xxh3_128_of_pieces(pieces), xxh3_128_of_file(folder.path() / "whole"));
 }
 
 }  // namespace

@@ -25,7 +25,7 @@ std::vector<Frequency> megahertz(std::initializer_list<double> values) {
 GalaxyMaps make(const GalaxySpec& galaxy, int nside, const std::vector<Frequency>& frequencies,
                 bool polarized) {
     Progress quiet;
-    return make_galaxy_maps(galaxy, HealpixGrid(nside), frequencies, polarized, quiet);
+    return GalaxyMaker(galaxy, HealpixGrid(nside), polarized).make_maps(frequencies, quiet);
 }
 
 using Region = std::function<bool(double l, double b)>;

@@ -13,7 +13,6 @@ namespace foreglow {
 namespace {
 
 constexpr std::int64_t part_pixels = 1 << 15;
-constexpr double turn_between_nodes = 0.3;  // rad, of 2 RM lambda^2
 // Lines of sight are sorted by their largest rotation measure into those below each of these [rad/m^2].
 constexpr std::array depth_levels{30.0, 120.0, 480.0, 1920.0, 7680.0};
 constexpr std::size_t nodes_at_once = 256;  // tables of more would not stay in the cache
@@ -33,6 +32,7 @@ void for_each_pixel(std::int64_t count, Progress& progress, std::int64_t done, c
 }
 
 void store(const GalaxySightline& line, std::size_t place, GalaxyMaps& maps) {
+    maps.largest_depth[place] = line.largest_depth;
     for (std::size_t k = 0; k < maps.i.size(); ++k)
         maps.i[k][place] = line.i[k];
     for (std::size_t k = 0; k < maps.q.size(); ++k) {
@@ -45,6 +45,7 @@ GalaxyMaps make_empty_maps(std::size_t frequencies, std::size_t pixels, bool pol
     GalaxyMaps maps;
     maps.i.assign(frequencies, std::vector<double>(pixels));
     if (polarized) maps.q = maps.u = maps.i;
+    maps.largest_depth.resize(pixels);
     return maps;
 }
 

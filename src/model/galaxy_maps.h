@@ -21,6 +21,7 @@ namespace foreglow {
 /// The Galaxy at some frequencies in some pixels, galactic frame, K_RJ, COSMO.
 struct GalaxyMaps {
     std::vector<std::vector<double>> i, q, u;  ///< [K][pixels]; q and u empty without polarization
+    std::vector<double> largest_depth;  ///< largest |rotation measure| on a pixel's lines of sight, [pixels]
     GalaxySampling sampling;
 };
 
@@ -59,6 +60,9 @@ class GalaxyMaker {
     struct Impl;
     std::unique_ptr<Impl> impl_;
 };
+
+/// The largest turn of 2 RM lambda^2 from node to node of a band.
+inline constexpr double turn_between_nodes = 0.3;  // rad
 
 /// The most nodes of one band that make_band_stokes asks for: turns of 2 RM lambda^2 over a band of up to
 /// 380 rad are averaged exactly, and beyond it less than 1/380 is left.

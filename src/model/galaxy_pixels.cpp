@@ -13,6 +13,7 @@ constexpr double degree = constants::pi / 180;
 constexpr double near_plane = 5 * degree;
 constexpr double thin_plane = 2 * degree;  // where the young disc is
 constexpr int fine_nside = 128;
+constexpr int most_parts = 8;  // along a pixel's side
 constexpr double reference_hz = 408e6;
 
 double latitude_of(const Vector3& n) {
@@ -72,8 +73,8 @@ GalaxySightline GalaxyPixels::mean_line(std::int64_t number, const Vector3& dire
     const double reach = thin_plane + 0.5 * std::sqrt(grid_.pixel_area());
     if (grid_.nside() >= fine_nside || std::abs(latitude_of(direction)) > reach)
         return line_of(direction, sampling);
-    const HealpixGrid fine(fine_nside);
-    const std::int64_t ratio = fine_nside / grid_.nside();
+    const std::int64_t ratio = std::min(fine_nside / grid_.nside(), most_parts);
+    const HealpixGrid fine(static_cast<int>(ratio) * grid_.nside());
     const std::int64_t children = ratio * ratio;
     const std::int64_t first = grid_.ring_to_nested(number) * children;
     GalaxySightline mean;

@@ -15,8 +15,9 @@ namespace foreglow {
 
 /// Makes pixels of a grid one by one: the mean of the disc's lines of sight, turbulence, loops.
 ///
-/// Pixels near the plane of grids coarser than nside 128 are means over the pixels of nside 128 (at least
-/// four) that they hold, since the plane is thinner than they are.
+/// Pixels near the plane of grids coarser than nside 128 are means over the pixels of nside 128 that they
+/// hold (of 8 times their own nside where that is less; at least four), since the plane is thinner than they
+/// are.
 class GalaxyPixels {
   public:
     /// @param fields  outlive this, as do the others

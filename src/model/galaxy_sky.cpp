@@ -88,12 +88,21 @@ class NodeChooser {
         int count = 1;
         while (count < std::min(own, most_nodes) && !is_good(count, false))
             ++count;
-        if (!polarized_) return {make_nodes(count), false};
+        if (!polarized_ || turns_within_bands_) return {make_nodes(count), false};
         int both = count;
         while (both < std::min(own, most_polarized_nodes) && !is_good(both, true))
             ++both;
         const bool with_stokes = both >= own || is_good(both, true);
         return {make_nodes(with_stokes ? both : count), with_stokes};
+    }
+
+    // Two thirds of what the largest depth may be are met on the sampled lines of sight.
+    void look_at_rotation(std::span<const Channel> channels) {
+        const BandRefinement refinement{turn_between_nodes / (2 * 1.5 * std::max(largest_depth_, 1.0)),
+                                        most_band_nodes};
+        turns_within_bands_ = std::any_of(channels.begin(), channels.end(), [&](const Channel& channel) {
+            return refine_band(channel, refinement).hz.size() > channel.band.hz.size();
+        });
     }
 
     [[nodiscard]] NodeSky::Sample take_sample() { return std::move(sky_->sample); }
@@ -116,6 +125,7 @@ class NodeChooser {
         const GalaxyMaps maps = maker.make_pixels(pixels, to_frequencies(dense.log_hz), polarized_);
         sky_.emplace(NodeSky{nodes_, {}, {}, {}, {}, {}, {}, {dense, {}, {}, {}}, 0});
         sky_->sample.i = to_matrix(maps.i, pixels.size());
+        largest_depth_ = *std::max_element(maps.largest_depth.begin(), maps.largest_depth.end());
         if (!polarized_) return;
         sky_->sample.q = to_matrix(maps.q, pixels.size());
         sky_->sample.u = to_matrix(maps.u, pixels.size());
@@ -145,6 +155,8 @@ class NodeChooser {
     std::vector<BandSum> checked_;
     NodeInterpolation nodes_;
     std::optional<NodeSky> sky_;
+    double largest_depth_ = 0;         // rotation measure on the sampled lines of sight [rad/m^2]
+    bool turns_within_bands_ = false;  // by more than the bands' own nodes can follow
 };
 
 std::string cache_key(const GalaxySpec& galaxy, const HealpixGrid& grid, const std::string& what,
@@ -313,6 +325,7 @@ SkyModel make_galaxy_sky(const GalaxySpec& galaxy, Frequency reference, const He
     const auto table = std::make_shared<const GalaxyTable>(galaxy);
     const std::vector<BandSum> bands = bands_of(use.channels);
     NodeChooser chooser(galaxy, table, grid, polarized, bands, use.accuracy);
+    if (polarized) chooser.look_at_rotation(use.channels);
     const NodeChooser::Choice choice = chooser.choose();
     progress.end();
     const std::size_t count = choice.nodes.log_hz.size();

@@ -25,7 +25,9 @@ std::vector<Frequency> megahertz(std::initializer_list<double> values) {
 GalaxyMaps make(const GalaxySpec& galaxy, int nside, const std::vector<Frequency>& frequencies,
                 bool polarized) {
     Progress quiet;
-    return GalaxyMaker(galaxy, HealpixGrid(nside), polarized).make_maps(frequencies, quiet);
+    const GalaxyMaker maker(galaxy, std::make_shared<const GalaxyTable>(galaxy), HealpixGrid(nside),
+                            polarized);
+    return maker.make_maps(frequencies, polarized, quiet);
 }
 
 using Region = std::function<bool(double l, double b)>;
@@ -50,17 +52,18 @@ class SmoothGalaxy : public ::testing::Test {
     static void SetUpTestSuite() {
         GalaxySpec galaxy;
         galaxy.turbulence = false;
-        maps = new GalaxyMaps(make(galaxy, 64, megahertz({45, 180, 408, 1420, 23000, 30000}), true));
+        maps = new GalaxyMaps(make(galaxy, 64, frequencies(), true));
     }
     static void TearDownTestSuite() {
         delete maps;
         maps = nullptr;
     }
+    static std::vector<Frequency> frequencies() { return megahertz({45, 180, 408, 1420, 23000, 30000}); }
     static double brightness(const Region& region, std::size_t k) {
         return median(HealpixGrid(64), region, [&](std::size_t p) { return maps->i[k][p]; });
     }
     static double index(const Region& region, std::size_t a, std::size_t b) {
-        const double step = std::log(maps->frequencies[b].hz() / maps->frequencies[a].hz());
+        const double step = std::log(frequencies()[b].hz() / frequencies()[a].hz());
         return median(HealpixGrid(64), region,
                       [&](std::size_t p) { return std::log(maps->i[b][p] / maps->i[a][p]) / step; });
     }
@@ -215,6 +218,35 @@ TEST(GalaxyMaps, CoarsePixelsNearThePlaneAreMeans) {
                 64;
         EXPECT_NEAR(coarse.i[0][static_cast<std::size_t>(p)] / mean, 1, 1e-12);  // the same lines of sight
     }
+}
+
+// From outside: the same average by many more nodes. Bands at 1.4 GHz turn by radians in the plane.
+TEST(GalaxyMaps, BandAveragesOfStokesAreTheSumsOverManyNodes) {
+    GalaxySpec galaxy;
+    galaxy.turbulence = false;
+    const HealpixGrid grid(4);
+    const GalaxyMaker maker(galaxy, std::make_shared<const GalaxyTable>(galaxy), grid, true);
+    const Response response = Response::flat(Frequency::from_ghz(1.35), Frequency::from_ghz(1.49));
+    const auto band = [&](double step) {
+        const BandRefinement refinement{step, most_band_nodes};
+        return make_band_sum(response, ResponseWeights::Temperature, {}, &refinement);
+    };
+    Progress quiet;
+    const std::vector<RefinedBand> bands{band};
+    const GalaxyStokes got = maker.make_band_stokes(bands, quiet);
+    const BandSum dense = band(2e-5);
+    EXPECT_GE(dense.hz.size(), most_band_nodes);
+    std::vector<Frequency> nodes;
+    for (const double hz : dense.hz)
+        nodes.push_back(Frequency::from_hz(hz));
+    const GalaxyMaps maps = maker.make_maps(nodes, true, quiet);
+    for (std::size_t p = 0; p < maps.i[0].size(); ++p) {
+        double q = 0;
+        for (std::size_t k = 0; k < nodes.size(); ++k)
+            q += dense.weights[k] * maps.q[k][p];
+        EXPECT_NEAR(got.q[0][p], q, 1e-7 * maps.i[0][p]);  // Gauss nodes at 0.3 rad leave nothing
+    }
+    EXPECT_EQ(got.coarse_pixels, 0);
 }
 
 }  // namespace

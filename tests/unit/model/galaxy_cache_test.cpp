@@ -113,8 +113,8 @@ TEST(GalaxyCache, DefaultFollowsTheEnvironment) {
     ::setenv("XDG_CACHE_HOME", "/somewhere", 1);
     EXPECT_EQ(default_cache_folder(), fs::path("/somewhere/foreglow"));
     ::setenv("XDG_CACHE_HOME", "relative", 1);  // the specification says that these are to be ignored
-    ::setenv("HOME", "/home/someone", 1);
-    EXPECT_EQ(default_cache_folder(), fs::path("/home/someone/.cache/foreglow"));
+    ::setenv("HOME", "/people/someone", 1);
+    EXPECT_EQ(default_cache_folder(), fs::path("/people/someone/.cache/foreglow"));
     ::unsetenv("XDG_CACHE_HOME");
     ::unsetenv("HOME");
     EXPECT_FALSE(default_cache_folder().has_value());

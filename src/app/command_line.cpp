@@ -75,6 +75,12 @@ void add_study_options(CLI::App& command, StudyRequest& request) {
                      "write into a folder that is not empty, replacing an earlier run");
     command.add_option("--realization", request.realization,
                        "make just this one of the study's realizations");
+    command.add_option(
+        "--cache", request.cache,
+        "folder that keeps integrated maps of the built-in Galaxy (default: see foreglow models "
+        "--cache)");
+    command.add_flag("--no-cache", request.no_cache,
+                     "neither take integrated maps from a cache nor keep them");
     const char* alone = "Without a study file";
     command.add_option("--model", study.model, "bundled model's name, or a model file")->group(alone);
     command.add_option("--frequency", study.frequencies, "such as \"70 GHz\"; repeat for more channels")
@@ -356,6 +362,8 @@ struct Request {
     AtRequest at;
     ElectronsOptions electrons;
     std::string model_name;
+    bool show_cache = false;
+    bool clear_cache = false;
     DrawOptions draw;
     std::vector<double> draw_center;
     std::string draw_size;
@@ -416,6 +424,15 @@ void run_at_command(Request& request) {
     run_at(options, write_rows_out, [&](const std::string& line) { note(request.common, line); });
 }
 
+void run_models_command(const Request& request) {
+    if (request.clear_cache)
+        say(empty_cache());
+    else if (request.show_cache)
+        say(describe_cache());
+    else
+        say(request.model_name.empty() ? list_models() : print_model(request.model_name));
+}
+
 void run_start_command(const Request& request) {
     const StartResult result = run_start(request.start);
     for (const std::string& notice : result.notices)
@@ -457,9 +474,11 @@ void define_commands(CLI::App& app, Request& request) {
 
     CLI::App* models = app.add_subcommand("models", "lists the bundled models, or prints one");
     models->add_option("NAME", request.model_name, "the model to print");
+    models->add_flag("--cache", request.show_cache,
+                     "says where integrated maps of the built-in Galaxy are kept, and how much they take");
+    models->add_flag("--clear-cache", request.clear_cache, "removes them");
     add_common(*models, request.common);
-    models->callback(
-        [&request] { say(request.model_name.empty() ? list_models() : print_model(request.model_name)); });
+    models->callback([&request] { run_models_command(request); });
 
     CLI::App* draw = app.add_subcommand("draw", "draws a map: all sky, or a close-up");
     add_draw_options(*draw, request.draw, request.draw_center, request.draw_size);

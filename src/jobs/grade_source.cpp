@@ -19,6 +19,7 @@
 #include "model/bundled_models.h"
 #include "model/detailed_sky.h"
 #include "model/filled_share.h"
+#include "model/galaxy_cache.h"
 #include "model/load_sky.h"
 #include "model/study_file.h"
 #include "sphere/harmonics.h"
@@ -218,14 +219,16 @@ GradeSource make_run(const GradeOptions& options, Progress& progress) {
         progress.notice("Jy/pixel is that of pixels of nside " + std::to_string(study.nside));
     source.temporary = std::make_unique<TemporaryRun>();
     source.folder = source.temporary->path() / "run";
-    const Plan plan = make_plan({study, source.folder, std::nullopt, false});
+    const Plan plan = make_plan({study, source.folder, std::nullopt, false, default_cache_folder()});
     for (const std::string& warning : plan.warnings)
         progress.warn(warning);
     progress.notice("graded at nside " + std::to_string(study.nside) +
                     ", up to l = " + std::to_string(study.lmax) + " where there are beams");
-    progress.begin("loading the sky");
-    SkyModel loaded = load_sky(plan.model, HealpixGrid(study.nside), study.lmax, false, progress);
-    progress.end();
+    const bool has_phases = plan.model.galaxy.has_value();  // of its own
+    if (!has_phases) progress.begin("loading the sky");
+    SkyModel loaded = load_sky(plan.model, HealpixGrid(study.nside), study.lmax, false, progress,
+                               {plan.channels, study.accuracy, plan.cache});
+    if (!has_phases) progress.end();
     const DetailedSky detailed(plan.model, std::move(loaded), study.seed, false, progress);
     const SkyModel sky = detailed.realize(options.realization.value_or(0));
     OutputFolder folder(source.folder, false);

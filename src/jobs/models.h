@@ -12,4 +12,12 @@ namespace foreglow {
 /// @throws InputError where there is none of that name; the nearest is named
 [[nodiscard]] std::string print_model(const std::string& name);
 
+/// Says where integrated maps of the Galaxy are kept and how much they take.
+/// @throws InputError where no folder is known: neither $XDG_CACHE_HOME nor $HOME is set
+[[nodiscard]] std::string describe_cache();
+
+/// Removes them and says how much that was.
+/// @throws InputError as above; FileError with the system's reason
+[[nodiscard]] std::string empty_cache();
+
 }  // namespace foreglow

@@ -2,6 +2,7 @@
 #include "jobs/study_request.h"
 
 #include "base/error.h"
+#include "model/galaxy_cache.h"
 
 namespace foreglow {
 namespace {
@@ -31,6 +32,9 @@ PlanRequest make_plan_request(const StudyRequest& request) {
     plan.out = request.out;
     plan.realization = request.realization;
     plan.replace = request.replace;
+    if (request.no_cache && request.cache)
+        throw InputError("--cache and --no-cache contradict each other: keep one of the two");
+    if (!request.no_cache) plan.cache = request.cache ? request.cache : default_cache_folder();
     return plan;
 }
 

@@ -16,6 +16,8 @@ struct StudyRequest {
     std::optional<std::filesystem::path> out;
     std::optional<int> realization;
     bool replace = false;
+    std::optional<std::filesystem::path> cache;  ///< else the default cache folder
+    bool no_cache = false;
 };
 
 /// Reads or makes the study.

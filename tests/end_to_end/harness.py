@@ -73,9 +73,12 @@ class Case(unittest.TestCase):
         return path
 
 
+CACHE = tempfile.TemporaryDirectory(prefix="foreglow-cache-")  # of this test alone; removed with it
+
+
 def command_environment(more=None):
     """Returns the environment of the command: its own choice of threads, which do not spin while others need the processors."""
-    environment = {**os.environ, "OMP_WAIT_POLICY": "passive", **(more or {})}
+    environment = {**os.environ, "OMP_WAIT_POLICY": "passive", "XDG_CACHE_HOME": CACHE.name, **(more or {})}
     del environment["OMP_NUM_THREADS"]
     return environment
 

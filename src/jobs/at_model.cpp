@@ -3,6 +3,7 @@
 #include "jobs/at_source.h"
 #include "model/bundled_models.h"
 #include "model/channel.h"
+#include "model/galaxy_maps.h"
 #include "model/model_file.h"
 #include "model/point_sky.h"
 #include "model/study_file.h"
@@ -59,6 +60,18 @@ void add_frequencies(AtSource& source, ModelRows& rows, const std::vector<Freque
     }
 }
 
+// Such a sky has no grid of its own, and always polarization.
+bool is_made_of_formulas(const ModelSpec& model) {
+    return model.sketch.has_value() || model.galaxy.has_value();
+}
+
+PointRow make_row(const Channel& channel) {
+    PointRow row{channel.band, channel.reference, {}};
+    if (channel.bandwidth)
+        row.refine = [channel](double step) { return refine_band(channel, {step, most_band_nodes}); };
+    return row;
+}
+
 ModelSpec read_model_of(const std::string& name, bool bundled) {
     ModelSpec model = bundled ? read_bundled_model(name) : read_model(name);
     if (model.galaxy)
@@ -105,13 +118,13 @@ AtSource open_model_at(const AtOptions& options) {
         throw InputError("a model by itself has no channels: say where to look with --frequency \"70 MHz\"");
     const ModelSpec model = read_model_of(options.source, find_bundled_model(options.source) != nullptr);
     const bool tangled = model.electrons && model.electrons->law.geometry == FieldGeometry::Tangled;
-    const bool polarized = !tangled && (model.sketch.has_value() || model.polarization.has_value());
+    const bool polarized = !tangled && (is_made_of_formulas(model) || model.polarization);
     std::optional<HealpixGrid> grid;
-    if (model.sketch && options.nside) grid = HealpixGrid(*options.nside);
+    if (is_made_of_formulas(model) && options.nside) grid = HealpixGrid(*options.nside);
     const auto rows = std::make_shared<ModelRows>(PointSky(model, grid, polarized));
     AtSource source = make_source(rows);
-    source.takes_nside = model.sketch.has_value();
-    if (!model.sketch)
+    source.takes_nside = is_made_of_formulas(model);
+    if (!source.takes_nside)
         source.notices.push_back("each position is answered by the intensity template's own pixel, nside " +
                                  std::to_string(source.grid.nside()));
     source.notices.insert(source.notices.end(), model.warnings.begin(), model.warnings.end());
@@ -125,7 +138,7 @@ AtSource open_study_at(const AtOptions& options) {
     StudySpec study = read_study(options.source, {});
     study.unit = read_asked_unit(options, study.unit);
     const ModelSpec model = read_model_of(study.model, study.model_is_bundled);
-    if (study.polarized && !model.sketch && !model.polarization)
+    if (study.polarized && !is_made_of_formulas(model) && !model.polarization)
         throw InputError(study.model_place + ": the study asks for stokes = \"IQU\" but the model " +
                          model.name +
                          " has no [polarization]: add one to the model, or set `stokes = \"I\"`");
@@ -139,7 +152,7 @@ AtSource open_study_at(const AtOptions& options) {
     }
     const std::vector<Channel> channels = make_channels(study);
     for (const Channel& channel : channels) {
-        rows->rows.push_back({channel.band, channel.reference, {}});
+        rows->rows.push_back(make_row(channel));
         source.columns.push_back({channel.name, channel.reference, to_text(study.unit)});
     }
     add_study_notices(source, study, channels);

@@ -46,19 +46,19 @@ GalaxyPixels::GalaxyPixels(const GalaxySpec& galaxy, const GalaxyTable& table, c
       grid_(grid),
       polarized_(polarized) {}
 
-GalaxySightline GalaxyPixels::pixel(std::int64_t number, const GalaxySampling& sampling) const {
-    const auto p = static_cast<std::size_t>(number);
+GalaxySightline GalaxyPixels::pixel(std::int64_t number, std::size_t place,
+                                    const GalaxySampling& sampling) const {
     const Vector3 direction = grid_.direction(number);
     GalaxySightline line;
     if (galaxy_.disc) {
         line = mean_line(number, direction, sampling);
-        add_turbulence(line, p);
+        add_turbulence(line, place);
     } else {
         line.i.assign(frequencies_.size(), 0.0);
         if (polarized_) line.q = line.u = line.i;
     }
     if (galaxy_.loops) add_loops(line, direction);
-    tilt(line, p);
+    tilt(line, place);
     return line;
 }
 

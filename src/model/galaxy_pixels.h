@@ -27,7 +27,13 @@ class GalaxyPixels {
 
     [[nodiscard]] const GalaxyIntegral& integral() const { return integral_; }
     /// Returns what a pixel shows, K_RJ, COSMO; q and u empty without polarization.
-    [[nodiscard]] GalaxySightline pixel(std::int64_t number, const GalaxySampling& sampling) const;
+    [[nodiscard]] GalaxySightline pixel(std::int64_t number, const GalaxySampling& sampling) const {
+        return pixel(number, static_cast<std::size_t>(number), sampling);
+    }
+    /// Likewise with fields that hold some pixels only.
+    /// @param place  of the pixel in the fields
+    [[nodiscard]] GalaxySightline pixel(std::int64_t number, std::size_t place,
+                                        const GalaxySampling& sampling) const;
 
   private:
     [[nodiscard]] GalaxySightline line_of(const Vector3& direction, const GalaxySampling& sampling) const;

@@ -6,6 +6,7 @@
 
 #include "base/constants.h"
 #include "base/random.h"
+#include "model/strip_points.h"
 #include "sphere/gaussian_field.h"
 #include "sphere/harmonics.h"
 
@@ -36,24 +37,63 @@ std::vector<double> make_spectrum(int lmax, double power, double variance) {
 
 }  // namespace
 
-TurbulenceFields make_turbulence_fields(const GalaxySpec& galaxy, const HealpixGrid& grid, bool polarized) {
+TurbulenceWaves::TurbulenceWaves(const GalaxySpec& galaxy, const HealpixGrid& grid, bool polarized)
+    : grid_(grid) {
     const int lmax = 2 * grid.nside();
     const auto draw = [&](Field field, double power, double variance) {
         return make_gaussian_alm(make_spectrum(lmax, power, variance), lmax, {galaxy.seed, 0, field});
     };
-    TurbulenceFields fields;
     if (galaxy.turbulence && galaxy.disc) {
-        fields.brightness = synthesize(draw(BrightnessField, kolmogorov, 1), grid);
-        if (polarized) {
-            // q and u have unit variance each: E and B together have 2.
-            StokesValues stokes = synthesize_spin2(
-                {draw(EField, kolmogorov, 4.0 / 3), draw(BField, kolmogorov, 2.0 / 3)}, grid);
-            fields.q = std::move(stokes.q);
-            fields.u = std::move(stokes.u);
-        }
+        brightness_ = draw(BrightnessField, kolmogorov, 1);
+        // q and u have unit variance each: E and B together have 2.
+        if (polarized) stokes_ = AlmEB{draw(EField, kolmogorov, 4.0 / 3), draw(BField, kolmogorov, 2.0 / 3)};
     }
-    if (galaxy.index_scatter > 0) fields.index = synthesize(draw(IndexField, index_power, 1), grid);
+    if (galaxy.index_scatter > 0) index_ = draw(IndexField, index_power, 1);
+}
+
+TurbulenceFields TurbulenceWaves::everywhere() const {
+    TurbulenceFields fields;
+    if (brightness_) fields.brightness = synthesize(*brightness_, grid_);
+    if (index_) fields.index = synthesize(*index_, grid_);
+    if (!stokes_) return fields;
+    StokesValues stokes = synthesize_spin2(*stokes_, grid_);
+    fields.q = std::move(stokes.q);
+    fields.u = std::move(stokes.u);
     return fields;
+}
+
+TurbulenceFields TurbulenceWaves::at(std::span<const std::int64_t> pixels) const {
+    TurbulenceFields fields;
+    fields.brightness.resize(brightness_ ? pixels.size() : 0);
+    fields.index.resize(index_ ? pixels.size() : 0);
+    fields.q.resize(stokes_ ? pixels.size() : 0);
+    fields.u.resize(fields.q.size());
+    for (const RingPlaces& group : sort_by_ring(grid_, pixels)) {
+        const HealpixGrid::Ring ring = grid_.ring(group.ring);
+        const RingStrip strip{group.ring, 1, false};
+        std::vector<double> values(static_cast<std::size_t>(ring.pixels)), others(values.size());
+        const auto pick = [&](const std::vector<double>& from, std::vector<double>& to) {
+            for (const std::size_t place : group.places)
+                to[place] = from[static_cast<std::size_t>(pixels[place] - ring.first_pixel)];
+        };
+        if (brightness_) {
+            synthesize_strip(*brightness_, grid_, strip, values);
+            pick(values, fields.brightness);
+        }
+        if (index_) {
+            synthesize_strip(*index_, grid_, strip, values);
+            pick(values, fields.index);
+        }
+        if (!stokes_) continue;
+        synthesize_strip_spin2(*stokes_, grid_, strip, values, others);
+        pick(values, fields.q);
+        pick(others, fields.u);
+    }
+    return fields;
+}
+
+TurbulenceFields make_turbulence_fields(const GalaxySpec& galaxy, const HealpixGrid& grid, bool polarized) {
+    return TurbulenceWaves(galaxy, grid, polarized).everywhere();
 }
 
 TurbulencePixel turbulence_of(const GalaxySpec& galaxy, const GalaxySightline& line, double g, double q,

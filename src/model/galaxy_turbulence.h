@@ -1,10 +1,14 @@
 // SPDX-License-Identifier: GPL-2.0-or-later
 #pragma once
 
+#include <cstdint>
+#include <optional>
+#include <span>
 #include <vector>
 
 #include "model/galaxy_integral.h"
 #include "model/galaxy_spec.h"
+#include "sphere/alm.h"
 #include "sphere/grid.h"
 
 namespace foreglow {
@@ -16,6 +20,21 @@ namespace foreglow {
 /// nside shows the same sky, up to l = 2 nside.
 struct TurbulenceFields {
     std::vector<double> brightness, q, u, index;
+};
+/// The a_lm of these fields, for a few pixels of a grid.
+class TurbulenceWaves {
+  public:
+    TurbulenceWaves(const GalaxySpec& galaxy, const HealpixGrid& grid, bool polarized);
+
+    /// Returns the fields on the whole grid, [npix].
+    [[nodiscard]] TurbulenceFields everywhere() const;
+    /// Returns the fields at RING pixels, [pixels]: only the rings that hold them are made.
+    [[nodiscard]] TurbulenceFields at(std::span<const std::int64_t> pixels) const;
+
+  private:
+    HealpixGrid grid_;
+    std::optional<Alm> brightness_, index_;
+    std::optional<AlmEB> stokes_;
 };
 [[nodiscard]] TurbulenceFields make_turbulence_fields(const GalaxySpec& galaxy, const HealpixGrid& grid,
                                                       bool polarized);

@@ -5,6 +5,7 @@
 
 #include "base/error.h"
 #include "model/detailed_sky.h"
+#include "model/galaxy_points.h"
 #include "model/load_sky.h"
 #include "model/point_electrons.h"
 #include "model/point_field.h"
@@ -95,12 +96,13 @@ struct PointSky::Impl {
     std::shared_ptr<const PointMap> brightness;  // of models over templates
     std::optional<PointField> intensity, index, curvature;
     std::optional<PolarizedPoints> polarization;
+    std::optional<GalaxyPoints> galaxy;
     std::optional<SketchPoints> sketch;
     std::optional<ElectronLaw> electrons;  // instead of index and curvature
     IndexDefinition definition;            // where the index holds that their slopes come from
     std::optional<PointField> field, break_energy, cutoff_energy;
     std::optional<SkyModel> whole;  // made with its random structure
-    bool whole_is_polarized = false;
+    bool has_stokes = false;        // of the Galaxy or of a whole sky
     std::vector<std::string> notices;
 };
 
@@ -110,13 +112,22 @@ PointSky::Impl::Impl(const ModelSpec& model, SkyModel sky, bool with_polarizatio
       reference(model.reference_frequency),
       polarized_reference(reference),
       whole(std::move(sky)),
-      whole_is_polarized(with_polarization) {
+      has_stokes(with_polarization) {
     if (with_polarization) polarized_reference = whole->polarization->reference;
     if (whole->electrons) electrons = whole->electrons->law;
 }
 
 PointSky::Impl::Impl(const ModelSpec& model, std::optional<HealpixGrid> grid_in, bool with_polarization) {
     reference = polarized_reference = model.reference_frequency;
+    if (model.galaxy) {
+        grid = grid_in.value_or(HealpixGrid(GalaxyPoints::usual_nside));
+        galaxy.emplace(*model.galaxy, reference, grid, with_polarization);
+        has_stokes = with_polarization;
+        notices.emplace_back(
+            "the built-in 3-D Galaxy, invented and tuned to known brightnesses: not a measurement; lines of "
+            "sight are integrated to about 1e-3");
+        return;
+    }
     if (model.sketch) {
         grid = grid_in.value_or(HealpixGrid(SketchPoints::usual_nside));
         sketch.emplace(*model.sketch, grid, with_polarization);
@@ -260,19 +271,20 @@ Frequency PointSky::polarized_reference() const {
     return impl_->polarized_reference;
 }
 bool PointSky::is_polarized() const {
-    return impl_->polarization.has_value() || impl_->whole_is_polarized;
+    return impl_->polarization.has_value() || impl_->has_stokes;
 }
 const std::vector<std::string>& PointSky::notices() const {
     return impl_->notices;
 }
 
 SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
+    FOREGLOW_EXPECTS(!impl_->galaxy);
     if (impl_->sketch) {
         SkyStrip values = impl_->sketch->evaluate(pixels);
         if (impl_->electrons) impl_->add_electrons(pixels, values);
         return values;
     }
-    if (impl_->whole) return make_sky_points(*impl_->whole, pixels, impl_->whole_is_polarized);
+    if (impl_->whole) return make_sky_points(*impl_->whole, pixels, impl_->has_stokes);
     SkyStrip values;
     values.intensity.resize(pixels.size());
     values.index.resize(pixels.size());
@@ -292,6 +304,7 @@ SkyStrip PointSky::evaluate(std::span<const std::int64_t> pixels) const {
 
 std::vector<PointValues> PointSky::answer(std::span<const std::int64_t> pixels,
                                           std::span<const PointRow> rows) const {
+    if (impl_->galaxy) return impl_->galaxy->answer(pixels, rows);
     const SkyStrip strip = evaluate(pixels);
     const auto& electrons = impl_->electrons;
     std::vector<double> reference_index;

@@ -42,7 +42,8 @@ class PointSky {
     [[nodiscard]] bool is_polarized() const;
     [[nodiscard]] const std::vector<std::string>& notices() const;
 
-    /// Makes the values at RING pixels, with threads where they are many.
+    /// Makes the law at RING pixels, with threads where they are many; not of the built-in Galaxy, which has
+    /// none.
     [[nodiscard]] SkyStrip evaluate(std::span<const std::int64_t> pixels) const;
 
     /// Returns what pixels are in each row, [rows], with threads where they are many.

@@ -204,6 +204,29 @@ class AnswersAtPositions(harness.Case):
             self.assertEqual(near[0]["electron_slope"], near[2]["electron_slope"])
             self.assertGreater(abs(near[0]["electron_slope"] - (-3 - 2 * near[0]["index"])), 1e-3)  # a power law has 0
 
+    def test_the_galaxy(self):
+        self.write("study.toml", STUDY.format(convention="COSMO", precision="float64", realizations=1).replace(
+            "model.toml", "disc-and-loops"))
+        self.foreglow("make", "study.toml", "--out", "out", "--quiet")
+        index, _ = harness.read_maps(self.folder / "out/truth/index.fits")
+        pixels = [100, 1500, 1530, 3000]
+        rows, notes = self.rows("study.toml", *[word for p in pixels for word in ("--pixel", p)], "--nside", NSIDE)
+        self.assertIn("not a measurement", notes)
+        for k, name in enumerate(("low", "band")):
+            maps, _ = harness.read_maps(self.folder / f"out/maps/{name}.fits")
+            for n, pixel in enumerate(pixels):
+                row = rows[2 * n + k]
+                # accuracy = 1e-8 of the study; lines of sight are sampled alike where both take the usual steps.
+                self.assertAlmostEqual(row["brightness"] / maps[0][pixel], 1, delta=2e-8)
+                for key, value in (("Q", maps[1][pixel]), ("U", maps[2][pixel])):
+                    self.assertAlmostEqual(row[key] / maps[0][pixel], value / maps[0][pixel], delta=2e-8)
+                self.assertAlmostEqual(row["index_reference"], index[0][pixel], delta=1e-7)  # the same five frequencies
+        bare, _ = self.rows("disc-and-loops", "--position", "120,30", "--frequency", "999 MHz", "--frequency", "1 GHz",
+                            "--frequency", "1001 MHz")
+        self.assertEqual(bare[0]["nside"], 128)
+        slope = numpy.log(bare[2]["brightness"] / bare[0]["brightness"]) / numpy.log(1001 / 999)
+        self.assertAlmostEqual(bare[1]["index"], slope, delta=1e-4)  # the stencil's: 0.3^4/30 of a fifth derivative
+
     def test_discs_and_interpolation(self):
         lon, lat = 213.7, -41.2
         rows, _ = self.rows("model.toml", "--position", f"{lon},{lat}", "--frequency", "5 GHz", "--disc", "12 deg")

@@ -160,8 +160,8 @@ TEST(PointSky, TurnsAPolarizationTemplateOfAnotherFrame) {
 }
 
 TEST(PointSky, IsTheBundledSketchWhetherFewOrManyRingsAreAsked) {
-    const ModelSpec model = read_bundled_model("disc-and-loops");
-    if (!model.sketch) return;
+    const ModelSpec model = read_bundled_model("quick-sketch");
+    ASSERT_TRUE(model.sketch.has_value());
     const HealpixGrid grid(16);
     Progress progress;
     const SkyModel whole = load_sky(model, grid, 32, true, progress);

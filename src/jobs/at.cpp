@@ -115,7 +115,8 @@ std::vector<std::string> Answer::conventions() const {
         lines.emplace_back(
             "index is d ln T/d ln nu of brightness temperature at the row's frequency, flux_index = index + "
             "2, "
-            "electron_slope = -3 - 2 index" +
+            "electron_slope " +
+            std::string(source_.has_own_slope ? "the electrons' own" : "= -3 - 2 index") +
             std::string(source_.has_curvature ? ", curvature half the second derivative" : ""));
     if (source_.polarized)
         lines.push_back(std::string("polarization in the ") +

@@ -123,6 +123,7 @@ AtSource open_model_at(const AtOptions& options) {
     if (is_made_of_formulas(model) && options.nside) grid = HealpixGrid(*options.nside);
     const auto rows = std::make_shared<ModelRows>(PointSky(model, grid, polarized));
     AtSource source = make_source(rows);
+    source.has_own_slope = model.electrons.has_value();
     source.takes_nside = is_made_of_formulas(model);
     if (!source.takes_nside)
         source.notices.push_back("each position is answered by the intensity template's own pixel, nside " +
@@ -144,6 +145,7 @@ AtSource open_study_at(const AtOptions& options) {
                          " has no [polarization]: add one to the model, or set `stokes = \"I\"`");
     const auto rows = std::make_shared<ModelRows>(open_study_sky(options, study, model));
     AtSource source = make_source(rows);
+    source.has_own_slope = model.electrons.has_value();
     source.convention = study.convention;
     if (!frequencies.empty()) {
         add_frequencies(source, *rows, frequencies, study.unit);

@@ -26,7 +26,8 @@ struct AtSource {
     Frame frame = Frame::Galactic;
     PolarizationConvention convention = PolarizationConvention::Cosmo;  ///< where none is asked for
     bool polarized = false;
-    bool takes_nside = false;  ///< made of formulas, on any grid that is asked for
+    bool takes_nside = false;    ///< made of formulas, on any grid that is asked for
+    bool has_own_slope = false;  ///< electron_slope is the law's, not that of a power law
     bool has_index = true, has_curvature = true, has_brightness = true;
     std::vector<AtColumn> columns;
     std::vector<std::string> notices;

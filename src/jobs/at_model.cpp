@@ -73,12 +73,7 @@ PointRow make_row(const Channel& channel) {
 }
 
 ModelSpec read_model_of(const std::string& name, bool bundled) {
-    ModelSpec model = bundled ? read_bundled_model(name) : read_model(name);
-    if (model.galaxy)
-        throw InputError(model.name +
-                         " is a Galaxy that is integrated for a study's channels, which `at` does not "
-                         "do: make the study first and ask its folder");
-    return model;
+    return bundled ? read_bundled_model(name) : read_model(name);
 }
 
 PointSky open_study_sky(const AtOptions& options, const StudySpec& study, const ModelSpec& model) {

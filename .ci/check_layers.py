@@ -20,6 +20,7 @@ LIBRARIES = [
      {"sphere"}),
     ("libsharp", re.compile(r"#\s*include\s*[<\"](libsharp/|sharp\w*\.h)"), {"sphere"}),
     ("CFITSIO", re.compile(r"#\s*include\s*[<\"](fitsio|cfitsio/)"), {"io"}),
+    ("FFTW", re.compile(r"#\s*include\s*[<\"]fftw3"), {"math"}),
     ("toml++", re.compile(r"#\s*include\s*[<\"](toml\+\+/|toml\.h)"), {"io"}),
     ("nlohmann-json", re.compile(r"#\s*include\s*[<\"]nlohmann/"), {"io"}),
     ("xxHash", re.compile(r"#\s*include\s*[<\"]xxh"), {"io"}),

@@ -9,6 +9,7 @@
 #include "base/text.h"
 #include "io/atomic_file.h"
 #include "jobs/make_maps.h"
+#include "jobs/make_patches.h"
 #include "jobs/make_report.h"
 #include "jobs/manifest.h"
 #include "jobs/output_folder.h"
@@ -90,15 +91,23 @@ SkyModel make_realizations(const Plan& plan, const DetailedSky& sky, OutputFolde
                            MakeResult& result) {
     if (sky.has_detail()) result.detail = sky.report();
     const auto& numbers = plan.realizations;
+    const PatchWriter patches(plan, sky, progress);
     if (!sky.varies()) {
         SkyModel only = sky.realize(numbers.front());
         write_channel_maps(plan, only, numbers, folder, progress, result);
         write_truth_maps(plan, only, std::nullopt, folder, progress, result);
+        for (const int number : numbers)
+            patches.write(number, only, folder, result);
         return only;
     }
     SkyModel first = sky.realize(numbers.front(), &result.detail_counts);
     write_channel_maps(plan, first, {numbers.data(), 1}, folder, progress, result);
     write_truth_maps(plan, first, numbers.front(), folder, progress, result);
+    if (!plan.study.patches.empty()) {
+        progress.begin("writing the patches");
+        patches.write(numbers.front(), first, folder, result);
+        progress.end();
+    }
     warn_about_counts(result.detail_counts, plan.model.detail && plan.model.detail->cap_polarization,
                       progress);
     if (numbers.size() == 1) return first;
@@ -109,6 +118,7 @@ SkyModel make_realizations(const Plan& plan, const DetailedSky& sky, OutputFolde
         const SkyModel other = sky.realize(numbers[k]);
         write_channel_maps(plan, other, {&numbers[k], 1}, folder, silent, result);
         write_truth_maps(plan, other, numbers[k], folder, silent, result);
+        patches.write(numbers[k], other, folder, result);
         progress.step(static_cast<std::int64_t>(k));
     }
     progress.end();

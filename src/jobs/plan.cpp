@@ -8,6 +8,7 @@
 
 #include "base/error.h"
 #include "base/text.h"
+#include "jobs/make_patches.h"
 #include "jobs/manifest.h"
 #include "jobs/output_folder.h"
 #include "jobs/resources.h"
@@ -81,6 +82,7 @@ void list_files(Plan& plan) {
                         {name("channels/" + channel.name), "the channel's sky before its beam", map_bytes});
         }
     }
+    list_patches(plan);
     plan.files.push_back({"report.html", "what a person looks at first", 0});
     plan.files.push_back({"run.json", "manifest, written last", 0});
     for (const PlannedFile& file : plan.files)

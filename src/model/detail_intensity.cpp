@@ -74,8 +74,9 @@ DetailIntensity::DetailIntensity(const DetailSpec& spec, std::shared_ptr<const S
 // G has the spectrum whose exponential has the relative target; w sqrt(<I_T^2>) G stands in where it cannot
 // multiply.
 void DetailIntensity::prepare_lognormal(double mean_square) {
+    scale_ = 1 / mean_square;
     for (double& cl : drawn_cl_)
-        cl /= mean_square;
+        cl *= scale_;
     LognormalSpectrum g = make_lognormal_spectrum(drawn_cl_);
     drawn_cl_ = std::move(g.cl);
     half_variance_ = 0.5 * g.variance;
@@ -99,13 +100,15 @@ void DetailIntensity::prepare_steepness(std::span<const double> region) {
     }
     // The shape of the correlation changes with the steepness; it is inverted for that of the region.
     const double typical = region_mean(region, relative);
+    scale_ = typical / (rms_added_ * rms_added_);
     for (double& cl : drawn_cl_)
-        cl *= typical / (rms_added_ * rms_added_);
+        cl *= scale_;
     LognormalSpectrum g = make_lognormal_spectrum(drawn_cl_);
     clipped_ = g.clipped;
     drawn_cl_ = std::move(g.cl);
+    norm_ = 1 / g.variance;
     for (double& cl : drawn_cl_)
-        cl /= g.variance;
+        cl *= norm_;
     const auto kelvin = static_cast<float>(rms_added_);
     for (float& w : weights_)
         w *= kelvin;

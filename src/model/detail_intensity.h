@@ -13,6 +13,17 @@ namespace foreglow {
 
 struct DetailReport;
 
+/// What a draw on a plane must know to go on where the sphere's ends.
+struct IntensityParts {
+    bool lognormal = false;
+    std::span<const double> drawn_cl;  ///< of the Gaussian that is drawn on the sphere
+    std::span<const float> weights;    ///< what turns it into kelvin where it is added, [npix]
+    std::span<const float> steepness;  ///< s, where it changes from pixel to pixel
+    double half_variance = 0;          ///< of the Gaussian, where s does not
+    double scale = 1;                  ///< turns the complement's C_l into those of the relative fluctuation
+    double norm = 1;                   ///< turns these into the Gaussian's own unit
+};
+
 /// Draws intensities below a template's beam.
 ///
 /// Additive: I = I_T + w g, g Gaussian with the complement's spectrum. Lognormal, modulation 1: I = I_T exp(G
@@ -34,6 +45,9 @@ class DetailIntensity {
 
     /// Fills in what a report says of the intensity.
     void describe(DetailReport& report) const;
+    [[nodiscard]] IntensityParts parts() const {
+        return {lognormal_, drawn_cl_, weights_, steepness_, half_variance_, scale_, norm_};
+    }
 
   private:
     void prepare_lognormal(double mean_square);
@@ -45,7 +59,8 @@ class DetailIntensity {
     std::vector<double> drawn_cl_;  // of the Gaussian that is drawn
     std::vector<float> weights_;    // w times what turns the Gaussian into kelvin
     std::vector<float> steepness_;  // s, where it changes from pixel to pixel
-    double half_variance_ = 0;      // of G
+    double scale_ = 1, norm_ = 1;
+    double half_variance_ = 0;  // of G
     double rms_added_ = 0, relative_rms_ = 0, floored_, clipped_ = 0, steepest_ = 0;
 };
 

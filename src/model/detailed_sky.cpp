@@ -88,6 +88,21 @@ class DetailedSky::Impl {
     [[nodiscard]] bool has_detail() const { return spec_.has_value(); }
     [[nodiscard]] const DetailReport& report() const { return report_; }
 
+    [[nodiscard]] DetailParts parts() const {
+        DetailParts out;
+        out.base = &base_;
+        out.intensity_map = map_of(base_.intensity, base_);
+        if (polarized_) out.stokes_maps = stokes_ ? stokes_ : stokes_of(base_);
+        if (intensity_) out.intensity = &*intensity_;
+        out.polarized_weights = polarized_weights_;
+        out.seed = seed_;
+        return out;
+    }
+    [[nodiscard]] SkySpectra spectra_up_to(int lmax) const {
+        FOREGLOW_EXPECTS(spec_.has_value());
+        return make_sky_spectra(*spec_, sources_, lmax);
+    }
+
     [[nodiscard]] SkyModel realize(int realization, DetailCounts* counts) const {
         const DrawKey key{seed_, realization};
         SkyModel sky = base_;
@@ -164,13 +179,12 @@ class DetailedSky::Impl {
     }
 
     void make_spectra() {
-        SpectrumSources sources;
-        sources.intensity_reference = base_.reference;
-        sources.polarized = polarized_;
-        if (polarized_) sources.polarization_reference = base_.polarization->reference;
-        sources.intensity_fit = report_.intensity_fit;
-        sources.polarization_fit = report_.polarization_fit;
-        report_.sky = make_sky_spectra(*spec_, sources, report_.lmax);
+        sources_.intensity_reference = base_.reference;
+        sources_.polarized = polarized_;
+        if (polarized_) sources_.polarization_reference = base_.polarization->reference;
+        sources_.intensity_fit = report_.intensity_fit;
+        sources_.polarization_fit = report_.polarization_fit;
+        report_.sky = make_sky_spectra(*spec_, sources_, report_.lmax);
         report_.added = make_complement(report_.sky, report_.intensity_beam, report_.polarization_beam);
     }
 
@@ -299,6 +313,7 @@ class DetailedSky::Impl {
     std::uint64_t seed_;
     bool polarized_;
     DetailReport report_;
+    SpectrumSources sources_;
     std::shared_ptr<const StokesMaps> stokes_;
     std::optional<DetailIntensity> intensity_;
     std::vector<float> polarized_weights_;
@@ -316,6 +331,12 @@ bool DetailedSky::varies() const {
 }
 bool DetailedSky::has_detail() const {
     return impl_->has_detail();
+}
+DetailParts DetailedSky::parts() const {
+    return impl_->parts();
+}
+SkySpectra DetailedSky::spectra_up_to(int lmax) const {
+    return impl_->spectra_up_to(lmax);
 }
 SkyModel DetailedSky::realize(int realization, DetailCounts* counts) const {
     return impl_->realize(realization, counts);

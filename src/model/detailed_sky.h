@@ -4,6 +4,7 @@
 #include <cstdint>
 #include <memory>
 #include <optional>
+#include <span>
 #include <string>
 #include <vector>
 
@@ -38,6 +39,18 @@ struct DetailReport {
                               ///< above 1 it was cut to 1
 };
 
+class DetailIntensity;
+
+/// The parts of a sky with detail that close-ups are made of; they live as long as the DetailedSky.
+struct DetailParts {
+    const SkyModel* base = nullptr;                 ///< the template
+    std::shared_ptr<const SkyMap> intensity_map;    ///< of the template, on the grid
+    std::shared_ptr<const StokesMaps> stokes_maps;  ///< where there is polarization
+    const DetailIntensity* intensity = nullptr;     ///< where there is detail
+    std::span<const float> polarized_weights;       ///< w_P [npix]
+    std::uint64_t seed = 0;
+};
+
 /// A template and the random structure that a seed adds to it: amplitude below the beam, scatter of index and
 /// curvature. Each realization shares what is not random.
 class DetailedSky {
@@ -59,6 +72,9 @@ class DetailedSky {
     /// Returns the sky of one realization; the template itself where nothing is random.
     [[nodiscard]] SkyModel realize(int realization, DetailCounts* counts = nullptr) const;
     [[nodiscard]] const DetailReport& report() const;
+    [[nodiscard]] DetailParts parts() const;
+    /// Returns the spectra of the true sky further up than the report has them.
+    [[nodiscard]] SkySpectra spectra_up_to(int lmax) const;
 
   private:
     class Impl;

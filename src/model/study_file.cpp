@@ -12,6 +12,7 @@
 #include "io/toml_reader.h"
 #include "model/bundled_models.h"
 #include "model/study_channels.h"
+#include "model/study_patches.h"
 #include "model/typed_keys.h"
 
 namespace foreglow {
@@ -140,7 +141,7 @@ StudySpec make_study(const TomlValue& document, const std::filesystem::path& fil
     const ChannelDefaults defaults = read_response_keys(top, {});
     const std::vector<TomlReader> channels = top.tables("channel");
     const std::optional<TomlReader> grid = top.table("channel_grid");
-    refuse_for_now(top, "patch");
+    const std::vector<TomlReader> patches = top.tables("patch");
     top.check_no_other_keys();
     if (!model) top.fail_missing("model", "model = \"disc-and-loops\"");
     if (!nside) top.fail_missing("nside", "nside = 256");
@@ -157,6 +158,9 @@ StudySpec make_study(const TomlValue& document, const std::filesystem::path& fil
             "there is no channel: add a [[channel]] with name = \"low\" and frequency = \"30 GHz\", or a "
             "[channel_grid]");
     check_channel_names(study.channels);
+    for (const TomlReader& patch : patches)
+        study.patches.push_back(read_patch(patch));
+    check_patch_names(study.patches);
     return study;
 }
 

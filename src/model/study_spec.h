@@ -34,6 +34,17 @@ struct ChannelSpec {
     double reference_flux_index = 0;
 };
 
+/// A flat-sky close-up.
+struct PatchSpec {
+    static constexpr int most_pixels = 6000;  ///< a side, margins for beams included
+
+    std::string name;
+    std::string place;          ///< FILE:LINE:COLUMN of the entry
+    Angle longitude, latitude;  ///< of its centre, in the study's frame
+    Angle pixel;
+    int pixels = 0;  ///< a side
+};
+
 /// A study as written, every key checked by itself and against the others.
 struct StudySpec {
     std::filesystem::path file;  ///< empty where no file was given
@@ -59,6 +70,7 @@ struct StudySpec {
     int realizations = 1;
     TruthLevel truth = TruthLevel::Maps;
     std::vector<ChannelSpec> channels;
+    std::vector<PatchSpec> patches;
     std::vector<std::string> warnings;  ///< e.g. lmax above 2.5 nside
 };
 

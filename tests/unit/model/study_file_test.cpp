@@ -224,7 +224,7 @@ TEST(StudyFile, ChecksNamesAsFileStems) {
 
 TEST(StudyFile, RefusesWhatIsNotThereYetByName) {
     EXPECT_TRUE(has(message_of(std::string(head) + channel + "[[patch]]\nname = \"x\"\n"),
-                    "'patch' is not there yet"));
+                    "'center' is missing"));
 }
 
 TEST(StudyFile, NamesTheNearestModel) {

@@ -4,16 +4,14 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-#include <complex>
 
 #include "base/build_info.h"
-#include "base/constants.h"
 #include "base/error.h"
 #include "base/interrupt.h"
 #include "base/text.h"
 #include "io/fits_image_write.h"
-#include "math/fft.h"
 #include "model/filled_share.h"
+#include "model/patch_beam.h"
 #include "model/pixel_route.h"
 
 namespace foreglow {
@@ -30,52 +28,6 @@ double fwhm_of(const Channel& channel, int nside) {
 double sigma_of(double fwhm) {
     return fwhm / std::sqrt(8 * std::log(2.0));
 }
-
-/// Smooths images of one size with a channel's beam.
-class PatchBeam {
-  public:
-    PatchBeam(int pixels, Angle pixel)
-        : pixels_(pixels), plane_(quick_fft_size(pixels), quick_fft_size(pixels)), side_(pixel.radians()) {}
-
-    void apply(const Channel& channel, std::span<double> image) const {
-        const auto n = static_cast<std::size_t>(pixels_), whole = static_cast<std::size_t>(plane_.nx());
-        // The rest of the torus repeats the nearest edge, which keeps the mean's step out of the margin.
-        std::vector<double> torus(whole * whole);
-        const auto nearest = [&](std::size_t i) { return i < n ? i : (i - n < (whole - n) / 2 ? n - 1 : 0); };
-        for (std::size_t y = 0; y < whole; ++y)
-            for (std::size_t x = 0; x < whole; ++x)
-                torus[y * whole + x] = image[nearest(y) * n + nearest(x)];
-        auto modes = plane_.forward(torus);
-        const double step = 2 * constants::pi / (plane_.nx() * side_);
-        for (std::size_t y = 0; y < whole; ++y)
-            for (std::size_t x = 0; x < plane_.row(); ++x)
-                modes[y * plane_.row() + x] *=
-                    window(channel, std::hypot(plane_.wave_x(x) * step, plane_.wave_y(y) * step));
-        const auto smooth = plane_.inverse(std::move(modes));
-        for (std::size_t y = 0; y < n; ++y)
-            std::copy_n(smooth.begin() + static_cast<std::ptrdiff_t>(y * whole), n,
-                        image.begin() + static_cast<std::ptrdiff_t>(y * n));
-    }
-
-  private:
-    // B_l at l = |k| - 1/2; a table ends at the study's lmax, and the patch has nothing beyond.
-    static double window(const Channel& channel, double k) {
-        if (channel.beam_fwhm) {
-            const double sigma = sigma_of(channel.beam_fwhm->radians());
-            return std::exp(-0.5 * k * k * sigma * sigma);
-        }
-        const auto& table = channel.beam->temperature;
-        const double l = std::max(0.0, k - 0.5);
-        const auto low = static_cast<std::size_t>(l);
-        if (low + 1 >= table.size()) return 0.0;
-        const double rest = l - static_cast<double>(low);
-        return (1 - rest) * table[low] + rest * table[low + 1];
-    }
-
-    int pixels_;
-    PlaneFourier plane_;
-    double side_;
-};
 
 std::string axis_name(Frame frame, bool longitude) {
     switch (frame) {

@@ -97,7 +97,8 @@ WRONG = [
     model("unknown key", r"5:\d+", "did you mean 'column'", intensity="colum = 1"),
     model("unknown key", r"8:\d+", "did you mean 'polarization'", index="[polarisation]"),
     model("conflict", r"9:\d+", "contradicts 'scatter'", index="scatter = 0.1\ndecorrelation_length = 20"),
-    study("unknown key", r"8:\d+", "not there yet", STUDY.format(top="", channel='\n[[patch]]\nname = "deep"')),
+    study("unknown key", r"11:\d+", "did you mean 'center'", 
+          STUDY.format(top="", channel='\n[[patch]]\nname = "deep"\ncenter = [1, 2]\ncentre = [1, 2]')),
 
     study("conflict", r"8:\d+", "contradicts 'bandwidth'",
           STUDY.format(top="", channel='bandwidth = "6 GHz"\nresponse = "low.csv"'), **{"low.csv": CSV + "28,1\n32,1\n"}),

@@ -222,9 +222,17 @@ TEST(StudyFile, ChecksNamesAsFileStems) {
     EXPECT_TRUE(has(twice, "upper and lower case"));
 }
 
-TEST(StudyFile, RefusesWhatIsNotThereYetByName) {
-    EXPECT_TRUE(has(message_of(std::string(head) + channel + "[[patch]]\nname = \"x\"\n"),
-                    "'center' is missing"));
+TEST(StudyFile, ReadsPatches) {
+    const std::string start = std::string(head) + channel;
+    const StudySpec study = make(start +
+                                 "[[patch]]\nname = \"deep\"\ncenter = [83.0, -41]\nsize = \"9 deg\"\n"
+                                 "pixel = \"0.5 arcmin\"\n");
+    ASSERT_EQ(study.patches.size(), 1U);
+    EXPECT_EQ(study.patches[0].name, "deep");
+    EXPECT_EQ(study.patches[0].pixels, 1080);
+    EXPECT_NEAR(study.patches[0].latitude.degrees(), -41, 1e-12);
+    EXPECT_TRUE(has(message_of(start + "[[patch]]\nname = \"x\"\n"), "'center' is missing"));
+    EXPECT_TRUE(has(message_of(start + "[[patch]]\nname = \"x\"\ncenter = [1]\n"), "longitude and latitude"));
 }
 
 TEST(StudyFile, NamesTheNearestModel) {

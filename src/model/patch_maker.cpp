@@ -196,6 +196,10 @@ PatchSky PatchMaker::make(int realization, const SkyModel& whole) const {
     };
     take(full.index, out.values.index);
     take(full.curvature, out.values.curvature);
+    take(full.slope, out.values.slope);
+    take(full.field, out.values.field);
+    take(full.break_energy, out.values.break_energy);
+    take(full.cutoff_energy, out.values.cutoff_energy);
     take(full.polarized_index, out.values.polarized_index);
     take(full.polarized_curvature, out.values.polarized_curvature);
     if (alms_->filled.empty()) return out;

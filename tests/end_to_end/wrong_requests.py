@@ -97,7 +97,7 @@ WRONG = [
     model("unknown key", r"5:\d+", "did you mean 'column'", intensity="colum = 1"),
     model("unknown key", r"8:\d+", "did you mean 'polarization'", index="[polarisation]"),
     model("conflict", r"9:\d+", "contradicts 'scatter'", index="scatter = 0.1\ndecorrelation_length = 20"),
-    study("unknown key", r"11:\d+", "did you mean 'center'", 
+    study("unknown key", r"11:\d+", "did you mean 'center'",
           STUDY.format(top="", channel='\n[[patch]]\nname = "deep"\ncenter = [1, 2]\ncentre = [1, 2]')),
 
     study("conflict", r"8:\d+", "contradicts 'bandwidth'",

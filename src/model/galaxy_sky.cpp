@@ -117,10 +117,10 @@ class NodeChooser {
             pixels.push_back(p);
         const double low = *frequencies_.begin();
         const double high = *frequencies_.rbegin();
-        const bool few = frequencies_.size() <= static_cast<std::size_t>(dense_nodes);
-        const NodeInterpolation dense(few ? std::vector<double>(frequencies_.begin(), frequencies_.end())
-                                          : make_chebyshev_points(low, high, dense_nodes),
-                                      common_);
+        // Never the bands' own frequencies: a polynomial through clusters of them would run away between
+        // these.
+        const NodeInterpolation dense(
+            low < high ? make_chebyshev_points(low, high, dense_nodes) : std::vector<double>{low}, common_);
         const GalaxyMaker maker(galaxy, std::move(table), coarse, polarized_);
         const GalaxyMaps maps = maker.make_pixels(pixels, to_frequencies(dense.log_hz), polarized_);
         sky_.emplace(NodeSky{nodes_, {}, {}, {}, {}, {}, {}, {dense, {}, {}, {}}, 0});

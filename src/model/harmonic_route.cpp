@@ -104,8 +104,9 @@ void HarmonicRoute::make_bases(const SkyModel& sky, double tolerance) {
     intensity_basis_ = make_intensity_basis(sky, bands, tolerance);
     report_.intensity_components = intensity_basis_.components.size();
     if (!options_.polarized) return;
-    polarized_basis_ =
-        polarization_shares_law(sky) ? intensity_basis_ : make_polarized_basis(sky, bands, tolerance);
+    polarized_basis_ = polarization_shares_law(sky) && !sky.nodes
+                           ? intensity_basis_
+                           : make_polarized_basis(sky, bands, tolerance);
     report_.polarized_components = polarized_basis_.components.size();
 }
 

@@ -70,6 +70,13 @@ std::vector<double> approximate_weights(const NodeSky& sky, const BandSum& band,
     return through;
 }
 
+// Tells whether a band has no other frequencies than the nodes, so that nothing is interpolated.
+bool is_on_nodes(const NodeInterpolation& nodes, const BandSum& band) {
+    return std::all_of(band.hz.begin(), band.hz.end(), [&](double hz) {
+        return std::find(nodes.log_hz.begin(), nodes.log_hz.end(), std::log(hz)) != nodes.log_hz.end();
+    });
+}
+
 struct Errors {
     double rms = 0, worst = 0;
 };
@@ -190,6 +197,7 @@ NodeErrors measure_node_errors(const NodeSky& sky, std::span<const BandSum> chan
     const bool check_stokes = polarized && !sky.q.empty();
     parallel_for_blocks(static_cast<std::int64_t>(channels.size()), 1, [&](std::int64_t begin, std::int64_t) {
         const auto c = static_cast<std::size_t>(begin);
+        if (is_on_nodes(sky.nodes, channels[c])) return;
         const auto exact = sky.sample.nodes.weights(channels[c]);
         const auto got = approximate_weights(sky, channels[c], to_nodes);
         Errors found = intensity_errors(sky, exact, got);

@@ -36,7 +36,28 @@ FOREGLOW_INLINE double emission_exp(double x) {
     return vector_exp<ExpPrecision::Single>(x < -690.0 ? -690.0 : x);
 }
 
-// Adds one sample to the sums of all frequencies.
+// (1 - e^-z)/z with z = a + i b: the mean of e^-zx over 0 < x < 1.
+struct SlabAverage {
+    double real, imaginary;
+};
+FOREGLOW_INLINE SlabAverage slab_average(double a, double b) {
+    const SinCos turn = vector_sin_cos(b);
+    const double left = vector_exp(a > 690.0 ? -690.0 : -a);  // in full: 1 - left may be small
+    const double real = 1 - left * turn.cos;
+    const double imaginary = left * turn.sin;
+    const double square = a * a + b * b;
+    const double inverse = 1 / (square + 1e-300);
+    // 1 - z/2 + z^2/6 - z^3/24 where the difference would lose digits; the next term is below 1e-9
+    const double a2 = a * a;
+    const double b2 = b * b;
+    const double series_real = 1 - a / 2 + (a2 - b2) / 6 - a * (a2 - 3 * b2) / 24;
+    const double series_imaginary = -b / 2 + a * b / 3 - b * (3 * a2 - b2) / 24;
+    const bool is_thin = square < 1e-4;
+    return {is_thin ? series_real : (real * a + imaginary * b) * inverse,
+            is_thin ? series_imaginary : (imaginary * a - real * b) * inverse};
+}
+
+// Adds one sample to the sums of all frequencies; depth and dispersion are those in front of its step.
 template <bool polarized>
 FOREGLOW_INLINE void add_sample(const GalaxySamples& samples, std::size_t s, const NodeRows& nodes,
                                 double depth, double dispersion, const Sums& sums) {
@@ -70,6 +91,7 @@ FOREGLOW_INLINE void add_sample(const GalaxySamples& samples, std::size_t s, con
     const double q_share = samples.q_share[s];
     const double u_share = samples.u_share[s];
     const double step_depth = samples.depth[s];
+    const double step_dispersion = samples.dispersion[s];
     const std::size_t n1 = count;
     const std::size_t n2 = 2 * count;
     const std::size_t n3 = 3 * count;
@@ -95,14 +117,14 @@ FOREGLOW_INLINE void add_sample(const GalaxySamples& samples, std::size_t s, con
                                  (both + 1e-300);
             const double fraction = (2 + 2 * slope) / (2 * slope + 10.0 / 3);  // s = 1 + 2 slope
             const double l2 = lambda2[k];
+            const SlabAverage slab = slab_average(2 * step_dispersion * l2 * l2, 2 * step_depth * l2);
             const SinCos turn = vector_sin_cos(2 * depth * l2);
-            const double half_width = step_depth * l2;
-            const bool is_thin = half_width * half_width < 1e-12;
-            const double sine = vector_sin_cos(half_width).sin;
-            const double sinc = is_thin ? 1.0 : sine / half_width;
-            const double p = both * fraction * sinc * emission_exp(-2 * dispersion * l2 * l2);
-            sum_q[k] += p * (q_share * turn.cos + u_share * turn.sin);
-            sum_u[k] += p * (u_share * turn.cos - q_share * turn.sin);
+            const double p = both * fraction * emission_exp(-2 * dispersion * l2 * l2);
+            // (q + iu) exp(-2 i depth l2) times the slab's average
+            const double real = p * (slab.real * turn.cos + slab.imaginary * turn.sin);
+            const double imaginary = p * (slab.imaginary * turn.cos - slab.real * turn.sin);
+            sum_q[k] += q_share * real - u_share * imaginary;
+            sum_u[k] += u_share * real + q_share * imaginary;
         }
     }
 }
@@ -116,8 +138,7 @@ template <bool polarized>
 FOREGLOW_INLINE void add_samples(const GalaxySamples& samples, const NodeRows& nodes, std::size_t reference,
                                  const Sums& sums, Accumulated& line) {
     for (std::size_t s = 0; s < samples.count; ++s) {
-        add_sample<polarized>(samples, s, nodes, line.depth + 0.5 * samples.depth[s],
-                              line.dispersion + 0.5 * samples.dispersion[s], sums);
+        add_sample<polarized>(samples, s, nodes, line.depth, line.dispersion, sums);
         line.depth += samples.depth[s];
         line.largest_depth = std::max(line.largest_depth, std::abs(line.depth));
         line.dispersion += samples.dispersion[s];

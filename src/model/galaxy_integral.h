@@ -23,11 +23,10 @@ struct GalaxySightline {
 /// Integrates the emission of the disc along lines of sight for a few frequencies at once.
 ///
 /// Emissivity from B_eff^2 = B_perp^2 + (2/3) b^2, polarized fraction Pi B_perp^2/B_eff^2 with Pi = (s +
-/// 1)/(s
-/// + 7/3), s = 1 - 2 d ln Phi/d ln a of both populations together (Burn 1966, exact for s = 3); midpoint rule
-/// in u, d(u) = start (e^u - 1); each step's Q + iU turned by its middle depth and multiplied by
-/// sinc(lambda^2 depth of the step), the exact average over a uniform step (Burn 1966), and by exp(-2
-/// dispersion lambda^4).
+/// 1)/(s + 7/3), s = 1 - 2 d ln Phi/d ln a of both populations together (Burn 1966, exact for s = 3);
+/// midpoint rule in u, d(u) = start (e^u - 1); each step's Q + iU (COSMO) is turned and dimmed by what lies
+/// in front of it, exp(-2 i RM lambda^2 - 2 S lambda^4), and averaged exactly over the step, (1 - e^-z)/z
+/// with z = 2 i dRM lambda^2 + 2 dS lambda^4 (Burn 1966).
 class GalaxyIntegral {
   public:
     /// @param frequencies  [K], any order

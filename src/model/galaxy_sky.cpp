@@ -24,6 +24,7 @@ constexpr int sampled_nside = 64;
 constexpr std::size_t checked_channels = 48;
 constexpr double truth_step = 0.3;  // of ln nu: derivatives to h^4/30 of the fifth one
 constexpr std::size_t truth_nodes = 5;
+constexpr int integral_revision = 2;  // raised whenever the same parameters give other maps
 
 std::vector<BandSum> bands_of(std::span<const Channel> channels) {
     std::vector<BandSum> bands;
@@ -161,8 +162,8 @@ class NodeChooser {
 
 std::string cache_key(const GalaxySpec& galaxy, const HealpixGrid& grid, const std::string& what,
                       const std::vector<double>& numbers) {
-    std::string key = "foreglow " + version() + "\n" + describe_exactly(galaxy) +
-                      "nside=" + std::to_string(grid.nside()) + "\n" + what + "\n";
+    std::string key = "foreglow " + version() + "\nintegral " + std::to_string(integral_revision) + "\n" +
+                      describe_exactly(galaxy) + "nside=" + std::to_string(grid.nside()) + "\n" + what + "\n";
     for (const double number : numbers)
         key += format_exact(number) + "\n";
     return key;

@@ -148,12 +148,24 @@ std::string map_stem(const Plan& plan, const std::string& channel, int realizati
     return channel + "_r" + number_of(realization, 4);
 }
 
+namespace {
+
+void check_patches(const StudySpec& study, const ModelSpec& model) {
+    if (study.patches.empty() || !model.galaxy) return;
+    throw InputError(study.file.string() +
+                     ": [[patch]] continues a template below its pixels, which the model " + model.name +
+                     " has not: it is a Galaxy integrated pixel by pixel; take the patches out");
+}
+
+}  // namespace
+
 Plan make_plan(PlanRequest request) {
     check_typeface();  // else a run would fail at its end, at the report
     Plan plan;
     plan.study = std::move(request.study);
     plan.model = read_study_model(plan.study);
     check_polarization(plan.study, plan.model);
+    check_patches(plan.study, plan.model);
     plan.channels = make_channels(plan.study);
     plan.model_maps = check_model_maps(plan.model, HealpixGrid(plan.study.nside), plan.study.lmax,
                                        plan.study.polarized, plan.channels);

@@ -112,9 +112,10 @@ class NodeChooser {
     void sample_pixels(const GalaxySpec& galaxy, std::shared_ptr<const GalaxyTable> table,
                        const HealpixGrid& grid) {
         const HealpixGrid coarse(std::min(grid.nside(), sampled_nside));
+        // An odd step, since rings have even lengths and would else be met at one longitude.
+        const std::int64_t step = std::max<std::int64_t>(1, coarse.npix() / sampled_pixels) | 1;
         std::vector<std::int64_t> pixels;
-        for (std::int64_t p = 0; p < coarse.npix();
-             p += std::max<std::int64_t>(1, coarse.npix() / sampled_pixels))
+        for (std::int64_t p = 0; p < coarse.npix(); p += step)
             pixels.push_back(p);
         const double low = *frequencies_.begin();
         const double high = *frequencies_.rbegin();

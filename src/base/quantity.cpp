@@ -65,7 +65,7 @@ Angle parse_angle(std::string_view text) {
     return Angle::from_radians(quantity.value * scale_of(angle_units, quantity, "40 arcmin"));
 }
 
-double parse_energy_GeV(std::string_view text) {
+double parse_energy_gev(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     const double value = quantity.value * scale_of(energy_units, quantity, "10 GeV");
     if (!(value >= 1e-3 && value <= 1e9))
@@ -73,7 +73,7 @@ double parse_energy_GeV(std::string_view text) {
     return value;
 }
 
-double parse_field_uG(std::string_view text) {
+double parse_field_ug(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     const double value = quantity.value * scale_of(field_units, quantity, "5 uG");
     if (!(value >= 1e-3 && value <= 1e6))
@@ -81,7 +81,7 @@ double parse_field_uG(std::string_view text) {
     return value;
 }
 
-double parse_time_Myr(std::string_view text) {
+double parse_time_myr(std::string_view text) {
     const NumberWithUnit quantity = parse_number_with_unit(text);
     const double value = quantity.value * scale_of(time_units, quantity, "50 Myr");
     if (!(value >= 0 && value <= 1e5))

@@ -59,11 +59,11 @@ struct NumberWithUnit {
 /// Reads an energy above 0 in GeV: eV, keV, MeV, GeV or TeV.
 /// @throws InputError where number, unit or range is wrong, as the two below; the message does not name the
 /// key
-[[nodiscard]] double parse_energy_GeV(std::string_view text);
+[[nodiscard]] double parse_energy_gev(std::string_view text);
 /// Reads a magnetic field above 0 in microgauss: nG, uG, mG, G, nT or T.
-[[nodiscard]] double parse_field_uG(std::string_view text);
+[[nodiscard]] double parse_field_ug(std::string_view text);
 /// Reads a time of 0 or more in Myr: yr, kyr, Myr or Gyr.
-[[nodiscard]] double parse_time_Myr(std::string_view text);
+[[nodiscard]] double parse_time_myr(std::string_view text);
 
 /// Writes a frequency as a person would: "70 GHz", "408 MHz".
 [[nodiscard]] std::string to_text(Frequency frequency);

@@ -32,12 +32,12 @@ auto parse_option(const char* key, const std::string& text, Parse parse) {
 
 ElectronLaw read_law(const ElectronsOptions& options) {
     ElectronRequest request = options.request;
-    if (options.field) request.field_uG = parse_option("field", *options.field, parse_field_uG);
+    if (options.field) request.field_uG = parse_option("field", *options.field, parse_field_ug);
     if (options.break_energy)
-        request.break_GeV = parse_option("break_energy", *options.break_energy, parse_energy_GeV);
+        request.break_GeV = parse_option("break_energy", *options.break_energy, parse_energy_gev);
     if (options.cutoff_energy)
-        request.cutoff_GeV = parse_option("cutoff_energy", *options.cutoff_energy, parse_energy_GeV);
-    if (options.age) request.age_Myr = parse_option("age", *options.age, parse_time_Myr);
+        request.cutoff_GeV = parse_option("cutoff_energy", *options.cutoff_energy, parse_energy_gev);
+    if (options.age) request.age_Myr = parse_option("age", *options.age, parse_time_myr);
     const auto check_range = [](const char* key, const std::optional<double>& value, double low,
                                 double high) {
         if (value && !(*value >= low && *value <= high))

@@ -101,7 +101,6 @@ class PixelSource {
   public:
     PixelSource(const SkyModel& sky, std::span<const BandSum> bands, const StudySpec& study)
         : sky_(sky),
-          polarized_(study.polarized),
           precision_(study.precision == MapPrecision::Float32 ? ExpPrecision::Single : ExpPrecision::Double),
           route_(sky, bands, study.polarized, tolerance_of(study)) {}
 
@@ -125,7 +124,6 @@ class PixelSource {
     }
 
     const SkyModel& sky_;
-    bool polarized_;
     ExpPrecision precision_;
     PixelRoute route_;
 };

@@ -88,7 +88,7 @@ Modulation make_modulation(std::span<const double> brightness, std::span<const d
                                       static_cast<std::size_t>(end - begin));
                         });
     const double mean_square = region_mean(region, [&](std::size_t i) {
-        const double w = out.weights[i];
+        const auto w = static_cast<double>(out.weights[i]);
         return w * w;
     });
     const auto scale = static_cast<float>(1 / std::sqrt(mean_square));

@@ -227,7 +227,7 @@ class DetailedSky::Impl {
         const auto& from = *stokes_;
         parallel_for_blocks(base_.grid.npix(), block, [&](std::int64_t begin, std::int64_t end) {
             for (auto i = static_cast<std::size_t>(begin); i < static_cast<std::size_t>(end); ++i) {
-                const double w = polarized_weights_[i];
+                const auto w = static_cast<double>(polarized_weights_[i]);
                 maps->q[i] = from.q[i] + w * maps->q[i];
                 maps->u[i] = from.u[i] + w * maps->u[i];
             }

@@ -32,17 +32,17 @@ SlopeLimits slope_limits(const ElectronLaw& law) {
     return {aged && !falls_anyway ? 1.001 : 1.0, 7.0};
 }
 
-double microwave_field_uG(double redshift) {
+double microwave_field_ug(double redshift) {
     return 3.25 * (1 + redshift) * (1 + redshift);
 }
 
 double isotropized_loss_rate(double field_uG, double redshift) {
-    const double microwave = microwave_field_uG(redshift);
+    const double microwave = microwave_field_ug(redshift);
     return 2.0 / 3 * loss_constant() * (field_uG * field_uG + microwave * microwave);
 }
 
 double fixed_pitch_loss_rate(double field_uG, double sine, double redshift) {
-    const double microwave = microwave_field_uG(redshift);
+    const double microwave = microwave_field_ug(redshift);
     const double across = field_uG * sine;
     return loss_constant() * (across * across + 2.0 / 3 * microwave * microwave);
 }

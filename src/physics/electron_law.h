@@ -68,7 +68,7 @@ struct SlopeLimits {
 
 /// Returns B_IC = 3.25 (1 + z)^2 uG, the field as strong as the microwave background (by definition here; T0
 /// = 2.7255 K gives 3.239).
-[[nodiscard]] double microwave_field_uG(double redshift);
+[[nodiscard]] double microwave_field_ug(double redshift);
 
 /// Returns b of dE/dt = -b E^2 with mixed pitch angles: (2/3) c2 (B^2 + B_IC^2), c2 = 2 e^4/(3 m^4 c^7) [cgs]
 /// = 0.119714453 GeV^-1 Gyr^-1 uG^-2 (Pacholczyk 1970).

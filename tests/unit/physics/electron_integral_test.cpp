@@ -170,7 +170,7 @@ TEST(ElectronIntegral, AgedLawsAgreeWithOtherIntegrators) {
     for (const AgedRow& row : rows) {
         ElectronLaw law;
         law.geometry = row.geometry;
-        law.field_uG = row.microwave_ratio > 0 ? microwave_field_uG(0) / row.microwave_ratio : 3e6;
+        law.field_uG = row.microwave_ratio > 0 ? microwave_field_ug(0) / row.microwave_ratio : 3e6;
         const double age = row.microwave_ratio > 0 ? 50 : 1e-10;
         const double hz = row.x * break_frequency(law.field_uG, 0, age).hz();
         const double plain = total(law, row.slope, hz);

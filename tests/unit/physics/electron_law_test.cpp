@@ -11,9 +11,9 @@ namespace {
 // c2 = 2.36773026e-3 in cgs, 0.119714453 and (2/3) of it 0.0798096353 GeV^-1 Gyr^-1 uG^-2 (Pacholczyk 1970,
 // with CODATA 2018 put in by hand).
 TEST(ElectronLaw, LosesAtThePublishedRates) {
-    const double microwave = microwave_field_uG(0);
+    const double microwave = microwave_field_ug(0);
     EXPECT_EQ(microwave, 3.25);
-    EXPECT_EQ(microwave_field_uG(1), 13.0);
+    EXPECT_EQ(microwave_field_ug(1), 13.0);
     EXPECT_NEAR(isotropized_loss_rate(3, 0) * 1e3, 0.0798096353 * (9 + 3.25 * 3.25), 2e-8);  // its last digit
     EXPECT_NEAR(fixed_pitch_loss_rate(3, 0.5, 0) * 1e3, 0.119714453 * (2.25 + 2.0 / 3 * 3.25 * 3.25), 2e-8);
     ElectronLaw law;
@@ -33,7 +33,7 @@ TEST(ElectronLaw, BreaksWhereItShould) {
     for (const double field : {1.0, 5.0, 20.0})
         for (const double ghz : {0.1, 2.0, 30.0}) {
             const double age = break_age(field, 0.2, Frequency::from_ghz(ghz));
-            const double microwave = microwave_field_uG(0.2);
+            const double microwave = microwave_field_ug(0.2);
             const double known =
                 1590 * std::sqrt(field) / ((field * field + microwave * microwave) * std::sqrt(ghz));
             EXPECT_NEAR(age / known, 1, 1e-3);

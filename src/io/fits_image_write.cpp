@@ -125,7 +125,7 @@ class MemoryImage {
 }  // namespace
 
 std::int64_t fits_image_file_bytes(const FitsImageLayout& layout) {
-    constexpr std::int64_t header = 3 * 2880;
+    constexpr std::int64_t header = std::int64_t{3} * 2880;
     return header + value_count(layout) * (layout.float64 ? 8 : 4);
 }
 

@@ -138,7 +138,7 @@ std::string realization_suffix(int realization) {
 // NAME.fits, or NAME_r0003.fits of a run with several realizations.
 fs::path find_map(const fs::path& folder, const std::string& name, std::optional<int> realization) {
     std::error_code code;
-    const fs::path plain = folder / "maps" / (name + ".fits");
+    fs::path plain = folder / "maps" / (name + ".fits");
     if (fs::exists(plain, code)) {
         if (realization.value_or(0) != 0)
             throw InputError("--realization " + std::to_string(*realization) + ": the run " +
@@ -148,7 +148,7 @@ fs::path find_map(const fs::path& folder, const std::string& name, std::optional
     for (int r = 0; !realization && r < 1000000; ++r)
         if (fs::exists(folder / "maps" / (name + realization_suffix(r) + ".fits"), code))
             return folder / "maps" / (name + realization_suffix(r) + ".fits");
-    const fs::path numbered =
+    fs::path numbered =
         folder / "maps" / (name + realization_suffix(realization.value_or(0)) + ".fits");
     if (!fs::exists(numbered, code))
         throw InputError("the run " + folder.string() + " has no map of channel " + name +

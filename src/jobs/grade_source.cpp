@@ -131,7 +131,7 @@ fs::path find_run_map(const fs::path& run, const std::string& name, std::optiona
     std::array<char, 16> suffix{};
     std::snprintf(suffix.data(), suffix.size(), "_r%04d", realization.value_or(0));
     std::error_code code;
-    const fs::path plain = run / "maps" / (name + ".fits");
+    fs::path plain = run / "maps" / (name + ".fits");
     if (realization.value_or(0) == 0 && fs::exists(plain, code)) return plain;
     fs::path numbered = run / "maps" / (name + suffix.data() + ".fits");
     if (fs::exists(numbered, code)) return numbered;

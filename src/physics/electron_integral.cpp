@@ -36,8 +36,8 @@ class ElectronPanels {
         const double critical = critical_frequency(1, law.field_uG).hz();
         radiates_ = 0.5 * std::log(hz_ / critical);
         if (law.energy_break) break_ = std::log(law.energy_break->energy_GeV);
-        if (std::isfinite(kernel_.edge_GeV())) edge_ = std::log(kernel_.edge_GeV());
-        if (std::isfinite(kernel_.exponential_GeV())) exponential_ = std::log(kernel_.exponential_GeV());
+        if (std::isfinite(kernel_.edge_gev())) edge_ = std::log(kernel_.edge_gev());
+        if (std::isfinite(kernel_.exponential_gev())) exponential_ = std::log(kernel_.exponential_gev());
     }
 
     void fill(ElectronIntegral& out) {
@@ -57,7 +57,7 @@ class ElectronPanels {
   private:
     [[nodiscard]] double exponent(double u) const {
         const double energy = std::exp(u);
-        return kernel_.exponent(energy, hz_) - energy / kernel_.exponential_GeV();
+        return kernel_.exponent(energy, hz_) - energy / kernel_.exponential_gev();
     }
 
     // The end is a sharp cut-off, where an exponential one has fallen, or where the integrand has become a
@@ -103,14 +103,14 @@ class ElectronPanels {
         double width = from > quiet_from ? 1.4 : 0.7;
         for (int i = 0; i < 4; ++i) {
             const double steep = std::max(kernel_.steepness(std::exp(from), hz_),
-                                          std::exp(from + width) / kernel_.exponential_GeV());
+                                          std::exp(from + width) / kernel_.exponential_gev());
             width = std::min(width, 5 / std::max(steep, 1e-3));
         }
         return width;
     }
 
     [[nodiscard]] double scaled_kernel(double energy) const {
-        return kernel_.value(energy, hz_, -highest_ - energy / kernel_.exponential_GeV());
+        return kernel_.value(energy, hz_, -highest_ - energy / kernel_.exponential_gev());
     }
 
     void add_panel(ElectronIntegral& out, double from, double to) const {

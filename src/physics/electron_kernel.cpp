@@ -47,21 +47,21 @@ const QuadratureRule& age_rule() {
 
 ElectronKernel::ElectronKernel(const ElectronLaw& law, EmissionPart part)
     : critical_hz_(critical_frequency(1, law.field_uG).hz()),
-      edge_GeV_(infinity),
-      exponential_GeV_(infinity) {
+      edge_gev_(infinity),
+      exponential_gev_(infinity) {
     const bool tangled = law.geometry == FieldGeometry::Tangled;
     const auto* fixed = std::get_if<FixedPitchAging>(&law.aging);
     const bool angles = tangled && fixed != nullptr;
     kernel_ = choose_kernel(tangled && !angles, part);
     if (law.cutoff && law.cutoff->shape == CutoffShape::Exponential)
-        exponential_GeV_ = law.cutoff->energy_GeV;
+        exponential_gev_ = law.cutoff->energy_GeV;
     double age = 0;
     if (fixed != nullptr) age = fixed->age_Myr;
     if (const auto* isotropized = std::get_if<IsotropizedAging>(&law.aging)) {
         if (isotropized->edge == CutoffShape::Sharp)
             age = isotropized->age_Myr;
         else if (isotropized->age_Myr > 0)
-            exponential_GeV_ = 1 / (1 / exponential_GeV_ +
+            exponential_gev_ = 1 / (1 / exponential_gev_ +
                                     isotropized_loss_rate(law.field_uG, law.redshift) * isotropized->age_Myr);
     }
     if (const auto* injection = std::get_if<ContinuousInjection>(&law.aging)) {
@@ -83,7 +83,7 @@ ElectronKernel::ElectronKernel(const ElectronLaw& law, EmissionPart part)
     double least_loss = infinity;
     for (const Direction& direction : directions_)
         least_loss = std::min(least_loss, direction.loss);
-    if (least_loss > 0) edge_GeV_ = 1 / least_loss;
+    if (least_loss > 0) edge_gev_ = 1 / least_loss;
 }
 
 // nu/nu_c of an electron injected with E0 a part `age` of the age ago, E = E0/(1 + b E0 t).

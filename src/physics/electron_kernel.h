@@ -20,9 +20,9 @@ class ElectronKernel {
     /// Returns how fast the exponent changes with ln E0 where it is largest.
     [[nodiscard]] double steepness(double energy_GeV, double emitted_hz) const;
     /// Returns E_T = 1/(b t), the largest over the angles; infinity without ageing that moves electrons.
-    [[nodiscard]] double edge_GeV() const { return edge_GeV_; }
+    [[nodiscard]] double edge_gev() const { return edge_gev_; }
     /// Returns E of exp(-E0/E): the cut-off's, or the edge's where that is exponential; infinity without.
-    [[nodiscard]] double exponential_GeV() const { return exponential_GeV_; }
+    [[nodiscard]] double exponential_gev() const { return exponential_gev_; }
     /// Tells whether the mean over ages is taken.
     [[nodiscard]] bool is_continuous() const { return continuous_; }
 
@@ -39,7 +39,7 @@ class ElectronKernel {
     double (*kernel_)(double) = nullptr;  // e^x K(x)
     std::vector<Direction> directions_;
     double critical_hz_ = 0;  // of 1 GeV at sin(a) = 1
-    double edge_GeV_ = 0, exponential_GeV_ = 0;
+    double edge_gev_ = 0, exponential_gev_ = 0;
     bool continuous_ = false;
 };
 

@@ -148,8 +148,7 @@ fs::path find_map(const fs::path& folder, const std::string& name, std::optional
     for (int r = 0; !realization && r < 1000000; ++r)
         if (fs::exists(folder / "maps" / (name + realization_suffix(r) + ".fits"), code))
             return folder / "maps" / (name + realization_suffix(r) + ".fits");
-    fs::path numbered =
-        folder / "maps" / (name + realization_suffix(realization.value_or(0)) + ".fits");
+    fs::path numbered = folder / "maps" / (name + realization_suffix(realization.value_or(0)) + ".fits");
     if (!fs::exists(numbered, code))
         throw InputError("the run " + folder.string() + " has no map of channel " + name +
                          (realization ? ", realization " + std::to_string(*realization) : "") +

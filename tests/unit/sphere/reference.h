@@ -21,7 +21,9 @@ namespace foreglow::reference {
 
 /// The columns of tests/oracle/sphere_NAME.csv, which sphere_reference.py makes.
 inline std::map<std::string, std::vector<double>> read_table(const std::string& name) {
-    std::ifstream in(std::string(FOREGLOW_TESTS_DIR) + "/oracle/sphere_" + name + ".csv");
+    std::string path = FOREGLOW_TESTS_DIR;
+    path.append("/oracle/sphere_").append(name).append(".csv");  // a chain of + makes g++ 12 see a fault
+    std::ifstream in(path);
     std::string line;
     std::map<std::string, std::vector<double>> out;
     if (!std::getline(in, line)) {

@@ -17,7 +17,7 @@ TEST(Models, AreListedALineEach) {
     const std::string lines = list_models();
     EXPECT_EQ(static_cast<std::size_t>(std::count(lines.begin(), lines.end(), '\n')),
               list_bundled_models().size());
-    EXPECT_NE(lines.find("disc-and-loops  Simulated 3-D Galaxy"), std::string::npos) << lines;
+    EXPECT_NE(lines.find("\ndisc-and-loops     Simulated 3-D Galaxy"), std::string::npos) << lines;
 }
 
 TEST(Models, PrintAsFilesThatCanBeReadAgain) {
